@@ -1,0 +1,15 @@
+//! The wasm-bindgen surface: names and types for JavaScript, no arithmetic.
+
+mod photo;
+mod sorter;
+
+use wasm_bindgen::prelude::*;
+
+/// An `Error` named `KenspeckleError` with a `code` that programs can test and a message for people.
+fn js_error(code: &str, message: &str) -> JsValue {
+    let error = js_sys::Error::new(message);
+    error.set_name("KenspeckleError");
+    // Setting a property on a fresh `Error` can't fail.
+    let _ = js_sys::Reflect::set(&error, &"code".into(), &code.into());
+    error.into()
+}

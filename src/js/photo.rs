@@ -1,0 +1,1 @@
+//! Photos: a file in, an embedding and a thumbnail out.
