@@ -38,14 +38,16 @@ class Skip(Exception):
 
 
 def run(command, **options):
-    """Runs a client; its own last words become the reason when it fails or isn't there."""
+    """Runs a client; its own words become the reason when it fails or isn't there."""
     try:
         return subprocess.run(command, check=True, capture_output=True, text=True, **options).stdout
     except FileNotFoundError:
         raise Skip(f"the program `{command[0]}` is not on this machine") from None
     except subprocess.CalledProcessError as error:
-        words = (error.stderr or error.stdout).strip().splitlines()
-        raise Skip(f"`{' '.join(command[:2])}` failed: {words[-1] if words else f'exit code {error.returncode}'}") from None
+        lines = (error.stderr or error.stdout).strip().splitlines() or [f"exit code {error.returncode}"]
+        # Clients surround their reason with codes and paths of logs: the first real sentence is it.
+        sentence = next((line for line in lines if len(line.split()) > 5), lines[-1])
+        raise Skip(f"`{' '.join(command[:2])}` failed: {sentence}") from None
 
 
 def installed_version(package):
@@ -72,9 +74,7 @@ def icons():
         if name.startswith("@iconify-json/"):
             info = json.loads((sets.NODE / "node_modules" / name / "info.json").read_text())
             print(f"icons: {name} {ICON_PACKAGES[name]}: {info['license']['title']}, by {info['author']['name']}")
-    sys.stdout.flush()
-    if subprocess.run(["node", HERE / "render-icons.mjs", sets.NODE, sets.SETS], check=False).returncode:
-        raise Skip("drawing the icons failed, see the lines above")
+    print(run(["node", str(HERE / "render-icons.mjs"), str(sets.NODE), str(sets.SETS)]), end="")
 
 
 def stamps():
@@ -143,7 +143,7 @@ def fetch(names):
             ways[name]()
         except Skip as reason:
             skipped.append(name)
-            print(f"{name}: skipped: {reason}", file=sys.stderr)
+            print(f"{name}: skipped: {reason}", file=sys.stderr, flush=True)
     return skipped
 
 
