@@ -1,0 +1,94 @@
+import { createReadStream, existsSync, readdirSync, readFileSync } from 'node:fs';
+import { join, resolve } from 'node:path';
+import { defineConfig, type Plugin } from 'vite';
+import { VitePWA } from 'vite-plugin-pwa';
+
+const csp = [
+  "default-src 'self'",
+  "script-src 'self' 'wasm-unsafe-eval'",
+  "style-src 'self'",
+  "img-src 'self' blob: data:",
+  "worker-src 'self'",
+  "object-src 'none'",
+  "base-uri 'none'",
+  "form-action 'none'",
+].join('; ');
+
+const headers = {
+  'Content-Security-Policy': csp,
+  'X-Content-Type-Options': 'nosniff',
+  'Referrer-Policy': 'no-referrer',
+};
+
+/** The policy travels with the page, whatever server it is put on. */
+const cspInPage: Plugin = {
+  name: 'csp-in-page',
+  apply: 'build',
+  transformIndexHtml: () => [
+    { tag: 'meta', attrs: { 'http-equiv': 'Content-Security-Policy', content: csp }, injectTo: 'head-prepend' },
+  ],
+};
+
+const pile = resolve(import.meta.dirname, 'www/demo/pile');
+
+/** The demo pile is made by a program, not kept in the page's folder: served from where it lies, copied when built. */
+const demoPile: Plugin = {
+  name: 'demo-pile',
+  configureServer(server) {
+    server.middlewares.use('/demo/pile', (request, response, next) => {
+      const name = decodeURIComponent((request.url ?? '').split('?')[0] ?? '').slice(1);
+      const file = join(pile, name);
+      if (!/^[\w.-]+$/.test(name) || !existsSync(file)) return next();
+      response.setHeader('Content-Type', name.endsWith('.json') ? 'application/json' : 'image/jpeg');
+      createReadStream(file).pipe(response);
+    });
+  },
+  generateBundle() {
+    if (!existsSync(pile)) return;
+    for (const name of readdirSync(pile)) {
+      this.emitFile({ type: 'asset', fileName: `demo/pile/${name}`, source: readFileSync(join(pile, name)) });
+    }
+  },
+};
+
+export default defineConfig({
+  root: 'www/app',
+  base: './',
+  build: { outDir: 'dist', emptyOutDir: true, target: 'es2022', assetsInlineLimit: 0, modulePreload: { polyfill: false } },
+  worker: { format: 'es' },
+  server: { port: 4180, headers, fs: { allow: ['../..'] } },
+  preview: { port: 4180, headers },
+  plugins: [
+    cspInPage,
+    demoPile,
+    VitePWA({
+      injectRegister: null,
+      registerType: 'autoUpdate',
+      includeAssets: [],
+      manifest: {
+        name: 'Kenspeckle',
+        short_name: 'Kenspeckle',
+        description: 'Sort a pile of photos into your own trays from a handful of answers. Nothing leaves the device.',
+        theme_color: '#e7ece8',
+        background_color: '#e7ece8',
+        display: 'standalone',
+        start_url: './',
+        icons: [{ src: 'icon.svg', sizes: 'any', type: 'image/svg+xml', purpose: 'any' }],
+      },
+      workbox: {
+        globPatterns: ['**/*.{html,js,css,wasm,onnx,svg}'],
+        maximumFileSizeToCacheInBytes: 16 * 1024 * 1024,
+        cleanupOutdatedCaches: true,
+        clientsClaim: true,
+        // The first opening of the demo keeps it for the next one without a network.
+        runtimeCaching: [
+          {
+            urlPattern: ({ url, sameOrigin }) => sameOrigin && url.pathname.includes('/demo/pile/'),
+            handler: 'StaleWhileRevalidate',
+            options: { cacheName: 'demo-pile' },
+          },
+        ],
+      },
+    }),
+  ],
+});

@@ -1,0 +1,429 @@
+import { html, LitElement, nothing, type TemplateResult } from 'lit';
+import { KenspeckleError, messageOf, PileClient, type Source, Status } from '../kit/client';
+import { csv } from '../kit/csv';
+import './band';
+import { hasCamera } from './camera';
+import { Desk } from './desk';
+import { demoSources, type Found, fromClipboard, fromList, fromTransfer } from './files';
+import { commandOf, isTyping } from './keys';
+import { appStyles } from './app-styles';
+import type { Panel } from './panels';
+import type { Question } from './question';
+import './question';
+import './reading';
+import type { Shelves } from './shelves';
+import './shelves';
+import { shared } from './styles';
+import './welcome';
+import { words } from './words';
+
+type Opened = { panel: 'help' | 'start-over' | 'zoom' | 'camera' } | { panel: 'tray'; tray: number; error?: string };
+
+const SINGLE_KEYS = 'single-keys';
+
+/** The page. */
+export class Bench extends LitElement {
+  static override properties = {
+    desk: { state: true },
+    failed: { state: true },
+    opened: { state: true },
+    dropping: { state: true },
+    demoLoading: { state: true },
+    singleKeys: { state: true },
+  };
+
+  declare desk: Desk | undefined;
+  declare failed: unknown;
+  declare opened: Opened | undefined;
+  declare dropping: boolean;
+  declare demoLoading: boolean;
+  declare singleKeys: boolean;
+  #zoomed: string | undefined;
+  #pasted = 0;
+  #returnTo: HTMLElement | undefined;
+
+  constructor() {
+    super();
+    this.dropping = false;
+    this.demoLoading = false;
+    this.singleKeys = localStorage.getItem(SINGLE_KEYS) !== 'off';
+  }
+
+  override connectedCallback(): void {
+    super.connectedCallback();
+    window.addEventListener('keydown', (event) => this.#onKey(event));
+    window.addEventListener('dragover', (event) => this.#onDragOver(event));
+    window.addEventListener('dragleave', (event) => {
+      if (event.relatedTarget === null) this.dropping = false;
+    });
+    window.addEventListener('drop', (event) => void this.#onDrop(event));
+    window.addEventListener('paste', (event) => this.#onPaste(event));
+  }
+
+  override firstUpdated(): void {
+    void this.#open();
+  }
+
+  async #open(): Promise<void> {
+    try {
+      const client = await PileClient.open();
+      this.desk = new Desk(client, () => this.requestUpdate());
+      // The encoder comes while the person still looks at the page.
+      setTimeout(() => void client.warm().catch(() => undefined), 300);
+    } catch (error) {
+      this.failed = error;
+    }
+  }
+
+  get #question(): Question | null {
+    return this.renderRoot.querySelector('ken-question');
+  }
+
+  get #shelves(): Shelves | null {
+    return this.renderRoot.querySelector('ken-shelves');
+  }
+
+  async #add({ sources, problems }: Found): Promise<void> {
+    for (const problem of problems) this.desk?.complain(problem);
+    void navigator.storage?.persist?.();
+    await this.desk?.add(sources);
+  }
+
+  async #demo(): Promise<void> {
+    if (!this.desk || this.demoLoading) return;
+    this.demoLoading = true;
+    try {
+      await this.#add({ sources: await demoSources(), problems: [] });
+    } catch (error) {
+      this.desk.complain(messageOf(error));
+    } finally {
+      this.demoLoading = false;
+    }
+  }
+
+  #choose(folder: boolean): void {
+    const input = document.createElement('input');
+    input.type = 'file';
+    input.multiple = true;
+    if (folder) input.webkitdirectory = true;
+    else input.accept = 'image/*';
+    input.addEventListener('change', () => void this.#add(fromList(input.files ?? new DataTransfer().files, folder)));
+    input.click();
+    this.renderRoot.querySelector<HTMLElement>('[popover]')?.hidePopover();
+  }
+
+  #onDragOver(event: DragEvent): void {
+    if (!event.dataTransfer?.types.includes('Files')) return;
+    event.preventDefault();
+    this.dropping = true;
+  }
+
+  async #onDrop(event: DragEvent): Promise<void> {
+    this.dropping = false;
+    if (!event.dataTransfer?.types.includes('Files')) return;
+    event.preventDefault();
+    await this.#add(await fromTransfer(event.dataTransfer));
+  }
+
+  #onPaste(event: ClipboardEvent): void {
+    if (isTyping(event) || !event.clipboardData || event.clipboardData.files.length === 0) return;
+    const sources = fromClipboard(event.clipboardData, this.#pasted);
+    this.#pasted += sources.length;
+    void this.#add({ sources, problems: [] });
+  }
+
+  #onKey(event: KeyboardEvent): void {
+    const { desk } = this;
+    if (!desk?.snapshot) return;
+    if (this.opened) {
+      if (this.opened.panel === 'zoom' && event.key.toLowerCase() === 'z') this.#closePanel();
+      return;
+    }
+    const command = commandOf(event, this.singleKeys);
+    if (!command) return;
+    event.preventDefault();
+    const focused = this.#shelves?.focusedItem;
+    switch (command.do) {
+      case 'tray': {
+        const tray = desk.snapshot.trays[command.place]?.tray;
+        if (tray === undefined || event.repeat) return;
+        if (focused === undefined) return void this.#after(desk.answer(tray));
+        this.#shelves?.holdPlace();
+        return void desk.answer(tray, focused);
+      }
+      case 'guess':
+        if (desk.guess !== undefined && !event.repeat) void this.#after(desk.answer(desk.guess));
+        return;
+      case 'find':
+        return this.#question?.find();
+      case 'none':
+        if (focused !== undefined) this.#shelves?.holdPlace();
+        return void desk.none(focused ?? desk.hand);
+      case 'skip':
+        return void this.#after(desk.skip());
+      case 'undo':
+        return void desk.undo();
+      case 'redo':
+        return void desk.redo();
+      case 'zoom':
+        return void this.#zoom();
+      case 'back':
+        return desk.backToQuestion();
+      case 'remove':
+        if (focused === undefined) return;
+        this.#shelves?.holdPlace();
+        return void desk.removeItem(focused);
+      case 'help':
+        return void this.#openPanel({ panel: 'help' });
+    }
+  }
+
+  /** After an answer the keys belong to the next question. */
+  async #after(answer: Promise<unknown>): Promise<void> {
+    await answer;
+    await this.updateComplete;
+    this.#question?.settle();
+  }
+
+  async #zoom(): Promise<void> {
+    const { desk } = this;
+    if (desk?.hand === undefined) return;
+    const original = await desk.client.original(desk.hand);
+    this.#zoomed = original ? URL.createObjectURL(original) : undefined;
+    await this.#openPanel({ panel: 'zoom' });
+  }
+
+  async #openPanel(opened: Opened): Promise<void> {
+    this.renderRoot.querySelector<HTMLElement>('[popover]')?.hidePopover();
+    const active = (this.renderRoot as ShadowRoot).activeElement;
+    this.#returnTo = active instanceof HTMLElement ? active : undefined;
+    if (opened.panel === 'camera') await import('./camera');
+    else await import('./panels');
+    this.opened = opened;
+  }
+
+  #closePanel(): void {
+    const panel = this.renderRoot.querySelector<Panel>('.panel');
+    if (panel) panel.close();
+    else this.#closed();
+  }
+
+  #closed(): void {
+    this.opened = undefined;
+    if (this.#zoomed) URL.revokeObjectURL(this.#zoomed);
+    this.#zoomed = undefined;
+    this.#returnTo?.focus();
+  }
+
+  async #changeTray(change: Promise<string | undefined> | undefined): Promise<void> {
+    const problem = await change;
+    if (problem === undefined) return this.#closePanel();
+    this.desk?.dismiss(problem);
+    if (this.opened?.panel === 'tray') this.opened = { ...this.opened, error: problem };
+  }
+
+  #takeResult(): void {
+    const { desk } = this;
+    if (!desk?.snapshot) return;
+    const { tray, probability, status } = desk.snapshot.verdicts;
+    const rows = desk.items
+      .filter(({ number }) => status[number] !== Status.removed)
+      .map(({ number, name }) => {
+        const placed = (tray[number] ?? -1) >= 0;
+        return [name, placed ? desk.trayName(tray[number] ?? -1) : '', placed ? (probability[number] ?? 0).toFixed(4) : ''];
+      });
+    const link = document.createElement('a');
+    const url = URL.createObjectURL(new Blob([csv([['item', 'tray', 'probability'], ...rows])], { type: 'text/csv' }));
+    link.href = url;
+    link.download = 'sorted-pile.csv';
+    link.click();
+    setTimeout(() => URL.revokeObjectURL(url), 60_000);
+    desk.said = words.resultTaken(link.download);
+    this.requestUpdate();
+  }
+
+  #listeners(root: ShadowRoot): void {
+    const on = <T>(type: string, act: (detail: T) => void) =>
+      root.addEventListener(type, (event) => act((event as CustomEvent<T>).detail));
+    on('demo', () => void this.#demo());
+    on('choose-files', () => this.#choose(false));
+    on('choose-folder', () => this.#choose(true));
+    on('camera', () => void this.#openPanel({ panel: 'camera' }));
+    on<{ sources: Source[] }>('pictures', ({ sources }) => void this.#add({ sources, problems: [] }));
+    on<{ tray: number }>('answer', ({ tray }) => void this.#after(this.desk?.answer(tray) ?? Promise.resolve()));
+    on<{ name: string }>('answer-new', ({ name }) => void this.#after(this.desk?.answerNew(name) ?? Promise.resolve()));
+    on<{ item: number; tray: number }>('place', ({ item, tray }) => void (tray < 0 ? this.desk?.none(item) : this.desk?.answer(tray, item)));
+    on('none', () => void this.#after(this.desk?.none() ?? Promise.resolve()));
+    on('skip', () => void this.#after(this.desk?.skip() ?? Promise.resolve()));
+    on('withdraw', () => void this.desk?.withdraw());
+    on('back', () => this.desk?.backToQuestion());
+    on('zoom', () => void this.#zoom());
+    on<{ item: number }>('take', ({ item }) => this.#take(item));
+    on('stop', () => this.desk?.stop());
+    on('go-on', () => void this.desk?.goOn());
+    on<{ problem: string }>('dismiss', ({ problem }) => this.desk?.dismiss(problem));
+    on('dismiss-outcome', () => this.desk?.dismissOutcome());
+    on('closed', () => this.#closed());
+    on<{ on: boolean }>('single-keys', ({ on: keysOn }) => {
+      this.singleKeys = keysOn;
+      localStorage.setItem(SINGLE_KEYS, keysOn ? 'on' : 'off');
+    });
+    on<{ tray: number }>('tray-menu', ({ tray }) => void this.#openPanel({ panel: 'tray', tray }));
+    on<{ tray: number; name: string }>('rename-tray', ({ tray, name }) => void this.#changeTray(this.desk?.renameTray(tray, name)));
+    on<{ from: number; into: number }>('merge-trays', ({ from, into }) => void this.#changeTray(this.desk?.mergeTrays(from, into)));
+    on<{ tray: number }>('remove-tray', ({ tray }) => void this.#changeTray(this.desk?.removeTray(tray)));
+    on('clear', () => void this.#clear());
+  }
+
+  protected override createRenderRoot(): HTMLElement | DocumentFragment {
+    const root = super.createRenderRoot();
+    this.#listeners(root as ShadowRoot);
+    return root;
+  }
+
+  #take(item: number): void {
+    this.desk?.take(item);
+    const calm = matchMedia('(prefers-reduced-motion: reduce)').matches;
+    this.renderRoot.querySelector('.hand')?.scrollIntoView({ block: 'nearest', behavior: calm ? 'auto' : 'smooth' });
+  }
+
+  async #clear(): Promise<void> {
+    this.#closePanel();
+    this.#shelves?.tiles.clear();
+    await this.desk?.clear();
+  }
+
+  async #discard(): Promise<void> {
+    await PileClient.discard();
+    location.reload();
+  }
+
+  override render(): TemplateResult {
+    if (this.failed !== undefined) return this.#failure();
+    const { desk } = this;
+    const bench = desk?.snapshot !== undefined && (desk.view?.tally.items ?? 0) > 0;
+    return html`
+      ${this.#top(bench)}
+      ${desk
+        ? html`<ken-reading .progress=${desk.progress} .problems=${desk.problems} ?stopping=${desk.stopping}></ken-reading>`
+        : nothing}
+      ${bench ? this.#bench(desk) : this.#welcome()}
+      <footer>
+        <p>${words.caution}</p>
+        <p class="row">
+          <strong>${words.private}</strong>
+          <button class="plain" @click=${() => void this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
+          ${bench
+            ? html`<button class="plain" @click=${() => void this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
+            : nothing}
+        </p>
+      </footer>
+      <p class="visually-hidden" role="status">${desk?.said ?? ''}</p>
+      ${this.dropping ? html`<div class="dropping">${words.dropNow}</div>` : nothing} ${this.#panel()}
+    `;
+  }
+
+  #top(bench: boolean): TemplateResult {
+    const { desk } = this;
+    return html`<header class=${bench ? 'working' : ''}>
+      <p class="brand"><svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg><span>${words.brand}</span></p>
+      ${bench && desk
+        ? html`<ken-band .tally=${desk.view?.tally} given=${desk.answers}></ken-band>
+            <nav aria-label="Pile">
+              <button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
+              <button ?disabled=${!desk.snapshot?.canRedo} @click=${() => void desk.redo()}>${words.redo}</button>
+              <button popovertarget="ways">${words.add}</button>
+              <button class="strong" @click=${() => this.#takeResult()}>${words.result}</button>
+            </nav>
+            <div id="ways" popover class="ways">
+              <button class="plain" @click=${() => this.#choose(false)}>${words.chooseFiles}</button>
+              <button class="plain" @click=${() => this.#choose(true)}>${words.chooseFolder}</button>
+              ${hasCamera()
+                ? html`<button class="plain" @click=${() => void this.#openPanel({ panel: 'camera' })}>${words.camera}</button>`
+                : nothing}
+              <p class="soft">${words.dropHint}</p>
+            </div>`
+        : nothing}
+    </header>`;
+  }
+
+  #welcome(): TemplateResult {
+    return html`<ken-welcome ?loading=${this.demoLoading} ?hasCamera=${hasCamera()}></ken-welcome>`;
+  }
+
+  #bench(desk: Desk): TemplateResult {
+    return html`<main>
+      <div class="hand">
+        <ken-question
+          .item=${desk.handItem}
+          .picture=${desk.hand === undefined ? undefined : this.#picture(desk, desk.hand)}
+          .trays=${desk.snapshot?.trays ?? []}
+          .ranking=${desk.ranking}
+          .guess=${desk.guess}
+          .given=${desk.given}
+          .status=${desk.handStatus}
+          ?outOfTurn=${desk.outOfTurn}
+        ></ken-question>
+        <p class="said" aria-hidden="true">${desk.said}</p>
+      </div>
+      <ken-shelves
+        .view=${desk.view}
+        .snapshot=${desk.snapshot}
+        .items=${desk.items}
+        .hand=${desk.hand}
+        .movedItems=${desk.movedItems}
+      ></ken-shelves>
+    </main>`;
+  }
+
+  #pictureOf: { item: number; url: string | undefined } = { item: -1, url: undefined };
+
+  #picture(desk: Desk, item: number): string | undefined {
+    if (this.#pictureOf.item !== item) {
+      if (this.#pictureOf.url) URL.revokeObjectURL(this.#pictureOf.url);
+      const blob = desk.items[item]?.thumbnail;
+      this.#pictureOf = { item, url: blob && URL.createObjectURL(blob) };
+    }
+    return this.#pictureOf.url;
+  }
+
+  #panel(): TemplateResult | typeof nothing {
+    const { desk, opened } = this;
+    if (!opened || !desk) return nothing;
+    switch (opened.panel) {
+      case 'help':
+        return html`<ken-help class="panel" ?singleKeys=${this.singleKeys}></ken-help>`;
+      case 'camera':
+        return html`<ken-camera class="panel"></ken-camera>`;
+      case 'zoom':
+        return html`<ken-zoom class="panel" .picture=${this.#zoomed ?? this.#pictureOf.url} .name=${desk.handItem?.name ?? ''}></ken-zoom>`;
+      case 'start-over': {
+        const loss = words.startOverLoss(desk.view?.tally.items ?? 0, desk.snapshot?.trays.length ?? 0, desk.answers);
+        return html`<ken-start-over class="panel" loss=${loss}></ken-start-over>`;
+      }
+      case 'tray': {
+        const tray = desk.snapshot?.trays.find((one) => one.tray === opened.tray);
+        if (!tray) return nothing;
+        const others = desk.snapshot?.trays.filter((one) => one !== tray) ?? [];
+        return html`<ken-tray-panel class="panel" .tray=${tray} .others=${others} error=${opened.error ?? nothing}></ken-tray-panel>`;
+      }
+    }
+  }
+
+  #failure(): TemplateResult {
+    const code = this.failed instanceof KenspeckleError ? this.failed.code : (this.failed as { code?: string }).code;
+    return html`${this.#top(false)}
+      <main class="failure" role="alert">
+        <h1>${words.cantStart}</h1>
+        <p>${messageOf(this.failed)}</p>
+        <p class="row">
+          <button class="strong" @click=${() => location.reload()}>${words.reload}</button>
+          ${code?.startsWith('state-') ? html`<button class="alarm" @click=${() => void this.#discard()}>${words.discard}</button>` : nothing}
+        </p>
+      </main>`;
+  }
+
+  static override styles = [shared, appStyles];
+}
+
+customElements.define('ken-bench', Bench);

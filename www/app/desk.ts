@@ -1,0 +1,275 @@
+import {
+  type Action,
+  type Item,
+  messageOf,
+  type PileClient,
+  type Progress,
+  type Ranked,
+  type Saved,
+  type Snapshot,
+  type Source,
+  Status,
+} from '../kit/client';
+import { type BenchView, changedAnswer, layOut, moved } from './view';
+import { words } from './words';
+
+/** What lies on the bench: the pile, the item in hand, and what has to be said. */
+export class Desk {
+  readonly client: PileClient;
+  readonly #redraw: () => void;
+  snapshot: Snapshot | undefined;
+  view: BenchView | undefined;
+  /** The item in hand. It stays there until it is answered, whatever arrives meanwhile. */
+  hand: number | undefined;
+  ranking: Ranked[] = [];
+  movedItems: ReadonlySet<number> = new Set();
+  progress: Progress | undefined;
+  stopping = false;
+  problems: readonly string[] = [];
+  said = '';
+  #held: 'question' | 'person' = 'question';
+  #acting = false;
+  #turn: Promise<unknown> = Promise.resolve();
+  /** What was said about a failed save. */
+  #unsaved: string | undefined;
+
+  constructor(client: PileClient, redraw: () => void) {
+    this.client = client;
+    this.#redraw = redraw;
+    client.on('change', () => {
+      if (!this.#acting) void this.#show(undefined);
+    });
+    client.on('progress', ({ detail }) => {
+      this.progress = detail;
+      if (detail.state !== 'reading') this.stopping = false;
+      if (detail.state === 'finished' && detail.total > 0) this.said = words.readAll(detail.added);
+      this.#redraw();
+    });
+    client.on('saved', ({ detail }) => this.#saved(detail));
+    if (client.notKept !== undefined) this.complain(words.notKept);
+    void this.#show(undefined);
+  }
+
+  get items(): readonly Item[] {
+    return this.client.items;
+  }
+
+  get handItem(): Item | undefined {
+    return this.hand === undefined ? undefined : this.items[this.hand];
+  }
+
+  get handStatus(): number {
+    return this.#of(this.hand)?.status ?? Status.sorted;
+  }
+
+  /** Where the person put the item in hand. */
+  get given(): number | undefined {
+    const of = this.#of(this.hand);
+    return of?.status === Status.answered ? of.tray : undefined;
+  }
+
+  /** Where the sorter puts the item in hand. */
+  get guess(): number | undefined {
+    const of = this.#of(this.hand);
+    return of && of.tray >= 0 ? of.tray : undefined;
+  }
+
+  get outOfTurn(): boolean {
+    return this.#held === 'person' && this.snapshot?.question !== undefined && this.snapshot.question !== this.hand;
+  }
+
+  get answers(): number {
+    return this.snapshot?.trays.reduce((sum, { answers }) => sum + answers, 0) ?? 0;
+  }
+
+  trayName(tray: number): string {
+    return this.snapshot?.trays.find((one) => one.tray === tray)?.name ?? '';
+  }
+
+  complain(problem: string): void {
+    if (!this.problems.includes(problem)) this.problems = [...this.problems, problem];
+    this.#redraw();
+  }
+
+  dismiss(problem: string): void {
+    this.problems = this.problems.filter((one) => one !== problem);
+    this.#redraw();
+  }
+
+  dismissOutcome(): void {
+    this.progress = undefined;
+    this.#redraw();
+  }
+
+  async add(sources: readonly Source[]): Promise<void> {
+    if (sources.length === 0) return;
+    await this.client.add(sources).catch((error: unknown) => this.complain(messageOf(error)));
+  }
+
+  stop(): void {
+    this.stopping = true;
+    this.client.stop();
+    this.#redraw();
+  }
+
+  async goOn(): Promise<void> {
+    await this.client.goOn().catch((error: unknown) => this.complain(messageOf(error)));
+  }
+
+  take(item: number): void {
+    this.hand = item;
+    this.#held = 'person';
+    void this.#show(undefined);
+  }
+
+  backToQuestion(): void {
+    this.hand = undefined;
+    void this.#show(undefined);
+  }
+
+  /** Answers for an item: the one in hand unless another is named. Then the next question comes. */
+  async answer(tray: number, item = this.hand): Promise<void> {
+    if (item === undefined) return;
+    await this.#act({ do: 'answer', item, tray }, item, words.placed(this.trayName(tray)));
+  }
+
+  async answerNew(name: string): Promise<void> {
+    if (this.hand !== undefined) await this.#act({ do: 'answer-new', item: this.hand, name }, this.hand, words.placed(name));
+  }
+
+  async none(item = this.hand): Promise<void> {
+    if (item !== undefined) await this.#act({ do: 'none', item }, item, words.placedAside);
+  }
+
+  async skip(): Promise<void> {
+    if (this.hand !== undefined) await this.#act({ do: 'skip', item: this.hand }, this.hand, words.placedSkip);
+  }
+
+  async withdraw(): Promise<void> {
+    const item = this.hand;
+    if (item === undefined) return;
+    await this.#act({ do: 'withdraw', item }, undefined, words.withdrawn);
+  }
+
+  async removeItem(item: number): Promise<void> {
+    await this.#act({ do: 'remove-item', item }, item, words.takenOut(this.items[item]?.name ?? ''));
+  }
+
+  async renameTray(tray: number, name: string): Promise<string | undefined> {
+    return this.#act({ do: 'rename-tray', tray, name }, undefined, words.trayRenamed(name));
+  }
+
+  async mergeTrays(from: number, into: number): Promise<string | undefined> {
+    const said = words.trayMerged(this.trayName(from), this.trayName(into));
+    return this.#act({ do: 'merge-trays', from, into }, undefined, said);
+  }
+
+  async removeTray(tray: number): Promise<string | undefined> {
+    return this.#act({ do: 'remove-tray', tray }, undefined, words.trayRemoved(this.trayName(tray)));
+  }
+
+  async undo(): Promise<void> {
+    await this.#step('undo');
+  }
+
+  async redo(): Promise<void> {
+    await this.#step('redo');
+  }
+
+  async clear(): Promise<void> {
+    await this.client.clear();
+    this.progress = undefined;
+    this.problems = [];
+    this.hand = undefined;
+    this.said = '';
+    await this.#show(undefined);
+  }
+
+  #of(item: number | undefined): { tray: number; status: number } | undefined {
+    const verdicts = this.snapshot?.verdicts;
+    if (item === undefined || !verdicts || item >= verdicts.status.length) return undefined;
+    return { tray: verdicts.tray[item] ?? -1, status: verdicts.status[item] ?? 0 };
+  }
+
+  /** One after the other, so that fast fingers never answer for an item they have not seen the place of. */
+  async #inTurn<T>(work: () => Promise<T>): Promise<T> {
+    const turn = this.#turn.then(work, work);
+    this.#turn = turn.catch(() => undefined);
+    return turn;
+  }
+
+  /** `settled`: the item that has had its answer with this. Resolves to what went wrong, if so. */
+  #act(action: Action, settled: number | undefined, said: string): Promise<string | undefined> {
+    const start = performance.now();
+    return this.#inTurn(async () => {
+      this.#acting = true;
+      try {
+        await this.client.act(action);
+      } catch (error) {
+        this.complain(messageOf(error));
+        return messageOf(error);
+      } finally {
+        this.#acting = false;
+      }
+      const after = this.client.snapshot;
+      const others = after ? moved(this.snapshot, after, settled) : new Set<number>();
+      this.said = `${said} ${words.moved(others.size)}`;
+      if (settled !== undefined && settled === this.hand) this.hand = undefined;
+      await this.#show(others);
+      performance.measure('answer to sorted pile', { start, end: performance.now() });
+      return undefined;
+    });
+  }
+
+  async #step(way: 'undo' | 'redo'): Promise<void> {
+    await this.#inTurn(async () => {
+      const before = this.snapshot;
+      this.#acting = true;
+      const kind = await this.client.act({ do: way }).finally(() => (this.#acting = false));
+      const after = this.client.snapshot;
+      if (kind === undefined || !before || !after) return;
+      const item = changedAnswer(before, after);
+      if (way === 'undo' && item !== undefined && after.verdicts.status[item] !== Status.removed) {
+        this.hand = item;
+        this.#held = 'person';
+      } else if (way === 'redo' && item === this.hand) {
+        this.hand = undefined;
+      }
+      this.said = way === 'undo' ? words.undid(kind) : words.redid(kind);
+      await this.#show(moved(before, after, undefined));
+    });
+  }
+
+  /** Shows the client's snapshot; with it the ranking of the item in hand, so that the two never disagree. */
+  async #show(others: Set<number> | undefined): Promise<void> {
+    const snapshot = this.client.snapshot;
+    if (this.hand !== undefined && (!snapshot || snapshot.verdicts.status[this.hand] === Status.removed)) this.hand = undefined;
+    if (this.hand === undefined) {
+      this.hand = snapshot?.question;
+      this.#held = 'question';
+    }
+    const hand = this.hand;
+    const ranking = snapshot && hand !== undefined && snapshot.trays.length > 0 ? await this.client.ranking(hand).catch(() => []) : [];
+    if (snapshot !== this.client.snapshot && others === undefined) return;
+    this.ranking = ranking;
+    this.snapshot = snapshot;
+    this.view = snapshot && layOut(snapshot, this.items);
+    if (others) this.movedItems = others;
+    this.#redraw();
+  }
+
+  #saved(saved: Saved): void {
+    if (this.#unsaved !== undefined) this.dismiss(this.#unsaved);
+    if (!saved.ok) {
+      this.#unsaved = words.notSaved(saved.full, saved.message);
+      this.complain(this.#unsaved);
+      return;
+    }
+    if (this.#unsaved !== undefined) {
+      this.#unsaved = undefined;
+      this.said = words.savedAgain;
+      this.#redraw();
+    }
+    if ('withoutOriginals' in saved) this.complain(words.withoutOriginals);
+  }
+}

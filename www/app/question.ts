@@ -1,0 +1,405 @@
+import { css, html, LitElement, nothing, type PropertyValues, type TemplateResult } from 'lit';
+import { repeat } from 'lit/directives/repeat.js';
+import { type Item, type Ranked, Status, type Tray } from '../kit/client';
+import { ITEM_TYPE, tell, trayKey } from './event';
+import { fraction } from './fraction';
+import { shared } from './styles';
+import { percent, words } from './words';
+
+interface Option {
+  tray: Tray | undefined;
+  place: number;
+  label: string;
+}
+
+/** The item in hand and all ways to answer for it. */
+export class Question extends LitElement {
+  static override properties = {
+    item: { attribute: false },
+    picture: { attribute: false },
+    trays: { attribute: false },
+    ranking: { attribute: false },
+    guess: { attribute: false },
+    status: { attribute: false },
+    given: { attribute: false },
+    outOfTurn: { type: Boolean },
+    text: { state: true },
+    active: { state: true },
+  };
+
+  declare item: Item | undefined;
+  declare picture: string | undefined;
+  declare trays: Tray[];
+  declare ranking: Ranked[];
+  /** The tray the sorter puts it in, if it dares. */
+  declare guess: number | undefined;
+  declare status: number;
+  /** The tray the person put it in. */
+  declare given: number | undefined;
+  declare outOfTurn: boolean;
+  declare text: string;
+  declare active: number;
+
+  constructor() {
+    super();
+    this.trays = [];
+    this.ranking = [];
+    this.status = 0;
+    this.outOfTurn = false;
+    this.text = '';
+    this.active = 0;
+  }
+
+  /** Puts the cursor into the field. */
+  find(): void {
+    this.#field?.focus();
+    this.#field?.select();
+  }
+
+  /** Leaves the field, so that keys act again. */
+  settle(): void {
+    this.text = '';
+    this.renderRoot.querySelector<HTMLElement>('h2')?.focus({ preventScroll: true });
+  }
+
+  get #field(): HTMLInputElement | null {
+    return this.renderRoot.querySelector('input');
+  }
+
+  override willUpdate(changed: PropertyValues<this>): void {
+    if (changed.has('item') && changed.get('item')?.number !== this.item?.number) this.text = '';
+  }
+
+  get #options(): Option[] {
+    const typed = this.text.trim();
+    const key = typed.toLocaleLowerCase();
+    const all = this.trays.map((tray, place): Option => ({ tray, place, label: tray.name }));
+    const starting = all.filter(({ label }) => label.toLocaleLowerCase().startsWith(key));
+    const within = all.filter((option) => option.label.toLocaleLowerCase().includes(key) && !starting.includes(option));
+    const found = [...starting, ...within];
+    if (!all.some(({ label }) => label.toLocaleLowerCase() === key)) {
+      const fresh = { tray: undefined, place: -1, label: typed };
+      // A name that no tray begins with is a new one; the others come second.
+      if (starting.length === 0) found.unshift(fresh);
+      else found.push(fresh);
+    }
+    return found;
+  }
+
+  #choose(option: Option | undefined): void {
+    if (!option) return;
+    if (option.tray) tell(this, 'answer', { tray: option.tray.tray });
+    else if (option.label) tell(this, 'answer-new', { name: option.label });
+  }
+
+  #onFieldKey(event: KeyboardEvent): void {
+    const options = this.text.trim() ? this.#options : [];
+    if (event.key === 'Escape') {
+      this.settle();
+    } else if (event.key === 'Enter' && !event.isComposing) {
+      this.#choose(options[this.active]);
+    } else if (event.key === 'ArrowDown' && options.length > 0) {
+      this.active = (this.active + 1) % options.length;
+    } else if (event.key === 'ArrowUp' && options.length > 0) {
+      this.active = (this.active + options.length - 1) % options.length;
+    } else {
+      return;
+    }
+    event.preventDefault();
+  }
+
+  #onDrop(event: DragEvent, tray: number): void {
+    const dragged = event.dataTransfer?.getData(ITEM_TYPE);
+    if (!dragged) return;
+    event.preventDefault();
+    tell(this, 'place', { item: Number(dragged), tray });
+  }
+
+  #onDragOver(event: DragEvent): void {
+    if (event.dataTransfer?.types.includes(ITEM_TYPE)) event.preventDefault();
+  }
+
+  override render(): TemplateResult {
+    const { item } = this;
+    if (!item) {
+      return html`<section aria-labelledby="ask">
+        <h2 id="ask" tabindex="-1">${words.nothingToAsk}</h2>
+        <p class="soft">${words.nothingToAskHint}</p>
+      </section>`;
+    }
+    const typing = this.text.trim() !== '';
+    return html`
+      <section aria-labelledby="ask">
+        <header>
+          <h2 id="ask" tabindex="-1">${words.question}</h2>
+          <p class="soft name" title=${item.name}>${item.name}</p>
+        </header>
+        <div class="mat">
+          <img
+            src=${this.picture ?? nothing}
+            alt=${item.name}
+            draggable="true"
+            @dragstart=${(event: DragEvent) => event.dataTransfer?.setData(ITEM_TYPE, String(item.number))}
+          />
+          <button class="zoom" @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
+        </div>
+        ${this.#standing()}
+        ${this.trays.length > 0 && !typing ? this.#rows() : nothing}
+        <div class="field">
+          <input
+            type="text"
+            role="combobox"
+            aria-label=${this.trays.length === 0 ? words.firstTray : words.findTray}
+            aria-expanded=${typing ? 'true' : 'false'}
+            aria-controls="found"
+            aria-autocomplete="list"
+            aria-activedescendant=${typing ? `found-${this.active}` : nothing}
+            autocomplete="off"
+            autocapitalize="sentences"
+            spellcheck="false"
+            maxlength="120"
+            enterkeyhint="done"
+            placeholder=${this.trays.length === 0 ? words.firstTray : words.findTray}
+            .value=${this.text}
+            @input=${(event: InputEvent) => {
+              this.text = (event.target as HTMLInputElement).value;
+              this.active = 0;
+            }}
+            @keydown=${this.#onFieldKey}
+          />
+          ${this.trays.length > 0 && !typing ? html`<kbd class="hint in-field" aria-hidden="true">T</kbd>` : nothing}
+        </div>
+        <div id="found" role="listbox" aria-label=${words.choices} ?hidden=${!typing}>${typing ? this.#found() : nothing}</div>
+        ${this.trays.length === 0 ? html`<p class="soft hint-line">${words.firstTrayHint}</p>` : nothing}
+        ${this.trays.length === 1 ? html`<p class="soft hint-line">${words.secondTrayHint}</p>` : nothing}
+        <div class="row ways">
+          <button @click=${() => tell(this, 'none', {})}>${words.none} <kbd class="hint">N</kbd></button>
+          <button @click=${() => tell(this, 'skip', {})}>${words.cantTell} <kbd class="hint">C</kbd></button>
+          ${this.outOfTurn
+            ? html`<button class="plain" @click=${() => tell(this, 'back', {})}>${words.backToQuestion} <kbd class="hint">Q</kbd></button>`
+            : nothing}
+        </div>
+      </section>
+    `;
+  }
+
+  #standing(): TemplateResult | typeof nothing {
+    const tray = this.trays.find((one) => one.tray === this.given);
+    const text =
+      this.status === Status.answered && tray
+        ? words.yourAnswer(tray.name)
+        : this.status === Status.none
+          ? words.yourNone
+          : this.status === Status.skipped
+            ? words.askedEarlier
+            : undefined;
+    if (!text) return nothing;
+    return html`<p class="standing">
+      ${text}. <button class="plain" @click=${() => tell(this, 'withdraw', {})}>${words.withdraw}</button>
+    </p>`;
+  }
+
+  #rows(): TemplateResult {
+    const probability = new Map(this.ranking.map((ranked) => [ranked.tray, ranked.probability]));
+    return html`<ul class="rows" aria-label=${words.choices}>
+      ${repeat(
+        this.trays,
+        ({ tray }) => tray,
+        ({ tray, name }, place) => {
+          const share = this.guess === undefined ? undefined : probability.get(tray);
+          const guessed = tray === this.guess;
+          const key = trayKey(place);
+          return html`<li>
+            <button
+              class="choice ${guessed ? 'guessed' : ''} ${tray === this.given ? 'given' : ''}"
+              ${fraction(share ?? 0)}
+              @click=${() => tell(this, 'answer', { tray })}
+              @dragover=${this.#onDragOver}
+              @drop=${(event: DragEvent) => this.#onDrop(event, tray)}
+            >
+              ${key ? html`<kbd>${key}</kbd>` : html`<span class="no-key"></span>`}
+              <span class="label">${name}</span>
+              ${share === undefined ? nothing : html`<span class="figure">${percent(share)}</span>`}
+              ${guessed ? html`<span class="guess">${words.guess} <kbd class="hint">Enter</kbd></span>` : nothing}
+            </button>
+          </li>`;
+        },
+      )}
+    </ul>`;
+  }
+
+  #found(): TemplateResult[] {
+    return this.#options.map(
+      (option, index) => html`<div
+        id="found-${index}"
+        role="option"
+        class="choice option"
+        aria-selected=${index === this.active ? 'true' : 'false'}
+        @pointerdown=${(event: PointerEvent) => event.preventDefault()}
+        @click=${() => this.#choose(option)}
+      >
+        ${option.tray ? html`<kbd aria-hidden="true">${trayKey(option.place) ?? '·'}</kbd>` : html`<kbd aria-hidden="true">+</kbd>`}
+        <span class="label">${option.tray ? option.label : words.newTray(option.label)}</span>
+      </div>`,
+    );
+  }
+
+  static override styles = [
+    shared,
+    css`
+      :host {
+        display: block;
+      }
+      section {
+        display: flex;
+        flex-direction: column;
+        gap: 0.7rem;
+        min-height: 0;
+      }
+      header {
+        display: flex;
+        align-items: baseline;
+        gap: 0.8rem;
+      }
+      h2 {
+        font-size: 1.55rem;
+        line-height: 1.2;
+        white-space: nowrap;
+      }
+      h2:focus {
+        outline: none;
+      }
+      .name {
+        min-width: 0;
+        margin-inline-start: auto;
+        overflow: hidden;
+        text-overflow: ellipsis;
+        white-space: nowrap;
+        font-size: 0.88rem;
+        direction: rtl;
+        unicode-bidi: plaintext;
+      }
+      .mat {
+        position: relative;
+        display: flex;
+        padding: 8px;
+        border-radius: 14px;
+        background: var(--bright);
+      }
+      img {
+        width: 100%;
+        height: clamp(180px, 38vh, 420px);
+        object-fit: contain;
+        border-radius: 8px;
+        background: var(--raised);
+        cursor: grab;
+      }
+      .zoom {
+        position: absolute;
+        inset-block-end: 14px;
+        inset-inline-end: 14px;
+        background: var(--surface);
+      }
+      .rows {
+        display: grid;
+        grid-template-columns: repeat(auto-fill, minmax(min(178px, 100%), 1fr));
+        gap: 8px;
+        list-style: none;
+      }
+      .choice {
+        position: relative;
+        display: flex;
+        align-items: center;
+        gap: 0.55rem;
+        width: 100%;
+        min-height: 46px;
+        padding: 4px 10px 8px;
+        text-align: start;
+        overflow: hidden;
+      }
+      button.choice::after {
+        content: '';
+        position: absolute;
+        inset-inline-start: 0;
+        inset-block-end: 0;
+        block-size: 5px;
+        inline-size: calc(var(--fraction) * 100%);
+        background: var(--edge);
+      }
+      .choice .label {
+        flex: 1;
+        min-width: 0;
+        overflow-wrap: anywhere;
+        line-height: 1.2;
+        font-weight: 600;
+      }
+      .choice .figure {
+        font-variant-numeric: tabular-nums;
+        color: var(--ink-soft);
+        font-size: 0.9rem;
+      }
+      .choice.guessed {
+        flex-wrap: wrap;
+        row-gap: 0;
+        border: 2px solid var(--bright);
+        background: var(--bright-soft);
+      }
+      .choice.guessed .figure {
+        color: inherit;
+        font-weight: 600;
+      }
+      .choice.guessed::after {
+        background: var(--bright);
+      }
+      .choice .guess {
+        flex-basis: 100%;
+        font-size: 0.8rem;
+        line-height: 1.3;
+      }
+      .choice.given {
+        box-shadow: inset 0 0 0 2px var(--ink);
+      }
+      .no-key {
+        width: 1.6em;
+      }
+      .field {
+        position: relative;
+      }
+      .in-field {
+        position: absolute;
+        inset-inline-end: 10px;
+        top: 50%;
+        translate: 0 -50%;
+        pointer-events: none;
+      }
+      input:focus + .in-field {
+        visibility: hidden;
+      }
+      #found {
+        display: grid;
+        gap: 4px;
+      }
+      .option {
+        padding-block: 4px;
+        border: 2px solid transparent;
+        border-radius: var(--radius);
+        background: var(--raised);
+        cursor: pointer;
+      }
+      .option[aria-selected='true'] {
+        border-color: var(--ink);
+      }
+      .hint-line {
+        font-size: 0.94rem;
+      }
+      .standing {
+        display: flex;
+        flex-wrap: wrap;
+        align-items: center;
+        font-size: 0.94rem;
+      }
+    `,
+  ];
+}
+
+customElements.define('ken-question', Question);

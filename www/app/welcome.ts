@@ -1,0 +1,160 @@
+import { css, html, LitElement, type TemplateResult } from 'lit';
+import { tell } from './event';
+import { demoIndex, demoUrl } from './files';
+import { shared } from './styles';
+import { words } from './words';
+
+const HEAP = 36;
+
+/** The empty page: what it is for, and the ways to begin. */
+export class Welcome extends LitElement {
+  static override properties = {
+    ready: { type: Boolean },
+    loading: { type: Boolean },
+    hasCamera: { type: Boolean },
+    heap: { state: true },
+  };
+
+  declare ready: boolean;
+  declare loading: boolean;
+  declare hasCamera: boolean;
+  declare heap: string[];
+
+  constructor() {
+    super();
+    this.ready = false;
+    this.loading = false;
+    this.hasCamera = false;
+    this.heap = [];
+  }
+
+  override firstUpdated(): void {
+    void this.#fetchHeap();
+  }
+
+  async #fetchHeap(): Promise<void> {
+    // Without the pictures the page says the same in words.
+    const index = await demoIndex().catch(() => undefined);
+    if (!index) return;
+    const step = Math.max(1, Math.floor(index.items.length / HEAP));
+    this.heap = index.items
+      .filter((_, at) => at % step === 0)
+      .slice(0, HEAP)
+      .map(({ file }) => demoUrl(file));
+  }
+
+  override render(): TemplateResult {
+    return html`<main>
+      <div class="say">
+        <h1>${words.promise}</h1>
+        <p class="job">${words.job}</p>
+        <div class="row first">
+          <button class="bright big" ?disabled=${this.loading} @click=${() => tell(this, 'demo', {})}>
+            ${this.loading ? words.demoLoading : words.demo}
+          </button>
+          <button class="big strong" @click=${() => tell(this, 'choose-files', {})}>${words.chooseFiles}</button>
+        </div>
+        <div class="row">
+          <button @click=${() => tell(this, 'choose-folder', {})}>${words.chooseFolder}</button>
+          ${this.hasCamera ? html`<button @click=${() => tell(this, 'camera', {})}>${words.camera}</button>` : null}
+        </div>
+        <p class="soft">${words.dropHint}</p>
+        <p class="private"><strong>${words.private}</strong> ${words.privateLong}</p>
+      </div>
+      <div class="heap" aria-hidden="true" @click=${() => tell(this, 'demo', {})}>
+        ${this.heap.map((url) => html`<img src=${url} alt="" />`)}
+      </div>
+    </main>`;
+  }
+
+  static override styles = [
+    shared,
+    css`
+      main {
+        display: grid;
+        grid-template-columns: minmax(0, 1fr) minmax(0, 1fr);
+        gap: clamp(1.5rem, 5vw, 5rem);
+        align-items: center;
+        max-width: 1240px;
+        margin: 0 auto;
+        padding: clamp(1.2rem, 5vh, 4.5rem) clamp(1rem, 4vw, 3rem);
+      }
+      .say {
+        display: grid;
+        gap: 1.1rem;
+        justify-items: start;
+      }
+      h1 {
+        font-size: clamp(2rem, 4.6vw, 3.5rem);
+        line-height: 1.06;
+        letter-spacing: -0.02em;
+        text-wrap: balance;
+      }
+      .job {
+        font-size: 1.16rem;
+        max-width: 34em;
+        text-wrap: pretty;
+      }
+      .big {
+        min-height: 54px;
+        padding-inline: 1.4rem;
+        font-size: 1.1rem;
+      }
+      .private {
+        max-width: 34em;
+        padding-inline-start: 0.9rem;
+        border-inline-start: 4px solid var(--edge);
+      }
+      .heap {
+        display: grid;
+        grid-template-columns: repeat(6, minmax(0, 1fr));
+        min-height: 200px;
+        cursor: pointer;
+      }
+      .heap img {
+        width: 122%;
+        aspect-ratio: 1;
+        object-fit: cover;
+        border: 3px solid var(--raised);
+        border-radius: 8px;
+        box-shadow: 0 2px 6px rgb(0 0 0 / 0.22);
+        rotate: -5deg;
+      }
+      .heap img:nth-child(3n) {
+        rotate: 7deg;
+        translate: -4% 6%;
+      }
+      .heap img:nth-child(5n + 1) {
+        rotate: -11deg;
+        translate: 5% -7%;
+      }
+      .heap img:nth-child(7n + 3) {
+        rotate: 3deg;
+        translate: -8% -4%;
+      }
+      .heap img:nth-child(15) {
+        z-index: 1;
+        rotate: -3deg;
+        scale: 1.5;
+        border: 7px solid var(--bright);
+      }
+      @media (max-width: 820px) {
+        main {
+          grid-template-columns: minmax(0, 1fr);
+        }
+        .heap {
+          grid-template-columns: repeat(9, minmax(0, 1fr));
+          min-height: 0;
+        }
+        .heap img:nth-child(15) {
+          scale: 1.9;
+        }
+        .heap img:nth-child(n + 28) {
+          display: none;
+        }
+      }
+    `,
+  ];
+}
+
+customElements.define('ken-welcome', Welcome);

@@ -1,0 +1,197 @@
+import * as Comlink from 'comlink';
+import { deleteDB } from 'idb';
+import { type Assets, bundledAssets, compileCore, fetchBytes } from './core';
+import type { ReadPhoto } from './encode-worker';
+import { type Arrival, Intake, type Progress, type Source } from './intake';
+import { EncodePool } from './pool';
+import type { Saved } from './saver';
+import type { Action, Ranked, Snapshot, SortApi } from './sort-worker';
+
+export { KenspeckleError, codeOf, messageOf } from './error';
+export type { Duplicate, Progress, Refused, Source } from './intake';
+export type { Saved } from './saver';
+export { type Action, type Ranked, type Snapshot, Status, type Tray, type Verdicts } from './sort-worker';
+
+/** An item of the pile, by its number. */
+export interface Item {
+  number: number;
+  name: string;
+  width: number;
+  height: number;
+  thumbnail: Blob | undefined;
+}
+
+export interface ClientOptions {
+  /** The pile's name in this origin's storage. */
+  name?: string;
+  assets?: Assets;
+  /** Longest side of the small pictures, in pixels. */
+  thumbnailSide?: number;
+}
+
+interface ClientEvents {
+  /** The pile changed: `client.snapshot` and `client.items` are new. */
+  change: CustomEvent<Snapshot | undefined>;
+  progress: CustomEvent<Progress>;
+  saved: CustomEvent<Saved>;
+}
+
+/**
+ * A pile that is read, sorted and kept by workers. Every change resolves once the pile is sorted anew, and is written
+ * to the device's store right after.
+ */
+export class PileClient extends EventTarget {
+  readonly #sort: Comlink.Remote<SortApi>;
+  readonly #worker: Worker;
+  readonly #pool: EncodePool;
+  readonly #intake: Intake;
+  #items: Item[] = [];
+  #snapshot: Snapshot | undefined;
+  /** Why the browser keeps nothing, if so. */
+  #notKept: string | undefined;
+  /** Originals of this visit: files on disk, so they cost no memory. */
+  readonly #originals = new Map<number, Blob>();
+
+  private constructor(worker: Worker, pool: EncodePool, thumbnailSide: number) {
+    super();
+    this.#worker = worker;
+    this.#sort = Comlink.wrap<SortApi>(worker);
+    this.#pool = pool;
+    this.#intake = new Intake(
+      pool,
+      thumbnailSide,
+      (arrival) => this.#arrive(arrival),
+      (progress) => this.#emit('progress', progress),
+    );
+  }
+
+  /** Starts the workers and takes up the pile that this device keeps under the name. */
+  static async open(options: ClientOptions = {}): Promise<PileClient> {
+    const assets = options.assets ?? bundledAssets;
+    const module = compileCore(assets.wasm);
+    let encoder: Promise<Uint8Array> | undefined;
+    const pool = new EncodePool(async () => {
+      encoder ??= fetchBytes(assets.photoEncoder);
+      try {
+        return { module: await module, encoder: await encoder };
+      } catch (error) {
+        encoder = undefined;
+        throw error;
+      }
+    });
+    const worker = new Worker(new URL('./sort-worker.ts', import.meta.url), { type: 'module' });
+    const client = new PileClient(worker, pool, options.thumbnailSide ?? 384);
+    try {
+      await client.#open(await module, options.name ?? 'kenspeckle');
+    } catch (error) {
+      worker.terminate();
+      throw error;
+    }
+    return client;
+  }
+
+  /** Deletes a pile that can't be opened. */
+  static async discard(name = 'kenspeckle'): Promise<void> {
+    await deleteDB(name);
+  }
+
+  get items(): readonly Item[] {
+    return this.#items;
+  }
+
+  get snapshot(): Snapshot | undefined {
+    return this.#snapshot;
+  }
+
+  get notKept(): string | undefined {
+    return this.#notKept;
+  }
+
+  /** Loads the encoder ahead of the first photo. */
+  async warm(): Promise<void> {
+    await this.#pool.warm();
+  }
+
+  /** Adds photos to the pile. Resolves when all are read, or reading was stopped; `progress` events tell the rest. */
+  async add(sources: Iterable<Source>, signal?: AbortSignal): Promise<void> {
+    await this.#intake.add(sources, signal);
+  }
+
+  /** Stops reading; what is left can be read later with `goOn`. */
+  stop(): void {
+    this.#intake.stop();
+  }
+
+  async goOn(): Promise<void> {
+    await this.#intake.resume();
+  }
+
+  /** Changes the pile. Resolves to the kind of change that was undone or redone, if it was one. */
+  async act(action: Action): Promise<string | undefined> {
+    const { snapshot, kind } = await this.#sort.act(action);
+    this.#changed(snapshot);
+    return kind;
+  }
+
+  /** All trays for an item, most probable first. */
+  async ranking(item: number): Promise<Ranked[]> {
+    return this.#sort.ranking(item);
+  }
+
+  /** The photo as it came, where the device still has it. */
+  async original(item: number): Promise<Blob | undefined> {
+    return this.#originals.get(item) ?? (await this.#sort.original(item));
+  }
+
+  /** Resolves when all changes so far are written, or writing failed. */
+  async settled(): Promise<void> {
+    await this.#sort.settled();
+  }
+
+  /** Forgets the pile, here and on the device. */
+  async clear(): Promise<void> {
+    await this.#intake.cancel();
+    await this.#sort.clear();
+    this.#intake.forget();
+    this.#originals.clear();
+    this.#items = [];
+    this.#changed(undefined);
+  }
+
+  close(): void {
+    this.#worker.terminate();
+  }
+
+  on<K extends keyof ClientEvents>(type: K, listener: (event: ClientEvents[K]) => void): void {
+    this.addEventListener(type, listener as EventListener);
+  }
+
+  async #open(module: WebAssembly.Module, name: string): Promise<void> {
+    const report = Comlink.proxy((saved: Saved) => this.#emit('saved', saved));
+    const { items, snapshot, notKept } = await this.#sort.open(module, name, report);
+    this.#notKept = notKept;
+    this.#items = items;
+    for (const item of items) this.#intake.know(item.fingerprint, item.name);
+    this.#snapshot = snapshot;
+  }
+
+  async #arrive({ source, blob, read }: Arrival): Promise<void> {
+    const { name } = source;
+    const { embedding, width, height, fingerprint } = read satisfies ReadPhoto;
+    const thumbnail = new Blob([read.thumbnail], { type: 'image/jpeg' });
+    const item = { name, fingerprint, width, height, embedding, pictures: { thumbnail, original: blob } };
+    const { first, snapshot } = await this.#sort.add([item], this.#pool.facts);
+    this.#items.push({ number: first, name, width, height, thumbnail });
+    this.#originals.set(first, blob);
+    this.#changed(snapshot);
+  }
+
+  #changed(snapshot: Snapshot | undefined): void {
+    this.#snapshot = snapshot;
+    this.#emit('change', snapshot);
+  }
+
+  #emit<K extends keyof ClientEvents>(type: K, detail: ClientEvents[K]['detail']): void {
+    this.dispatchEvent(new CustomEvent(type, { detail }));
+  }
+}

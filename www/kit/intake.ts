@@ -1,0 +1,210 @@
+import type { ReadPhoto } from './encode-worker';
+import { codeOf, messageOf } from './error';
+import type { EncodePool } from './pool';
+
+/** One photo to be read. `name` may be a path. */
+export interface Source {
+  name: string;
+  blob: Blob | (() => Promise<Blob>);
+}
+
+export interface Refused {
+  name: string;
+  code: string;
+  message: string;
+}
+
+export interface Duplicate {
+  name: string;
+  /** The item with the same content that is already in the pile. */
+  of: string;
+}
+
+export interface Progress {
+  done: number;
+  total: number;
+  /** Of wall-clock time; absent until there is something to go by. */
+  secondsLeft: number | undefined;
+  state: 'reading' | 'stopped' | 'finished';
+  added: number;
+  refused: readonly Refused[];
+  duplicates: readonly Duplicate[];
+}
+
+export interface Arrival {
+  source: Source;
+  blob: Blob;
+  read: ReadPhoto;
+}
+
+interface Outcome {
+  source: Source;
+  arrival?: Arrival;
+  refused?: Refused;
+  /** Not this photo's fault: nothing can be read. */
+  fatal?: unknown;
+}
+
+/**
+ * Reads photos through the pool and hands them on in the order they came, whichever worker is faster: the same files give
+ * the same item numbers. At most two photos a worker are in memory at once.
+ */
+export class Intake {
+  readonly #pool: EncodePool;
+  readonly #thumbnailSide: number;
+  readonly #deliver: (arrival: Arrival) => Promise<void>;
+  readonly #onProgress: (progress: Progress) => void;
+  /** Names by fingerprint of all that the pile holds. */
+  readonly #known = new Map<string, string>();
+  #queue: Source[] = [];
+  #running: Promise<void> | undefined;
+  #inHand = 0;
+  #stopped = false;
+  #done = 0;
+  #added = 0;
+  #refused: Refused[] = [];
+  #duplicates: Duplicate[] = [];
+  #startedAt = 0;
+  #doneAtStart = 0;
+
+  constructor(
+    pool: EncodePool,
+    thumbnailSide: number,
+    deliver: (arrival: Arrival) => Promise<void>,
+    onProgress: (progress: Progress) => void,
+  ) {
+    this.#pool = pool;
+    this.#thumbnailSide = thumbnailSide;
+    this.#deliver = deliver;
+    this.#onProgress = onProgress;
+  }
+
+  know(fingerprint: string, name: string): void {
+    this.#known.set(fingerprint, name);
+  }
+
+  forget(): void {
+    this.#known.clear();
+  }
+
+  /** Queues photos. Resolves when the queue is empty or stopped. */
+  async add(sources: Iterable<Source>, signal?: AbortSignal): Promise<void> {
+    signal?.throwIfAborted();
+    const mine = [...sources];
+    if (!this.#running && this.#queue.length === 0) this.#reset();
+    this.#queue.push(...mine);
+    signal?.addEventListener('abort', () => {
+      const leave = new Set(mine);
+      this.#queue = this.#queue.filter((source) => !leave.has(source));
+      this.#report();
+    });
+    await this.resume();
+  }
+
+  /** Reads no further. What is being read is finished and kept; the rest stays queued for `resume`. */
+  stop(): void {
+    this.#stopped = true;
+  }
+
+  async resume(): Promise<void> {
+    this.#stopped = false;
+    this.#running ??= this.#run();
+    await this.#running;
+  }
+
+  /** Drops what is queued and waits until nothing is being read. */
+  async cancel(): Promise<void> {
+    this.#queue = [];
+    this.#stopped = true;
+    await this.#running?.catch(() => undefined);
+    this.#reset();
+  }
+
+  #reset(): void {
+    this.#done = 0;
+    this.#added = 0;
+    this.#refused = [];
+    this.#duplicates = [];
+  }
+
+  async #run(): Promise<void> {
+    // The caller has to see this run as running before its first report.
+    await Promise.resolve();
+    this.#startedAt = performance.now();
+    this.#doneAtStart = this.#done;
+    const window: Promise<Outcome>[] = [];
+    const unread: Source[] = [];
+    let fatal: unknown;
+    this.#report();
+    for (;;) {
+      while (!this.#stopped && window.length < 2 * this.#pool.size) {
+        const source = this.#queue.shift();
+        if (!source) break;
+        window.push(this.#read(source));
+      }
+      this.#inHand = window.length;
+      const next = window.shift();
+      if (!next) break;
+      const outcome = await next;
+      if (outcome.fatal === undefined) {
+        await this.#settle(outcome);
+      } else {
+        fatal ??= outcome.fatal;
+        this.#stopped = true;
+        unread.push(outcome.source);
+      }
+      this.#inHand = window.length;
+      this.#report();
+    }
+    this.#queue.unshift(...unread);
+    this.#running = undefined;
+    this.#report();
+    if (fatal !== undefined) throw fatal;
+  }
+
+  async #read(source: Source): Promise<Outcome> {
+    try {
+      const blob = typeof source.blob === 'function' ? await source.blob() : source.blob;
+      return { source, arrival: { source, blob, read: await this.#pool.read(blob, source.name, this.#thumbnailSide) } };
+    } catch (error) {
+      const code = codeOf(error);
+      if (code === 'asset-missing' || code === 'encoder-file') return { source, fatal: error };
+      return { source, refused: { name: source.name, code: code ?? 'unexpected', message: messageOf(error) } };
+    }
+  }
+
+  async #settle({ source, arrival, refused }: Outcome): Promise<void> {
+    this.#done++;
+    if (refused) this.#refused.push(refused);
+    if (!arrival) return;
+    const { fingerprint } = arrival.read;
+    const same = this.#known.get(fingerprint);
+    if (same !== undefined) {
+      this.#duplicates.push({ name: source.name, of: same });
+      return;
+    }
+    try {
+      await this.#deliver(arrival);
+    } catch (error) {
+      this.#refused.push({ name: source.name, code: codeOf(error) ?? 'unexpected', message: messageOf(error) });
+      return;
+    }
+    this.#known.set(fingerprint, source.name);
+    this.#added++;
+  }
+
+  #report(): void {
+    const left = this.#inHand + this.#queue.length;
+    const since = this.#done - this.#doneAtStart;
+    const elapsed = (performance.now() - this.#startedAt) / 1000;
+    this.#onProgress({
+      done: this.#done,
+      total: this.#done + left,
+      secondsLeft: since > 1 ? (elapsed / since) * left : undefined,
+      state: this.#running && !this.#stopped ? 'reading' : left > 0 ? 'stopped' : 'finished',
+      added: this.#added,
+      refused: [...this.#refused],
+      duplicates: [...this.#duplicates],
+    });
+  }
+}
