@@ -45,7 +45,7 @@ const demoPile: Plugin = {
   },
   generateBundle() {
     if (!existsSync(pile)) return;
-    for (const name of readdirSync(pile)) {
+    for (const name of readdirSync(pile).filter((name) => !name.startsWith('.'))) {
       this.emitFile({ type: 'asset', fileName: `demo/pile/${name}`, source: readFileSync(join(pile, name)) });
     }
   },

@@ -39,6 +39,13 @@ export const appStyles = css`
   nav {
     display: flex;
     gap: 8px;
+    white-space: nowrap;
+  }
+  .wide {
+    white-space: pre;
+  }
+  .narrow {
+    display: none;
   }
   .ways {
     inset: 62px 20px auto auto;
@@ -74,10 +81,16 @@ export const appStyles = css`
     position: sticky;
     top: 84px;
     max-height: calc(100dvh - 96px);
+    display: flex;
+    flex-direction: column;
     overflow: auto;
     margin: -6px;
     padding: 6px;
     scrollbar-gutter: stable;
+  }
+  ken-question {
+    flex: 0 1 auto;
+    min-height: 0;
   }
   .said {
     min-height: 1.5em;
@@ -152,8 +165,12 @@ export const appStyles = css`
     .brand svg {
       width: 28px;
     }
-    header.working .brand span {
+    header.working .brand span,
+    .wide {
       display: none;
+    }
+    .narrow {
+      display: inline;
     }
     nav {
       gap: 6px;

@@ -7,7 +7,8 @@ import { Desk } from './desk';
 import { demoSources, type Found, fromClipboard, fromList, fromTransfer } from './files';
 import { commandOf, isTyping } from './keys';
 import { appStyles } from './app-styles';
-import type { Panel } from './panels';
+import { type Panel } from './panels';
+import './panels';
 import type { Question } from './question';
 import './question';
 import './reading';
@@ -174,7 +175,7 @@ export class Bench extends LitElement {
         this.#shelves?.holdPlace();
         return void desk.removeItem(focused);
       case 'help':
-        return void this.#openPanel({ panel: 'help' });
+        return this.#openPanel({ panel: 'help' });
     }
   }
 
@@ -190,15 +191,13 @@ export class Bench extends LitElement {
     if (desk?.hand === undefined) return;
     const original = await desk.client.original(desk.hand);
     this.#zoomed = original ? URL.createObjectURL(original) : undefined;
-    await this.#openPanel({ panel: 'zoom' });
+    this.#openPanel({ panel: 'zoom' });
   }
 
-  async #openPanel(opened: Opened): Promise<void> {
+  #openPanel(opened: Opened): void {
     this.renderRoot.querySelector<HTMLElement>('[popover]')?.hidePopover();
     const active = (this.renderRoot as ShadowRoot).activeElement;
     this.#returnTo = active instanceof HTMLElement ? active : undefined;
-    if (opened.panel === 'camera') await import('./camera');
-    else await import('./panels');
     this.opened = opened;
   }
 
@@ -248,7 +247,7 @@ export class Bench extends LitElement {
     on('demo', () => void this.#demo());
     on('choose-files', () => this.#choose(false));
     on('choose-folder', () => this.#choose(true));
-    on('camera', () => void this.#openPanel({ panel: 'camera' }));
+    on('camera', () => this.#openPanel({ panel: 'camera' }));
     on<{ sources: Source[] }>('pictures', ({ sources }) => void this.#add({ sources, problems: [] }));
     on<{ tray: number }>('answer', ({ tray }) => void this.#after(this.desk?.answer(tray) ?? Promise.resolve()));
     on<{ name: string }>('answer-new', ({ name }) => void this.#after(this.desk?.answerNew(name) ?? Promise.resolve()));
@@ -268,7 +267,7 @@ export class Bench extends LitElement {
       this.singleKeys = keysOn;
       localStorage.setItem(SINGLE_KEYS, keysOn ? 'on' : 'off');
     });
-    on<{ tray: number }>('tray-menu', ({ tray }) => void this.#openPanel({ panel: 'tray', tray }));
+    on<{ tray: number }>('tray-menu', ({ tray }) => this.#openPanel({ panel: 'tray', tray }));
     on<{ tray: number; name: string }>('rename-tray', ({ tray, name }) => void this.#changeTray(this.desk?.renameTray(tray, name)));
     on<{ from: number; into: number }>('merge-trays', ({ from, into }) => void this.#changeTray(this.desk?.mergeTrays(from, into)));
     on<{ tray: number }>('remove-tray', ({ tray }) => void this.#changeTray(this.desk?.removeTray(tray)));
@@ -312,9 +311,9 @@ export class Bench extends LitElement {
         <p>${words.caution}</p>
         <p class="row">
           <strong>${words.private}</strong>
-          <button class="plain" @click=${() => void this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
+          <button class="plain" @click=${() => this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
           ${bench
-            ? html`<button class="plain" @click=${() => void this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
+            ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
             : nothing}
         </p>
       </footer>
@@ -328,18 +327,18 @@ export class Bench extends LitElement {
     return html`<header class=${bench ? 'working' : ''}>
       <p class="brand"><svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg><span>${words.brand}</span></p>
       ${bench && desk
-        ? html`<ken-band .tally=${desk.view?.tally} given=${desk.answers}></ken-band>
+        ? html`<ken-band .tally=${desk.view?.tally}></ken-band>
             <nav aria-label="Pile">
               <button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
               <button ?disabled=${!desk.snapshot?.canRedo} @click=${() => void desk.redo()}>${words.redo}</button>
-              <button popovertarget="ways">${words.add}</button>
-              <button class="strong" @click=${() => this.#takeResult()}>${words.result}</button>
+              <button popovertarget="ways">${words.add[0]}<span class="wide">${words.add[1]}</span></button>
+              <button class="strong" @click=${() => this.#takeResult()}><span class="wide">${words.result[0]}</span><span class="narrow">${words.result[1]}</span></button>
             </nav>
             <div id="ways" popover class="ways">
               <button class="plain" @click=${() => this.#choose(false)}>${words.chooseFiles}</button>
               <button class="plain" @click=${() => this.#choose(true)}>${words.chooseFolder}</button>
               ${hasCamera()
-                ? html`<button class="plain" @click=${() => void this.#openPanel({ panel: 'camera' })}>${words.camera}</button>`
+                ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'camera' })}>${words.camera}</button>`
                 : nothing}
               <p class="soft">${words.dropHint}</p>
             </div>`

@@ -6,10 +6,9 @@ import { words } from './words';
 
 /** The whole pile as one bar: what is answered, sure, unsure, open. */
 export class Band extends LitElement {
-  static override properties = { tally: { attribute: false }, given: { type: Number } };
+  static override properties = { tally: { attribute: false } };
 
   declare tally: Tally | undefined;
-  declare given: number;
 
   override render(): TemplateResult | typeof nothing {
     const { tally } = this;
@@ -27,7 +26,7 @@ export class Band extends LitElement {
         ${parts.map(([kind, n]) => html`<span class=${kind} ${fraction(n / tally.items)}></span>`)}
       </div>
       <p>
-        <strong>${words.bandTitle(tally.items, this.given)}</strong>
+        <strong>${words.bandTitle(tally.items)}</strong>
         ${parts.map(([kind, n, say]) => html`<span class="part"><span class="swatch ${kind}" aria-hidden="true"></span>${say(n)}</span>`)}
       </p>`;
   }

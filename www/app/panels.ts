@@ -78,6 +78,10 @@ abstract class Panel extends LitElement {
         height: 22px;
         accent-color: var(--ink);
       }
+      .top {
+        flex-wrap: nowrap;
+        justify-content: space-between;
+      }
       .end {
         justify-content: flex-end;
       }
@@ -100,7 +104,10 @@ export class HelpPanel extends Panel {
   protected readonly label = words.helpTitle;
 
   protected content(): TemplateResult {
-    return html`<h2>${words.helpTitle}</h2>
+    return html`<div class="row top">
+        <h2>${words.helpTitle}</h2>
+        <button autofocus @click=${() => this.close()}>${words.close}</button>
+      </div>
       <ol>
         ${words.helpSteps.map((step) => html`<li>${step}</li>`)}
       </ol>
@@ -130,8 +137,7 @@ export class HelpPanel extends Panel {
         <h3>${words.limitsTitle}</h3>
         <p>${words.limits}</p>
         <p>${words.caution}</p>
-      </div>
-      <div class="row end"><button class="strong" autofocus @click=${() => this.close()}>${words.close}</button></div>`;
+      </div>`;
   }
 }
 
@@ -226,10 +232,6 @@ export class ZoomPanel extends Panel {
         height: 100%;
         grid-template-rows: auto minmax(0, 1fr);
         padding: 0.8rem;
-      }
-      .top {
-        flex-wrap: nowrap;
-        justify-content: space-between;
       }
       h2 {
         min-width: 0;

@@ -248,9 +248,11 @@ export class Question extends LitElement {
     shared,
     css`
       :host {
-        display: block;
+        display: flex;
+        flex-direction: column;
       }
       section {
+        flex: 1 1 auto;
         display: flex;
         flex-direction: column;
         gap: 0.7rem;
@@ -282,16 +284,19 @@ export class Question extends LitElement {
       .mat {
         position: relative;
         display: flex;
+        flex: 1 1 auto;
+        height: clamp(190px, 40vh, 460px);
+        min-height: 170px;
         padding: 8px;
         border-radius: 14px;
         background: var(--bright);
       }
       img {
         width: 100%;
-        height: clamp(180px, 38vh, 420px);
+        height: 100%;
         object-fit: contain;
         border-radius: 8px;
-        background: var(--raised);
+        background: var(--quiet);
         cursor: grab;
       }
       .zoom {
@@ -362,6 +367,15 @@ export class Question extends LitElement {
       .no-key {
         width: 1.6em;
       }
+      @media (pointer: coarse), (max-width: 820px) {
+        .mat {
+          height: clamp(190px, 33vh, 460px);
+        }
+        .choice kbd,
+        .no-key {
+          display: none;
+        }
+      }
       .field {
         position: relative;
       }
@@ -376,6 +390,8 @@ export class Question extends LitElement {
         visibility: hidden;
       }
       #found {
+        max-height: 15rem;
+        overflow: auto;
         display: grid;
         gap: 4px;
       }

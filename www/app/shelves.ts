@@ -10,11 +10,15 @@ import { count, words } from './words';
 const PILE = -1;
 const ASIDE = -2;
 
-/** Rows shown of a folded shelf. */
+/** Rows shown of a folded shelf; what one part does not need the other may use. */
 const BACK_ROWS = 2;
 const FRONT_ROWS = 1;
-const PILE_ROWS = 5;
+const PILE_ROWS = 6;
+/** In pixels, as in the style sheet below. */
 const GAP = 5;
+const SHELF_GAP = 20;
+const SHELF_LEAST = 330;
+const SHELF_PADDING = 24;
 
 interface Drawn {
   tray: number;
@@ -88,9 +92,13 @@ export class Shelves extends LitElement {
   }
 
   #measure(): void {
-    const shelf = this.renderRoot.querySelector('.shelf:not(.wide) .rows');
-    const width = shelf?.clientWidth ?? 0;
-    if (width > 0 && width !== this.width) this.width = width;
+    if (this.clientWidth > 0 && this.clientWidth !== this.width) this.width = this.clientWidth;
+  }
+
+  /** Of the room for pictures on a shelf. */
+  #room(wide: boolean): number {
+    const abreast = wide ? 1 : Math.max(1, Math.floor((this.width + SHELF_GAP) / (SHELF_LEAST + SHELF_GAP)));
+    return (this.width + SHELF_GAP) / abreast - SHELF_GAP - SHELF_PADDING;
   }
 
   #style(name: string): number {
@@ -130,10 +138,12 @@ export class Shelves extends LitElement {
     if (this.open === shelf.tray) return { back: Infinity, front: Infinity };
     const small = this.#style('--tile');
     const large = this.#style('--tile-front');
-    const rows = shelf.tray === PILE ? PILE_ROWS : BACK_ROWS;
-    const back = this.#columns(small, this.width) * rows;
-    const front = this.#columns(large, this.width) * FRONT_ROWS;
-    return { back, front };
+    const room = this.#room(shelf.tray === PILE);
+    const back = this.#columns(small, room);
+    const front = this.#columns(large, room);
+    if (shelf.tray === PILE) return { back: back * PILE_ROWS, front: 0 };
+    if (shelf.front.length === 0) return { back: back * 2 * BACK_ROWS, front: 0 };
+    return { back: back * BACK_ROWS, front: front * (shelf.back.length <= back ? 2 * FRONT_ROWS : FRONT_ROWS) };
   }
 
   #shelf(shelf: Drawn): TemplateResult {
@@ -327,13 +337,13 @@ export class Shelves extends LitElement {
       .front {
         display: grid;
         gap: 5px;
-        justify-content: start;
       }
       .back {
         grid-template-columns: repeat(auto-fill, var(--tile));
+        justify-content: start;
       }
       .front {
-        grid-template-columns: repeat(auto-fill, var(--tile-front));
+        grid-template-columns: repeat(auto-fill, minmax(var(--tile-front), 1fr));
       }
       .plate {
         display: flex;

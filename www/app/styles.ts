@@ -100,7 +100,7 @@ export const shared = css`
     line-height: 1.45;
     text-align: center;
   }
-  @media (hover: none) and (pointer: coarse) {
+  @media (pointer: coarse), (max-width: 820px) {
     kbd.hint {
       display: none;
     }

@@ -130,10 +130,6 @@ export class Tiles {
       user-select: none;
       -webkit-user-select: none;
     }
-    .front .tile {
-      width: var(--tile-front);
-      height: calc(var(--tile-front) + 24px);
-    }
     .tile img {
       display: block;
       width: 100%;
@@ -142,14 +138,13 @@ export class Tiles {
       border-radius: inherit;
     }
     .front .tile img {
-      height: var(--tile-front);
+      height: auto;
+      aspect-ratio: 1;
     }
     .tile .figure {
       display: none;
     }
     .front .tile .figure {
-      position: absolute;
-      inset: auto 0 0 0;
       display: block;
       height: 24px;
       padding-top: 5px;
@@ -160,6 +155,8 @@ export class Tiles {
       color: var(--ink);
     }
     .front .tile {
+      width: auto;
+      height: auto;
       background: transparent;
     }
     .front .tile::before {
@@ -167,7 +164,7 @@ export class Tiles {
       position: absolute;
       z-index: 1;
       inset-inline-start: 0;
-      top: calc(var(--tile-front) + 2px);
+      inset-block-end: 18px;
       height: 4px;
       width: calc(var(--fraction) * 100%);
       border-radius: 2px;

@@ -46,7 +46,7 @@ export class Welcome extends LitElement {
   override render(): TemplateResult {
     return html`<main>
       <div class="say">
-        <h1>${words.promise}</h1>
+        <h1>${words.promise.map((line) => html`<span>${line}</span> `)}</h1>
         <p class="job">${words.job}</p>
         <div class="row first">
           <button class="bright big" ?disabled=${this.loading} @click=${() => tell(this, 'demo', {})}>
@@ -58,7 +58,7 @@ export class Welcome extends LitElement {
           <button @click=${() => tell(this, 'choose-folder', {})}>${words.chooseFolder}</button>
           ${this.hasCamera ? html`<button @click=${() => tell(this, 'camera', {})}>${words.camera}</button>` : null}
         </div>
-        <p class="soft">${words.dropHint}</p>
+        <p class="soft drop">${words.dropHint}</p>
         <p class="private"><strong>${words.private}</strong> ${words.privateLong}</p>
       </div>
       <div class="heap" aria-hidden="true" @click=${() => tell(this, 'demo', {})}>
@@ -89,6 +89,9 @@ export class Welcome extends LitElement {
         line-height: 1.06;
         letter-spacing: -0.02em;
         text-wrap: balance;
+      }
+      h1 span {
+        display: block;
       }
       .job {
         font-size: 1.16rem;
@@ -143,13 +146,27 @@ export class Welcome extends LitElement {
           grid-template-columns: minmax(0, 1fr);
         }
         .heap {
+          order: -1;
           grid-template-columns: repeat(9, minmax(0, 1fr));
           min-height: 0;
+          padding-inline-end: 8px;
+        }
+        .heap img {
+          border-width: 2px;
         }
         .heap img:nth-child(15) {
-          scale: 1.9;
+          scale: 1.7;
+          border-width: 3px;
         }
-        .heap img:nth-child(n + 28) {
+        .heap img:nth-child(n + 19) {
+          display: none;
+        }
+        main {
+          gap: 1.8rem;
+        }
+      }
+      @media (hover: none) {
+        .drop {
           display: none;
         }
       }

@@ -37,7 +37,7 @@ export const words = {
   brand: 'Kenspeckle',
 
   // The empty page
-  promise: 'Show a few. The rest sorts itself.',
+  promise: ['Show a few.', 'The rest sorts itself.'],
   job: 'For a pile of photos and categories that exist only in your head. Say for a handful where they belong. After every answer the whole pile sorts itself anew, and shows you where it is unsure.',
   demo: 'Try the demo pile',
   demoLoading: 'Fetching the demo pile …',
@@ -55,7 +55,7 @@ export const words = {
   yourAnswer: (tray: string) => `You put it in ${tray}`,
   yourNone: 'You set it aside',
   askedEarlier: 'You couldn’t tell',
-  guess: 'the sorter’s guess',
+  guess: 'sorter’s guess',
   findTray: 'Name a new tray, or find one',
   firstTray: 'Name the tray it belongs in',
   firstTrayHint: 'Any name you would write on a label. Then Enter.',
@@ -97,13 +97,13 @@ export const words = {
   unsureCount: (n: number) => `${count(n)} unsure`,
   unsorted: (n: number) => `${count(n)} not sorted`,
   asideCount: (n: number) => `${count(n)} set aside`,
-  bandTitle: (items: number, given: number) => `${photos(items)}, ${answers(given)}`,
+  bandTitle: (items: number) => photos(items),
 
   // Top
   undo: 'Undo',
   redo: 'Redo',
-  add: 'Add photos',
-  result: 'Take result',
+  add: ['Add', ' photos'],
+  result: ['Take result', 'Result'],
   help: 'Help',
 
   // What happened
