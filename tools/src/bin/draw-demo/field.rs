@@ -9,7 +9,10 @@ pub struct Field {
 impl Field {
     /// A field of zeros.
     pub fn new(side: usize) -> Self {
-        Self { side, values: vec![0.0; side * side] }
+        Self {
+            side,
+            values: vec![0.0; side * side],
+        }
     }
 
     /// A field with the value of `f(column, row)` everywhere.
@@ -50,6 +53,14 @@ impl Field {
         self.values.iter().copied().fold(f32::MIN, f32::max)
     }
 
+    /// The first and last row with a value above this; (0, 0) if there is none.
+    pub fn rows_above(&self, bound: f32) -> (usize, usize) {
+        let row = |i: usize| i / self.side;
+        let first = self.values.iter().position(|&v| v > bound).map_or(0, row);
+        let last = self.values.iter().rposition(|&v| v > bound).map_or(0, row);
+        (first, last)
+    }
+
     /// The change from column to column.
     pub fn slope_x(&self, column: usize, row: usize) -> f32 {
         let (before, after) = (column.saturating_sub(1), (column + 1).min(self.side - 1));
@@ -66,7 +77,8 @@ impl Field {
     pub fn halved(&self) -> Self {
         Self::from(self.side / 2, |column, row| {
             let (x, y) = (2 * column, 2 * row);
-            (self.get(x, y) + self.get(x + 1, y) + self.get(x, y + 1) + self.get(x + 1, y + 1)) / 4.0
+            (self.get(x, y) + self.get(x + 1, y) + self.get(x, y + 1) + self.get(x + 1, y + 1))
+                / 4.0
         })
     }
 

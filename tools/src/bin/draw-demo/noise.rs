@@ -53,8 +53,9 @@ fn fractal(dice: &mut Dice, first: usize, octaves: usize) -> Tile {
     let mut strength = 1.0;
     let mut waves = first;
     for _ in 0..octaves {
-        let gradients: Vec<(f32, f32)> =
-            (0..waves * waves).map(|_| super::math::angle(dice.range(0.0, core::f32::consts::TAU))).collect();
+        let gradients: Vec<(f32, f32)> = (0..waves * waves)
+            .map(|_| super::math::angle(dice.range(0.0, core::f32::consts::TAU)))
+            .collect();
         for row in 0..SIDE {
             let y = row as f32 * waves as f32 / SIDE as f32;
             let (iy, ty) = (y as usize, y - y.floor());
@@ -78,7 +79,9 @@ fn fractal(dice: &mut Dice, first: usize, octaves: usize) -> Tile {
 }
 
 fn cells(dice: &mut Dice, across: usize) -> Tile {
-    let points: Vec<(f32, f32)> = (0..across * across).map(|_| (dice.unit(), dice.unit())).collect();
+    let points: Vec<(f32, f32)> = (0..across * across)
+        .map(|_| (dice.unit(), dice.unit()))
+        .collect();
     let mut values = Vec::with_capacity(SIDE * SIDE);
     for row in 0..SIDE {
         for column in 0..SIDE {

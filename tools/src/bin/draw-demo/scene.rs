@@ -22,6 +22,9 @@ pub const SIDE: usize = 288;
 const FINER: usize = 2;
 const DRAWN: usize = SIDE * FINER;
 
+/// So little shine that it does not show.
+const MATT: f32 = 0.02;
+
 /// Where the thing lies and how it fared.
 struct Pose {
     centre: (f32, f32),
@@ -53,11 +56,15 @@ impl Pose {
         });
         Self {
             centre: (dice.range(-0.11, 0.11), dice.range(-0.11, 0.11)),
-            scale: dice.range(0.6, 0.8),
+            scale: dice.range(0.64, 0.82),
             // Most finds are laid the right way up, more or less.
-            turn: angle(if dice.chance(0.15) { dice.range(0.0, TAU) } else { 0.3 * dice.normal() }),
-            squeeze: dice.range(0.84, 1.0),
-            wear: dice.unit() * dice.unit(),
+            turn: angle(if dice.chance(0.06) {
+                dice.range(0.0, TAU)
+            } else {
+                0.17 * dice.normal()
+            }),
+            squeeze: dice.range(0.88, 1.0),
+            wear: 0.9 * dice.unit() * dice.unit(),
             chips,
             snap,
             at: (dice.range(0.0, 9.0), dice.range(0.0, 9.0)),
@@ -76,7 +83,7 @@ struct Light {
 impl Light {
     fn new(dice: &mut Dice) -> Self {
         // Most benches have the lamp at the upper left; nothing forces it.
-        let around = -0.75 * core::f32::consts::PI + 1.0 * dice.normal();
+        let around = -0.75 * core::f32::consts::PI + 0.75 * dice.normal();
         let high = dice.range(0.5, 0.95);
         let (cos, sin) = angle(around);
         let (flat, up) = angle(high);
@@ -84,12 +91,23 @@ impl Light {
         let lamp = times([1.0 + warm, 1.0, 1.0 - 1.25 * warm], dice.range(2.1, 2.7));
         let cool = dice.range(0.0, 0.14);
         let room = times([1.0 - cool, 1.0, 1.0 + cool], dice.range(0.34, 0.62));
-        Self { towards: (cos * flat, sin * flat, up), lamp, room, softness: dice.range(0.18, 0.5) }
+        Self {
+            towards: (cos * flat, sin * flat, up),
+            lamp,
+            room,
+            softness: dice.range(0.18, 0.5),
+        }
     }
 }
 
 /// Draws a thing: the picture's pixels, red, green and blue, row by row.
-pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Material, tally: bool) -> Vec<u8> {
+pub fn draw(
+    noise: &Noise,
+    dice: &mut Dice,
+    thing: &dyn Solid,
+    material: &Material,
+    tally: bool,
+) -> Vec<u8> {
     let bench = Bench::new(dice);
     let pose = Pose::new(dice, tally);
     let light = Light::new(dice);
@@ -106,7 +124,15 @@ pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Materi
                 Some(found) => found,
                 None => {
                     let (height, colour) = bench.at(noise, x, y);
-                    (height, Surface { colour, roughness: 0.9, shine: 0.02, metal: 0.0 })
+                    (
+                        height,
+                        Surface {
+                            colour,
+                            roughness: 0.9,
+                            shine: MATT,
+                            metal: 0.0,
+                        },
+                    )
                 }
             };
             heights.set(column, row, height);
@@ -115,7 +141,7 @@ pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Materi
     }
 
     let coarse = heights.halved();
-    let shadow = shadows(&coarse, &light);
+    let shadow = shadows(&coarse.halved(), &light);
     let corners = corners(&coarse);
     let mut linear = vec![[0.0f32; 3]; SIDE * SIDE];
     for row in 0..DRAWN {
@@ -128,7 +154,7 @@ pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Materi
             let seen = shade(
                 &surfaces[row * DRAWN + column],
                 (nx * norm, ny * norm, norm),
-                shadow.at(at.0, at.1),
+                shadow.at(at.0 * 0.5 - 0.25, at.1 * 0.5 - 0.25),
                 corners.at(at.0, at.1),
                 &light,
             );
@@ -142,8 +168,18 @@ pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Materi
 }
 
 /// Height and surface of the thing at (x, y) of the picture, or nothing beside it.
-fn thing_at(noise: &Noise, thing: &dyn Solid, material: &Material, pose: &Pose, x: f32, y: f32) -> Option<(f32, Surface)> {
-    let (u, v) = ((x - pose.centre.0) / pose.scale, (y - pose.centre.1) / (pose.scale * pose.squeeze));
+fn thing_at(
+    noise: &Noise,
+    thing: &dyn Solid,
+    material: &Material,
+    pose: &Pose,
+    x: f32,
+    y: f32,
+) -> Option<(f32, Surface)> {
+    let (u, v) = (
+        (x - pose.centre.0) / pose.scale,
+        (y - pose.centre.1) / (pose.scale * pose.squeeze),
+    );
     if u * u + v * v > 1.7 {
         return None;
     }
@@ -189,7 +225,14 @@ fn thing_at(noise: &Noise, thing: &dyn Solid, material: &Material, pose: &Pose, 
     } else {
         relief
     };
-    let spot = Spot { x: u, y: v, low: low * smooth(0.0, 0.1, -edge), inside: -edge, fresh, paint: found.paint };
+    let spot = Spot {
+        x: u,
+        y: v,
+        low: low * smooth(0.0, 0.1, -edge),
+        inside: -edge,
+        fresh,
+        paint: found.paint,
+    };
     Some((height * pose.scale, material.surface(noise, &spot)))
 }
 
@@ -201,10 +244,17 @@ fn shadows(heights: &Field, light: &Light) -> Field {
     let (dx, dy, climb) = (lx / flat, ly / flat, lz / flat);
     let unit = 2.0 / side as f32;
     let highest = heights.highest();
+    // Only near the thing, as far as its shadow can reach: the unevenness of the bench throws none worth the time.
+    let reach = (highest / climb / unit) as usize + 2;
+    let (first, last) = heights.rows_above(0.3 * highest);
+    let rows = first.saturating_sub(reach)..last + reach;
     Field::from(side, |column, row| {
+        if !rows.contains(&row) {
+            return 1.0;
+        }
         let here = heights.get(column, row);
         let mut hidden = 0.0f32;
-        let mut step = 1.2f32;
+        let mut step = 0.8f32;
         while step < 60.0 {
             let ray = here + step * unit * climb;
             if ray > highest {
@@ -212,7 +262,7 @@ fn shadows(heights: &Field, light: &Light) -> Field {
             }
             let over = heights.at(column as f32 + dx * step, row as f32 + dy * step) - ray;
             hidden = hidden.max(over / (step * unit * light.softness) + 0.5);
-            step += 1.0 + 0.06 * step;
+            step += 0.7 + 0.06 * step;
         }
         1.0 - smooth(0.0, 1.0, hidden - 0.1)
     })
@@ -224,7 +274,8 @@ fn corners(heights: &Field) -> Field {
     let wide = heights.blurred(13);
     Field::from(heights.side(), |column, row| {
         let here = heights.get(column, row);
-        let below = (near.get(column, row) - here).max(0.0) * 13.0 + (wide.get(column, row) - here).max(0.0) * 6.5;
+        let below = (near.get(column, row) - here).max(0.0) * 13.0
+            + (wide.get(column, row) - here).max(0.0) * 6.5;
         1.0 / (1.0 + below)
     })
 }
@@ -234,12 +285,20 @@ fn shade(surface: &Surface, normal: (f32, f32, f32), lit: f32, open: f32, light:
     let (lx, ly, lz) = light.towards;
     let facing = (nx * lx + ny * ly + nz * lz).max(0.0);
 
+    let upward = 0.62 + 0.38 * nz;
+    if surface.shine <= MATT {
+        return core::array::from_fn(|i| {
+            surface.colour[i] * (light.lamp[i] * facing * lit + light.room[i] * open * upward)
+        });
+    }
+
     // The half-way direction between the lamp and the camera straight above.
     let half = 1.0 / (2.0 + 2.0 * lz).sqrt();
     let toward_half = ((nx * lx + ny * ly + nz * (lz + 1.0)) * half).clamp(0.0, 1.0);
     let a = surface.roughness * surface.roughness;
     let spread = toward_half * toward_half * (a * a - 1.0) + 1.0;
-    let highlight = (a * a / (core::f32::consts::PI * spread * spread)).min(6.0) * facing * lit * 0.8;
+    let highlight =
+        (a * a / (core::f32::consts::PI * spread * spread)).min(6.0) * facing * lit * 0.8;
 
     // What a shiny surface mirrors: a bright window on the lamp's side, a dim room elsewhere.
     let (rx, ry) = (2.0 * nz * nx, 2.0 * nz * ny);
@@ -250,11 +309,18 @@ fn shade(surface: &Surface, normal: (f32, f32, f32), lit: f32, open: f32, light:
     let window = smooth(0.3 - blur, 0.3 + blur, side)
         * smooth(0.8 + blur, 0.8 - blur, side)
         * smooth(0.42 + blur, 0.42 - blur, across.abs());
-    let mirrored = 0.22 + 0.3 * smooth(-0.9, 0.9, side) + 2.2 * window * (1.0 - 0.7 * surface.roughness);
+    let mirrored =
+        0.22 + 0.3 * smooth(-0.9, 0.9, side) + 2.2 * window * (1.0 - 0.7 * surface.roughness);
     let grazing = 1.0 - nz;
-    let fresnel = surface.shine + (1.0 - surface.shine) * grazing * grazing * grazing * grazing * 0.35 * (1.0 - surface.roughness);
+    let fresnel = surface.shine
+        + (1.0 - surface.shine)
+            * grazing
+            * grazing
+            * grazing
+            * grazing
+            * 0.35
+            * (1.0 - surface.roughness);
 
-    let upward = 0.62 + 0.38 * nz;
     core::array::from_fn(|i| {
         let colour = surface.colour[i];
         let diffuse = colour * (1.0 - 0.75 * surface.metal);

@@ -25,7 +25,7 @@ pub enum Mark {
     Hailstones,
     /// Two crossing families of lines.
     Netting,
-    /// Two crescents back to back.
+    /// Two crescents with a bar between them.
     TwoMoons,
 }
 
@@ -92,20 +92,24 @@ impl Tally {
     /// A tally with this mark, everything else left to chance.
     pub fn new(mark: Mark, dice: &mut Dice) -> Self {
         let oval = Outline::Oval(dice.range(0.68, 0.82));
-        let slim = Outline::Oval(dice.range(0.56, 0.66));
+        let slim = Outline::Oval(dice.range(0.46, 0.56));
         let square = {
             let half = dice.range(0.74, 0.82);
             Outline::Tablet(half, half * dice.range(0.94, 1.0), dice.range(0.08, 0.3))
         };
-        let tablet = Outline::Tablet(dice.range(0.54, 0.66), dice.range(0.88, 0.96), dice.range(0.06, 0.26));
+        let tablet = Outline::Tablet(
+            dice.range(0.5, 0.6),
+            dice.range(0.9, 0.98),
+            dice.range(0.06, 0.26),
+        );
         let disc = Outline::Disc;
         let choices = match mark {
             Mark::Daystar => [disc, disc, disc, Outline::Scallop(dice.whole(4, 6) as f32)],
             Mark::Snail => [disc, disc, oval, oval],
             Mark::Tideline => [square, square, square, disc],
-            Mark::Fishbone => [slim, slim, slim, tablet],
+            Mark::Fishbone => [slim, slim, slim, Outline::Lozenge],
             Mark::Hailstones => [Outline::Hexagon, Outline::Hexagon, disc, square],
-            Mark::Ladder => [tablet, tablet, tablet, slim],
+            Mark::Ladder => [tablet, tablet, tablet, square],
             Mark::Netting => [Outline::Lozenge, Outline::Lozenge, square, disc],
             Mark::TwoMoons => [oval, oval, disc, Outline::Hexagon],
         };
@@ -113,9 +117,9 @@ impl Tally {
         let count = match mark {
             Mark::Daystar => dice.whole(7, 10),
             Mark::Snail => dice.whole(2, 3),
-            Mark::Tideline => dice.whole(4, 6),
+            Mark::Tideline => dice.whole(4, 5),
             Mark::Fishbone => dice.whole(5, 7),
-            Mark::Ladder => dice.whole(4, 6),
+            Mark::Ladder => dice.whole(4, 5),
             Mark::Hailstones => dice.whole(6, 9),
             Mark::Netting => dice.whole(4, 6),
             Mark::TwoMoons => 2,
@@ -123,11 +127,13 @@ impl Tally {
         let hole = match mark {
             Mark::Hailstones if dice.chance(0.5) => Some((0.0, 0.0, dice.range(0.13, 0.19))),
             Mark::Ladder | Mark::Fishbone | Mark::Daystar | Mark::Hailstones => None,
-            _ if dice.chance(0.22) => Some((dice.range(-0.05, 0.05), -0.74, dice.range(0.08, 0.11))),
+            _ if dice.chance(0.22) => {
+                Some((dice.range(-0.05, 0.05), -0.74, dice.range(0.08, 0.11)))
+            }
             _ => None,
         };
-        let sunk = dice.chance(0.42);
-        let height = dice.range(0.06, 0.1);
+        let sunk = dice.chance(0.28);
+        let height = dice.range(0.07, 0.11);
         Self {
             mark,
             outline,
@@ -136,8 +142,12 @@ impl Tally {
             phase: dice.unit(),
             hand: if dice.chance(0.5) { 1.0 } else { -1.0 },
             line: dice.range(0.8, 1.2),
-            wobble: (dice.range(0.0, TAU), dice.range(0.0, TAU), dice.range(0.01, 0.03)),
-            rim: dice.chance(0.45).then(|| dice.range(0.055, 0.085)),
+            wobble: (
+                dice.range(0.0, TAU),
+                dice.range(0.0, TAU),
+                dice.range(0.01, 0.03),
+            ),
+            rim: dice.chance(0.35).then(|| dice.range(0.055, 0.085)),
             hole,
             rounding: dice.range(0.08, 0.22),
             thickness: dice.range(0.2, 0.34),
@@ -174,7 +184,7 @@ impl Tally {
             Mark::Tideline => {
                 let spacing = 1.5 / self.count;
                 let waves = 4.2 + 2.4 * self.phase;
-                let amplitude = 0.075 * self.size;
+                let amplitude = 0.1 * self.size;
                 let (cos, sin) = angle(x * waves + self.phase * 17.0);
                 let v = (y + amplitude * sin) / spacing + 0.5 * self.count;
                 let row = v.floor().clamp(0.0, self.count - 1.0);
@@ -183,7 +193,7 @@ impl Tally {
                 ridge(distance, 0.072 * self.line)
             }
             Mark::Fishbone => {
-                let lean = 0.55 + 0.35 * self.phase;
+                let lean = 0.65 + 0.35 * self.phase;
                 let spacing = 1.7 / self.count;
                 let v = (y * self.hand - x.abs() * lean) / spacing + 0.25;
                 let distance = (v - (v + 0.5).floor()) * spacing / (1.0 + lean * lean).sqrt();
@@ -195,10 +205,10 @@ impl Tally {
                 let half = 0.29 * self.size;
                 let length = 0.74;
                 let ends = smooth(length + 0.03, length - 0.03, y.abs());
-                let rail = ridge(x.abs() - half, 0.068 * self.line) * ends;
+                let rail = ridge(x.abs() - half, 0.08 * self.line) * ends;
                 let spacing = 1.42 / self.count;
                 let v = y / spacing + 0.5 * self.count;
-                let rung = ridge((v - v.floor() - 0.5) * spacing, 0.06 * self.line)
+                let rung = ridge((v - v.floor() - 0.5) * spacing, 0.072 * self.line)
                     * smooth(half + 0.01, half - 0.02, x.abs())
                     * ends;
                 rail.max(rung)
@@ -209,8 +219,16 @@ impl Tally {
                 let off = (turned - (turned + 0.5).floor()) * sector;
                 let (cos, sin) = angle(off);
                 let radius = (0.8 * PI * 0.5 / self.count * 1.05).min(0.17) * self.line.min(1.05);
-                let pellet = ridge(length(r * cos - 0.56 * self.size.min(1.02), r * sin), radius).sqrt();
-                let middle = if self.hole.is_some() { ridge(r - 0.27, 0.05) } else { ridge(r, 0.19).sqrt() };
+                let pellet = ridge(
+                    length(r * cos - 0.56 * self.size.min(1.02), r * sin),
+                    radius,
+                )
+                .sqrt();
+                let middle = if self.hole.is_some() {
+                    ridge(r - 0.27, 0.05)
+                } else {
+                    ridge(r, 0.19).sqrt()
+                };
                 pellet.max(middle)
             }
             Mark::Netting => {
@@ -222,7 +240,8 @@ impl Tally {
                 let lean = 0.6 + 0.22 * self.size;
                 let norm = (1.0 + lean * lean).sqrt();
                 let width = 0.058 * self.line;
-                ridge(line((x + y * lean) / norm), width).max(ridge(line((x - y * lean) / norm), width))
+                ridge(line((x + y * lean) / norm), width)
+                    .max(ridge(line((x - y * lean) / norm), width))
             }
             Mark::TwoMoons => {
                 let radius = 0.33 * self.size;
@@ -256,7 +275,11 @@ impl Solid for Tally {
         if let Some(width) = self.rim {
             relief = relief.max(ridge(edge + width + 0.06, width));
         }
-        Place { edge, relief, paint: 0.0 }
+        Place {
+            edge,
+            relief,
+            paint: 0.0,
+        }
     }
 
     fn rounding(&self) -> f32 {
