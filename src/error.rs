@@ -1,11 +1,129 @@
 //! The library's error type.
 
+use crate::encoder::EncoderError;
+
 /// What can go wrong in the library; every message names the item and the remedy.
 #[derive(Debug, thiserror::Error)]
+#[non_exhaustive]
 pub enum Error {
     /// An item could not be turned into an embedding.
     #[error(transparent)]
-    Encoder(#[from] crate::encoder::EncoderError),
+    Encoder(#[from] EncoderError),
+    /// An embedding has another length than the space.
+    #[error("an embedding has {found} numbers where {expected} are expected; use one encoder for everything in a pile")]
+    WrongDimension {
+        /// The space's dimension.
+        expected: usize,
+        /// The embedding's length.
+        found: usize,
+    },
+    /// The dimension is outside what the sorter supports.
+    #[error("an embedding must have between 2 and 4096 numbers, not {0}")]
+    DimensionOutOfRange(usize),
+    /// An embedding holds NaN or an infinity.
+    #[error("the embedding holds {value} at position {position}; only finite numbers can be sorted")]
+    NotFinite {
+        /// Index of the first such number.
+        position: usize,
+        /// The number itself.
+        value: f32,
+    },
+    /// An embedding in a never-negative space holds a negative number.
+    #[error(
+        "the embedding holds {value} at position {position}, but this encoder's numbers are never negative; \
+         declare it as signed or check where the embedding comes from"
+    )]
+    Negative {
+        /// Index of the first such number.
+        position: usize,
+        /// The number itself.
+        value: f32,
+    },
+    /// An embedding of zeros only has no direction.
+    #[error("the embedding is all zeros, so it says nothing about the item; check where it comes from")]
+    AllZero,
+    /// Examples and labels don't match in number.
+    #[error("there are {examples} examples but {labels} labels; give one label for each example")]
+    LabelCount {
+        /// How many examples.
+        examples: usize,
+        /// How many labels.
+        labels: usize,
+    },
+    /// A label names no category.
+    #[error("label {label} is outside the {categories} categories")]
+    LabelOutOfRange {
+        /// The label.
+        label: usize,
+        /// How many categories there are.
+        categories: usize,
+    },
+    /// A category without examples can't be learned.
+    #[error("category {0} has no example; give it at least one or leave it out")]
+    NoExample(usize),
+    /// With fewer than two categories there is nothing to tell apart.
+    #[error("sorting needs at least two categories with an example each, and there is {0}")]
+    TooFewCategories(usize),
+    /// A tray's name is empty.
+    #[error("a tray needs a name; type at least one letter")]
+    TrayNameEmpty,
+    /// A tray's name is already in use.
+    #[error("there is already a tray named “{0}”; choose that one or another name")]
+    TrayNameTaken(String),
+    /// A tray's name is too long.
+    #[error("a tray's name can have at most {limit} characters, and this one has {found}; shorten it")]
+    TrayNameTooLong {
+        /// The limit in characters.
+        limit: usize,
+        /// The name's length in characters.
+        found: usize,
+    },
+    /// There is no such tray (any more).
+    #[error("there is no tray number {0}; it may have been removed or merged")]
+    NoSuchTray(usize),
+    /// There is no such item (any more).
+    #[error("there is no item number {0} in the pile; it may have been removed")]
+    NoSuchItem(usize),
+    /// A tray can't be merged into itself.
+    #[error("a tray can't be merged into itself; choose another one")]
+    MergeIntoItself,
+    /// A saved state can't be read.
+    #[error("the saved state can't be read ({0}); start a new pile, or restore it from a copy")]
+    StateUnreadable(String),
+    /// A saved state comes from a newer version.
+    #[error("the saved state has version {found}, and this program reads up to version {known}; update the program")]
+    StateNewer {
+        /// The state's version.
+        found: u32,
+        /// The newest version known here.
+        known: u32,
+    },
+}
+
+impl Error {
+    /// A short kebab-case name that programs can test; it stays the same when a message is reworded.
+    pub fn code(&self) -> &'static str {
+        match self {
+            Error::Encoder(error) => error.code(),
+            Error::WrongDimension { .. } => "wrong-dimension",
+            Error::DimensionOutOfRange(_) => "dimension-out-of-range",
+            Error::NotFinite { .. } => "not-finite",
+            Error::Negative { .. } => "negative",
+            Error::AllZero => "all-zero",
+            Error::LabelCount { .. } => "label-count",
+            Error::LabelOutOfRange { .. } => "label-out-of-range",
+            Error::NoExample(_) => "no-example",
+            Error::TooFewCategories(_) => "too-few-categories",
+            Error::TrayNameEmpty => "tray-name-empty",
+            Error::TrayNameTaken(_) => "tray-name-taken",
+            Error::TrayNameTooLong { .. } => "tray-name-too-long",
+            Error::NoSuchTray(_) => "no-such-tray",
+            Error::NoSuchItem(_) => "no-such-item",
+            Error::MergeIntoItself => "merge-into-itself",
+            Error::StateUnreadable(_) => "state-unreadable",
+            Error::StateNewer { .. } => "state-newer",
+        }
+    }
 }
 
 /// The library's result type.

@@ -1,6 +1,37 @@
-//! Kenspeckle.
+//! Kenspeckle sorts a pile of items into categories that exist only in their owner's head, from a handful of examples.
+//!
+//! bytes → [`encoder`] → embedding → [`space`] → [`learner`] (support set → [`head`]) → verdicts, with [`Sorter`] owning
+//! the path. Programs need only the façade: make a [`Sorter`], add items and trays, answer, and read the verdicts.
+//!
+//! | module | what it holds |
+//! | --- | --- |
+//! | [`encoder`] | photos in, embeddings out |
+//! | [`space`] | the unit vectors in which items are compared, and the pile's own centre |
+//! | [`support`] | the examples, checked once at the door |
+//! | [`learner`] | nearest prototype, ridge, a few gradient steps, and the mix of them |
+//! | [`head`] | what is learned: one logit a category |
+//! | [`prior`] | what is known before the first example |
+//! | [`ask`] | which item's answer helps most |
+//! | [`ledger`] | trays and answers, with undo and redo |
+//! | [`sorter`] | the façade |
+//!
+//! The same input gives the same bits natively and in WebAssembly: sums run in one fixed order ([`arithmetic`]).
+
+pub mod arithmetic;
 pub mod encoder;
-pub mod error;
-pub use error::{Error, Result};
+mod error;
+pub mod head;
+pub mod learner;
+pub mod prior;
+pub mod space;
+pub mod support;
+
 #[cfg(target_family = "wasm")]
 mod js;
+
+pub use error::{Error, Result};
+pub use head::Head;
+pub use learner::LearnerKind;
+pub use prior::Prior;
+pub use space::Space;
+pub use support::Support;

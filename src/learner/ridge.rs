@@ -1,0 +1,225 @@
+//! Ridge regression to the categories, in closed form.
+//!
+//! Minimises Σ_c mean_{i in c} ‖W z_i + b − y_i‖² + μ‖W‖², with y_i one-hot minus 1/C: every category counts the same
+//! however uneven the counts, and the bias is not penalised. μ is the strength λ over the mean number of examples a
+//! category. With the Gram matrix K and N the diagonal of the counts n_c, the solution is W = Aᵀ Z where
+//!
+//! ```text
+//! ⎡ K + μ N   1 ⎤ ⎡ A  ⎤   ⎡ Y ⎤
+//! ⎣    1ᵀ     0 ⎦ ⎣ bᵀ ⎦ = ⎣ 0 ⎦
+//! ```
+//!
+//! and the residual of an example left out is A_i / P_ii, P the inverse of that matrix (Allen 1974; Cawley 2006,
+//! doi:10.1109/IJCNN.2006.246634). An example left out also lowers n_c for the others of its category; a correction of
+//! rank n_c makes the closed form exactly the refit. λ is chosen among six by leave-one-out log loss.
+//!
+//! Use it from about two examples a category. Cost O(n² d + n³) for n examples up to [`DUAL_LIMIT`]; beyond, λ and the
+//! temperature come from a spread-out subset of that size and the fit is done in d × d: O(n d² + d³).
+//!
+//! R2-D2: Bertinetto et al. 2019 (arXiv:1805.08136).
+
+use ndarray::{Array1, Array2, Axis};
+
+use super::{Learned, Learner, LeftOut, calibrate, calibrate::temperature, log_loss};
+use crate::{arithmetic::{self, Cholesky}, head::Head, prior::Prior, support::Support};
+
+/// The strengths tried.
+const STRENGTHS: [f64; 6] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0];
+
+/// How sure the prior's strength is: the standard deviation of its logarithm.
+const STRENGTH_SPREAD: f64 = 1.5;
+
+/// The largest support set that is solved in n × n.
+pub const DUAL_LIMIT: usize = 500;
+
+/// The ridge learner.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Ridge<'a> {
+    /// Where the choice of strength starts.
+    pub prior: &'a Prior,
+}
+
+/// A solution at one strength.
+struct Solution {
+    /// A, n × C.
+    coefficients: Array2<f64>,
+    bias: Array1<f64>,
+    left_out: LeftOut,
+}
+
+impl Learner for Ridge<'_> {
+    fn learn(&self, support: &Support) -> Learned {
+        self.learn_with_strength(support).0
+    }
+}
+
+impl Ridge<'_> {
+    /// Learns and scales the result so that its probabilities fit.
+    pub(crate) fn calibrated(&self, support: &Support) -> Learned {
+        let (learned, strength) = self.learn_with_strength(support);
+        calibrate(learned, support, self.prior.ridge_temperature(support, strength))
+    }
+
+    /// Learns, and says which strength was chosen.
+    pub fn learn_with_strength(&self, support: &Support) -> (Learned, f64) {
+        if support.len() > DUAL_LIMIT {
+            return self.learn_large(support);
+        }
+        let (solution, strength) = self.choose(support);
+        (Learned { head: Head::new(support.combine(&solution.coefficients), solution.bias), left_out: solution.left_out }, strength)
+    }
+
+    /// Learns at a given strength λ > 0, with the exact leave-one-out logits (at most [`DUAL_LIMIT`] examples).
+    pub fn learn_at(support: &Support, strength: f64) -> Learned {
+        let solution = solve(support, strength);
+        Learned { head: Head::new(support.combine(&solution.coefficients), solution.bias), left_out: solution.left_out }
+    }
+
+    fn choose(&self, support: &Support) -> (Solution, f64) {
+        let judge = |strength: f64| {
+            let solution = solve(support, strength);
+            let factor = temperature(&solution.left_out, support, self.prior.ridge_temperature(support, strength));
+            let pull = (libm::log(strength / self.prior.ridge_strength) / STRENGTH_SPREAD).powi(2) / 2.0;
+            let (loss, known) = log_loss(&solution.left_out, support, factor);
+            (known, loss + pull, solution, strength)
+        };
+        let first = judge(self.prior.ridge_strength);
+        if first.0 == 0 {
+            return (first.2, first.3);
+        }
+        let best = STRENGTHS
+            .into_iter()
+            .filter(|&strength| strength != self.prior.ridge_strength)
+            .map(judge)
+            .fold(first, |best, next| if next.1 < best.1 { next } else { best });
+        (best.2, best.3)
+    }
+
+    /// The strength from a subset, the fit from everything.
+    fn learn_large(&self, support: &Support) -> (Learned, f64) {
+        let (subset, members) = spread_subset(support, DUAL_LIMIT.max(2 * support.categories()));
+        let (solution, strength) = self.choose(&subset);
+        let mut left_out = LeftOut::unknown(support.len(), support.categories());
+        for (position, &example) in members.iter().enumerate() {
+            if let Some(logits) = solution.left_out.get(position) {
+                left_out.set(example, &logits.to_owned());
+            }
+        }
+        (Learned { head: fit_primal(support, strength), left_out }, strength)
+    }
+}
+
+fn targets(support: &Support) -> Array2<f64> {
+    let rest = 1.0 / support.categories() as f64;
+    let mut targets = Array2::from_elem((support.len(), support.categories()), -rest);
+    for (example, &label) in support.labels().iter().enumerate() {
+        targets[[example, label]] = 1.0 - rest;
+    }
+    targets
+}
+
+fn solve(support: &Support, strength: f64) -> Solution {
+    let penalty = strength / support.shot();
+    let n = support.len();
+    let mut matrix = support.gram().clone();
+    for (i, &label) in support.labels().iter().enumerate() {
+        matrix[[i, i]] += penalty * support.counts()[label] as f64;
+    }
+    let mut inverse = positive_definite(matrix).solve(&Array2::eye(n));
+    let sums = inverse.sum_axis(Axis(1));
+    let total = sums.sum();
+    for i in 0..n {
+        inverse.row_mut(i).scaled_add(-sums[i] / total, &sums);
+    }
+    let targets = targets(support);
+    let coefficients = arithmetic::times(&inverse, &targets);
+    let bias = sums.dot(&targets) / total;
+    let left_out = leave_one_out(support, penalty, &inverse, &coefficients, &targets);
+    Solution { coefficients, bias, left_out }
+}
+
+/// Factors a matrix that is positive definite but for the rounding of f32 products.
+fn positive_definite(matrix: Array2<f64>) -> Cholesky {
+    let largest = matrix.diag().iter().copied().fold(1e-30, f64::max);
+    let mut lift = 0.0;
+    loop {
+        let mut lifted = matrix.clone();
+        lifted.diag_mut().mapv_inplace(|x| x + lift);
+        if let Some(factor) = Cholesky::new(lifted) {
+            return factor;
+        }
+        // Finite numbers: a lift above the rounding error must come, and soon.
+        lift = if lift == 0.0 { 1e-7 * largest } else { 10.0 * lift };
+    }
+}
+
+fn leave_one_out(
+    support: &Support,
+    penalty: f64,
+    inverse: &Array2<f64>,
+    coefficients: &Array2<f64>,
+    targets: &Array2<f64>,
+) -> LeftOut {
+    let categories = support.categories();
+    let mut left_out = LeftOut::unknown(support.len(), categories);
+    for c in 0..categories {
+        let members: Vec<usize> = (0..support.len()).filter(|&i| support.labels()[i] == c).collect();
+        if members.len() < 2 {
+            continue;
+        }
+        let own = inverse.select(Axis(0), &members).select(Axis(1), &members);
+        let correction = positive_definite(Array2::eye(members.len()) - penalty * &own);
+        let own = correction.solve(&own);
+        let own_coefficients = correction.solve(&coefficients.select(Axis(0), &members));
+        for (position, &i) in members.iter().enumerate() {
+            let residual = &own_coefficients.row(position) / own[[position, position]];
+            left_out.set(i, &(&targets.row(i) - &residual));
+        }
+    }
+    left_out
+}
+
+/// The same minimum by the normal equations in d × d, for many examples.
+fn fit_primal(support: &Support, strength: f64) -> Head {
+    let penalty = strength / support.shot();
+    let (n, d, categories) = (support.len(), support.dimension(), support.categories());
+    let weights: Vec<f64> = support.labels().iter().map(|&label| 1.0 / support.counts()[label] as f64).collect();
+    let mut mean = Array1::<f64>::zeros(d);
+    for i in 0..n {
+        let share = weights[i] / categories as f64;
+        mean.iter_mut().zip(support.embedding(i)).for_each(|(m, &x)| *m += share * f64::from(x));
+    }
+    let mut scatter = Array2::<f64>::zeros((d, d));
+    let mut moments = Array2::<f64>::zeros((d, categories));
+    let mut centred = vec![0.0; d];
+    for i in 0..n {
+        centred.iter_mut().zip(support.embedding(i)).zip(&mean).for_each(|((out, &x), &m)| *out = f64::from(x) - m);
+        for j in 0..d {
+            let factor = weights[i] * centred[j];
+            let row = &mut scatter.row_mut(j);
+            let row = row.as_slice_mut().expect("standard layout");
+            row[..=j].iter_mut().zip(&centred).for_each(|(sum, &x)| *sum += factor * x);
+            moments[[j, support.labels()[i]]] += factor;
+        }
+    }
+    scatter.diag_mut().mapv_inplace(|x| x + penalty);
+    // Centred embeddings make the −1/C part of the targets vanish.
+    let weights = positive_definite(scatter).solve(&moments);
+    let bias = -mean.dot(&weights);
+    Head::new(weights.t().mapv(|w| w as f32), bias)
+}
+
+/// At most about `size` examples, spread evenly over the categories and over each category's order.
+fn spread_subset(support: &Support, size: usize) -> (Support, Vec<usize>) {
+    let quota = (size / support.categories()).max(2);
+    let mut members = Vec::new();
+    for c in 0..support.categories() {
+        let own: Vec<usize> = (0..support.len()).filter(|&i| support.labels()[i] == c).collect();
+        let take = quota.min(own.len());
+        members.extend((0..take).map(|k| own[k * own.len() / take]));
+    }
+    let labels = members.iter().map(|&i| support.labels()[i]).collect();
+    let rows = support.embeddings().select(Axis(0), &members);
+    let subset = Support::new(rows, labels, support.categories()).expect("part of a support set with every category in it");
+    (subset, members)
+}
