@@ -11,6 +11,7 @@
 //! | [`learner`] | nearest prototype, ridge, a few gradient steps, and the mix of them |
 //! | [`head`] | what is learned: one logit a category |
 //! | [`prior`] | what is known before the first example |
+//! | [`pile`] | the items and their centre |
 //! | [`ask`] | which item's answer helps most |
 //! | [`ledger`] | trays and answers, with undo and redo |
 //! | [`sorter`] | the façade |
@@ -18,11 +19,15 @@
 //! The same input gives the same bits natively and in WebAssembly: sums run in one fixed order ([`arithmetic`]).
 
 pub mod arithmetic;
+pub mod ask;
 pub mod encoder;
 mod error;
 pub mod head;
 pub mod learner;
+pub mod ledger;
+pub mod pile;
 pub mod prior;
+pub mod sorter;
 pub mod space;
 pub mod support;
 
@@ -33,5 +38,6 @@ pub use error::{Error, Result};
 pub use head::Head;
 pub use learner::LearnerKind;
 pub use prior::Prior;
+pub use sorter::{Settings, Sorter, Verdict};
 pub use space::Space;
 pub use support::Support;

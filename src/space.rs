@@ -2,11 +2,16 @@
 //!
 //! An encoder's numbers are made comparable once, when an item arrives: features that are never negative (they come
 //! after a rectifier) are replaced by their square roots, which tames the few that are very large (power transform:
-//! Hu, Gripon, Pateux 2021, arXiv:2006.03806); then every vector is scaled to unit Euclidean length.
+//! Hu, Gripon, Pateux 2021, arXiv:2006.03806); then every vector is scaled to unit Euclidean length. Learners see items
+//! from the pile's own centre, again at unit length (centring: SimpleShot, Wang et al. 2019, arXiv:1911.04623): what all
+//! items of a pile have in common says nothing about which tray they belong to.
 
 use serde::{Deserialize, Serialize};
 
-use crate::error::{Error, Result};
+use crate::{
+    arithmetic::dot,
+    error::{Error, Result},
+};
 
 /// The smallest and largest embedding the sorter takes.
 pub const DIMENSIONS: std::ops::RangeInclusive<usize> = 2..=4096;
@@ -65,6 +70,58 @@ impl Space {
     }
 }
 
+/// How many items of no particular kind stand beside a pile's own when its centre is taken, so that the centre of a few
+/// items does not swallow what tells them apart.
+const CENTRE_CAUTION: f64 = 8.0;
+
+/// Below this distance from the centre an item has no direction that rounding has not made.
+const NO_DIRECTION: f32 = 1e-5;
+
+/// The point from which a pile's items are seen.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Centre {
+    mean: Vec<f32>,
+    square: f32,
+}
+
+impl Centre {
+    /// The centre of `count` places with this sum, drawn toward the origin while they are few.
+    pub(crate) fn of_sum(sum: &[f64], count: usize) -> Self {
+        let mean: Vec<f32> = sum.iter().map(|&x| (x / (count as f64 + CENTRE_CAUTION)) as f32).collect();
+        let square = dot(&mean, &mean);
+        Self { mean, square }
+    }
+
+    /// The centre itself, d numbers.
+    pub fn mean(&self) -> &[f32] {
+        &self.mean
+    }
+
+    /// A place's inner product with the centre. Cost O(d).
+    pub(crate) fn product(&self, place: &[f32]) -> f32 {
+        dot(&self.mean, place)
+    }
+
+    /// One over the distance between a place of unit length and the centre, given their inner product; 0 for a place in
+    /// the centre, which has no direction from there.
+    pub(crate) fn inverse_distance(&self, product: f32) -> f32 {
+        let distance = (1.0 - 2.0 * product + self.square).max(0.0).sqrt();
+        if distance < NO_DIRECTION { 0.0 } else { 1.0 / distance }
+    }
+
+    /// Cosine of the angle under which two places are seen from here, given their inner product, and each one's inner
+    /// product with the centre and inverse distance from it.
+    pub(crate) fn cosine(&self, product: f32, a: (f32, f32), b: (f32, f32)) -> f32 {
+        (product - a.0 - b.0 + self.square) * a.1 * b.1
+    }
+
+    /// The direction from here to a place: unit length, or zeros for a place in the centre. Cost O(d).
+    pub fn view(&self, place: &[f32]) -> Vec<f32> {
+        let factor = self.inverse_distance(self.product(place));
+        place.iter().zip(&self.mean).map(|(&x, &m)| (x - m) * factor).collect()
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -107,5 +164,25 @@ mod tests {
         assert_eq!(space.place(&[0.0, 0.0]).unwrap_err().code(), "all-zero");
         assert_eq!(Space::new(1, true).unwrap_err().code(), "dimension-out-of-range");
         assert_eq!(Space::new(4097, true).unwrap_err().code(), "dimension-out-of-range");
+    }
+
+    #[test]
+    fn seen_from_the_centre_items_have_unit_length() {
+        let places = [[1.0_f32, 0.0], [0.6, 0.8], [0.8, 0.6]];
+        let sum: Vec<f64> = (0..2).map(|j| places.iter().map(|p| f64::from(p[j])).sum()).collect();
+        let centre = Centre::of_sum(&sum, 3);
+        for place in places {
+            assert!((length(&centre.view(&place)) - 1.0).abs() < 1e-5);
+        }
+        let seen = |p: &[f32]| (centre.product(p), centre.inverse_distance(centre.product(p)));
+        let direct = dot(&centre.view(&places[0]), &centre.view(&places[1]));
+        let folded = centre.cosine(dot(&places[0], &places[1]), seen(&places[0]), seen(&places[1]));
+        assert!((direct - folded).abs() < 1e-5);
+    }
+
+    #[test]
+    fn an_item_in_the_centre_has_no_direction() {
+        let centre = Centre { mean: vec![0.6, 0.8], square: 1.0 };
+        assert_eq!(centre.view(&[0.6, 0.8]), [0.0, 0.0]);
     }
 }

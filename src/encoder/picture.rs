@@ -2,10 +2,16 @@
 
 use std::io::Cursor;
 
-use fast_image_resize::{FilterType, PixelType, ResizeAlg, ResizeOptions, Resizer, images};
+use fast_image_resize::{
+    FilterType, ResizeAlg, ResizeOptions, Resizer,
+    images::{TypedImage, TypedImageRef},
+    pixels::U8x3,
+};
 use image::{
-    DynamicImage, ImageDecoder, ImageError, ImageFormat, ImageReader, Limits, RgbImage, RgbaImage,
-    codecs::jpeg::JpegEncoder, metadata::Orientation,
+    ColorType, ImageDecoder, ImageError, ImageFormat, ImageResult, Limits, RgbImage,
+    codecs::{bmp::BmpDecoder, gif::GifDecoder, jpeg::JpegEncoder, png::PngDecoder, webp::WebPDecoder},
+    imageops,
+    metadata::Orientation,
 };
 use zune_jpeg::{
     JpegDecoder,
@@ -50,11 +56,13 @@ impl Picture {
             return Err(EncoderError::ImageEmpty);
         }
         check_size(width, height)?;
-        let bytes = rgba.len();
-        let pixels = RgbaImage::from_raw(width, height, rgba.to_vec())
-            .filter(|_| bytes as u64 == u64::from(width) * u64::from(height) * 4)
-            .ok_or(EncoderError::FrameSize { width, height, bytes })?;
-        Ok(Self { pixels: on_white(pixels), orientation: Orientation::NoTransforms })
+        if rgba.len() as u64 != u64::from(width) * u64::from(height) * 4 {
+            return Err(EncoderError::FrameSize { width, height, bytes: rgba.len() });
+        }
+        Ok(Self {
+            pixels: rgb_image(width, height, to_rgb8(rgba.to_vec(), 4, 1)),
+            orientation: Orientation::NoTransforms,
+        })
     }
 
     /// Width and height of the upright picture in pixels, each at least 1.
@@ -92,23 +100,34 @@ impl Picture {
     }
 
     fn upright(&self, pixels: RgbImage) -> RgbImage {
-        let mut turned = DynamicImage::ImageRgb8(pixels);
-        turned.apply_orientation(self.orientation);
-        turned.into_rgb8()
+        match self.orientation {
+            Orientation::NoTransforms => pixels,
+            Orientation::Rotate90 => imageops::rotate90(&pixels),
+            Orientation::Rotate180 => imageops::rotate180(&pixels),
+            Orientation::Rotate270 => imageops::rotate270(&pixels),
+            Orientation::FlipHorizontal => imageops::flip_horizontal(&pixels),
+            Orientation::FlipVertical => imageops::flip_vertical(&pixels),
+            Orientation::Rotate90FlipH => imageops::flip_horizontal(&imageops::rotate90(&pixels)),
+            Orientation::Rotate270FlipH => imageops::flip_horizontal(&imageops::rotate270(&pixels)),
+        }
     }
 }
 
 /// Antialiased bicubic resampling (Keys 1981, a = −½) of the part `[left, top, width, height]`, in one step.
 fn resample(pixels: &RgbImage, [left, top, width, height]: [f64; 4], to_width: u32, to_height: u32) -> RgbImage {
-    let mut resized = images::Image::new(to_width, to_height, PixelType::U8x3);
+    let mut bytes = vec![0; to_width as usize * to_height as usize * 3];
     let options = ResizeOptions::new()
         .resize_alg(ResizeAlg::Convolution(FilterType::CatmullRom))
         .crop(left, top, width, height);
-    let done = images::ImageRef::new(pixels.width(), pixels.height(), pixels.as_raw(), PixelType::U8x3)
-        .map(|source| Resizer::new().resize(&source, &mut resized, &options));
-    // Sizes are at least 1 and the part lies inside, which is all that can go wrong.
-    debug_assert!(matches!(done, Ok(Ok(()))));
-    RgbImage::from_raw(to_width, to_height, resized.into_vec()).unwrap_or_else(|| RgbImage::new(to_width, to_height))
+    // The typed views keep the code for other kinds of pixels out of the WebAssembly module.
+    let source = TypedImageRef::<U8x3>::from_buffer(pixels.width(), pixels.height(), pixels.as_raw());
+    let target = TypedImage::<U8x3>::from_buffer(to_width, to_height, &mut bytes);
+    if let (Ok(source), Ok(mut target)) = (source, target) {
+        // Sizes are at least 1 and the part lies inside, which is all that can go wrong.
+        let done = Resizer::new().resize_typed(&source, &mut target, &options);
+        debug_assert!(done.is_ok());
+    }
+    rgb_image(to_width, to_height, bytes)
 }
 
 fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
@@ -122,8 +141,8 @@ fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
     let (width, height) = (u32::from(info.width), u32::from(info.height));
     check_size(width, height)?;
     let grey = decoder.input_colorspace() == Some(ColorSpace::Luma);
-    let colours = if grey { ColorSpace::Luma } else { ColorSpace::RGB };
-    let bytes = width as usize * height as usize * if grey { 1 } else { 3 };
+    let (colours, channels) = if grey { (ColorSpace::Luma, 1) } else { (ColorSpace::RGB, 3) };
+    let bytes = width as usize * height as usize * channels;
     // A progressive picture keeps its 16-bit coefficients until the last scan.
     let coefficients = if info.sof.is_sequential_dct() { 0 } else { bytes * 2 };
     check_memory((bytes + coefficients) as u64, width, height)?;
@@ -136,9 +155,7 @@ fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
     decoder.decode_into(&mut pixels).map_err(jpeg_error)?;
     let orientation =
         decoder.exif().and_then(|exif| Orientation::from_exif_chunk(exif)).unwrap_or(Orientation::NoTransforms);
-    let pixels = if grey { pixels.into_iter().flat_map(|value| [value; 3]).collect() } else { pixels };
-    let pixels = RgbImage::from_raw(width, height, pixels).ok_or_else(incomplete)?;
-    Ok(Picture { pixels, orientation })
+    Ok(Picture { pixels: rgb_image(width, height, to_rgb8(pixels, channels, 1)), orientation })
 }
 
 fn jpeg_error(error: DecodeErrors) -> EncoderError {
@@ -150,28 +167,56 @@ fn jpeg_error(error: DecodeErrors) -> EncoderError {
 }
 
 fn decode_other(file: &[u8], format: ImageFormat) -> Result<Picture, EncoderError> {
-    let mut reader = ImageReader::with_format(Cursor::new(file), format);
     let mut limits = Limits::no_limits();
     limits.max_alloc = Some(MAX_BYTES);
-    reader.limits(limits);
-    let mut decoder = reader.into_decoder().map_err(|error| image_error(error, format, 0, 0))?;
+    let mut decoder = open(file, format, &limits).map_err(|error| image_error(error, format, 0, 0))?;
     let (width, height) = decoder.dimensions();
     check_size(width, height)?;
     check_memory(decoder.total_bytes(), width, height)?;
+    let failed = |error| image_error(error, format, width, height);
+    decoder.set_limits(limits).map_err(failed)?;
+    let (channels, depth) = match decoder.color_type() {
+        ColorType::L8 => (1, 1),
+        ColorType::La8 => (2, 1),
+        ColorType::Rgb8 => (3, 1),
+        ColorType::Rgba8 => (4, 1),
+        ColorType::L16 => (1, 2),
+        ColorType::La16 => (2, 2),
+        ColorType::Rgb16 => (3, 2),
+        ColorType::Rgba16 => (4, 2),
+        other => {
+            let reason = format!("{other:?}");
+            return Err(EncoderError::ImageUnsupported { format: name(format), reason });
+        }
+    };
     let orientation = decoder.orientation().unwrap_or(Orientation::NoTransforms);
-    let decoded =
-        DynamicImage::from_decoder(decoder).map_err(|error| image_error(error, format, width, height))?;
-    let pixels = if decoded.color().has_alpha() { on_white(decoded.into_rgba8()) } else { decoded.into_rgb8() };
-    Ok(Picture { pixels, orientation })
+    let mut bytes = vec![0; width as usize * height as usize * channels * depth];
+    decoder.read_image_boxed(&mut bytes).map_err(failed)?;
+    Ok(Picture { pixels: rgb_image(width, height, to_rgb8(bytes, channels, depth)), orientation })
 }
 
-fn image_error(error: ImageError, format: ImageFormat, width: u32, height: u32) -> EncoderError {
-    let format = match format {
+/// The format's decoder. Not `image::ImageReader`, which would bring a second JPEG decoder into the module.
+fn open<'a>(file: &'a [u8], format: ImageFormat, limits: &Limits) -> ImageResult<Box<dyn ImageDecoder + 'a>> {
+    let file = Cursor::new(file);
+    Ok(match format {
+        ImageFormat::Png => Box::new(PngDecoder::with_limits(file, limits.clone())?),
+        ImageFormat::WebP => Box::new(WebPDecoder::new(file)?),
+        ImageFormat::Gif => Box::new(GifDecoder::new(file)?),
+        _ => Box::new(BmpDecoder::new(file)?),
+    })
+}
+
+fn name(format: ImageFormat) -> &'static str {
+    match format {
         ImageFormat::Png => "PNG",
         ImageFormat::WebP => "WebP",
         ImageFormat::Gif => "GIF",
         _ => "BMP",
-    };
+    }
+}
+
+fn image_error(error: ImageError, format: ImageFormat, width: u32, height: u32) -> EncoderError {
+    let format = name(format);
     match error {
         ImageError::Limits(_) if width > 0 => EncoderError::NoMemory { width, height },
         ImageError::Unsupported(error) => EncoderError::ImageUnsupported { format, reason: error.to_string() },
@@ -206,19 +251,38 @@ fn check_memory(bytes: u64, width: u32, height: u32) -> Result<(), EncoderError>
     if available { Ok(()) } else { Err(EncoderError::NoMemory { width, height }) }
 }
 
-/// Lays the picture on white, in place: a second copy of a large picture would double the memory.
-fn on_white(pixels: RgbaImage) -> RgbImage {
-    let (width, height) = pixels.dimensions();
-    let mut bytes = pixels.into_raw();
-    let count = bytes.len() / 4;
-    for pixel in 0..count {
-        let alpha = u32::from(bytes[4 * pixel + 3]);
-        for channel in 0..3 {
-            let value = u32::from(bytes[4 * pixel + channel]);
-            bytes[3 * pixel + channel] = ((value * alpha + 255 * (255 - alpha) + 127) / 255) as u8;
-        }
+/// Grey or colour pixels, with alpha or without, `depth` 1 or 2 bytes a channel (in this machine's order), as RGB on
+/// white. In place where that is possible: a second copy of a large picture would double the memory.
+fn to_rgb8(mut bytes: Vec<u8>, channels: usize, depth: usize) -> Vec<u8> {
+    let stride = channels * depth;
+    if (channels, depth) == (3, 1) {
+        return bytes;
+    }
+    if stride < 3 {
+        return bytes.chunks_exact(stride).flat_map(|pixel| on_white(pixel, channels, depth)).collect();
+    }
+    let count = bytes.len() / stride;
+    for index in 0..count {
+        let rgb = on_white(&bytes[stride * index..][..stride], channels, depth);
+        bytes[3 * index..][..3].copy_from_slice(&rgb);
     }
     bytes.truncate(3 * count);
+    bytes
+}
+
+fn on_white(pixel: &[u8], channels: usize, depth: usize) -> [u8; 3] {
+    let value = |channel: usize| match depth {
+        1 => u32::from(pixel[channel]),
+        _ => (u32::from(u16::from_ne_bytes([pixel[2 * channel], pixel[2 * channel + 1]])) + 128) / 257,
+    };
+    let alpha = if channels % 2 == 0 { value(channels - 1) } else { 255 };
+    let mixed = |channel| ((value(channel) * alpha + 255 * (255 - alpha) + 127) / 255) as u8;
+    if channels < 3 { [mixed(0); 3] } else { [mixed(0), mixed(1), mixed(2)] }
+}
+
+/// `bytes` always holds the whole picture; were it too short, the picture would be black rather than a panic.
+fn rgb_image(width: u32, height: u32, bytes: Vec<u8>) -> RgbImage {
+    debug_assert_eq!(bytes.len(), width as usize * height as usize * 3);
     RgbImage::from_raw(width, height, bytes).unwrap_or_else(|| RgbImage::new(width, height))
 }
 

@@ -1,1 +1,302 @@
-//! The sorter.
+//! The sorter for JavaScript.
+
+use serde::{Deserialize, Serialize};
+use wasm_bindgen::prelude::*;
+
+use super::js_error;
+use crate::{Error, LearnerKind, Settings, Space, ledger::Answer, sorter};
+
+fn thrown(error: Error) -> JsValue {
+    js_error(error.code(), &error.to_string())
+}
+
+fn to_js(value: &impl Serialize) -> JsValue {
+    serde_wasm_bindgen::to_value(value).unwrap_or(JsValue::UNDEFINED)
+}
+
+/// Turns a failure into a thrown `Error`, and tells what was done by its name.
+trait OrThrow<T> {
+    fn or_throw(self) -> Result<T, JsValue>;
+}
+
+impl<T> OrThrow<T> for Result<T, Error> {
+    fn or_throw(self) -> Result<T, JsValue> {
+        self.map_err(thrown)
+    }
+}
+
+#[wasm_bindgen(typescript_custom_section)]
+const TYPES: &str = r#"
+export type LearnerName = "auto" | "prototype" | "ridge" | "gradient";
+
+/** What a sorter is made for. */
+export interface SorterOptions {
+  /** The encoder's identity: embeddings of different encoders never meet in one sorter. */
+  encoder: string;
+  /** Numbers in an embedding, 2 to 4096. */
+  dimension: number;
+  /** Whether the encoder never gives a negative number. */
+  nonNegative: boolean;
+  /** Which learner sorts; "auto" if left out. */
+  learner?: LearnerName;
+  /** Seed of everything that is drawn, a whole number from 0; 1 if left out. */
+  seed?: number;
+}
+
+export interface Tray {
+  tray: number;
+  name: string;
+  /** Items that the person put in. */
+  answers: number;
+}
+
+/** One entry an item number. */
+export interface Verdicts {
+  /** The tray; −1 not sorted, −2 the item was removed. */
+  tray: Int32Array;
+  /** 0 to 1; 1 for answered items, 0 without a tray. */
+  probability: Float32Array;
+  /** Second choice or −1. */
+  runnerUp: Int32Array;
+  runnerUpProbability: Float32Array;
+  /** 0 sorted by the sorter, 1 answered, 2 answered "none of these", 3 "can't tell", 4 removed. */
+  status: Uint8Array;
+}
+
+export interface RankedTray {
+  tray: number;
+  probability: number;
+}
+
+export type ActionName =
+  | "answer" | "none" | "skip" | "withdraw" | "add-tray" | "rename-tray" | "merge-trays" | "remove-tray" | "remove-item";
+"#;
+
+#[wasm_bindgen]
+extern "C" {
+    /// Options from JavaScript.
+    #[wasm_bindgen(typescript_type = "SorterOptions")]
+    pub type SorterOptions;
+    /// Trays for JavaScript.
+    #[wasm_bindgen(typescript_type = "Tray[]")]
+    pub type Trays;
+    /// Verdicts for JavaScript.
+    #[wasm_bindgen(typescript_type = "Verdicts")]
+    pub type Verdicts;
+    /// A ranking for JavaScript.
+    #[wasm_bindgen(typescript_type = "RankedTray[]")]
+    pub type RankedTrays;
+    /// An action's name.
+    #[wasm_bindgen(typescript_type = "ActionName | undefined")]
+    pub type ActionName;
+}
+
+#[derive(Deserialize)]
+#[serde(rename_all = "camelCase")]
+struct Options {
+    encoder: String,
+    dimension: usize,
+    non_negative: bool,
+    #[serde(default)]
+    learner: LearnerKind,
+    #[serde(default = "first_seed")]
+    seed: f64,
+}
+
+fn first_seed() -> f64 {
+    1.0
+}
+
+#[derive(Serialize)]
+struct Tray<'a> {
+    tray: usize,
+    name: &'a str,
+    answers: usize,
+}
+
+#[derive(Serialize)]
+struct RankedTray {
+    tray: usize,
+    probability: f64,
+}
+
+/// Sorts a pile by the answers given so far. Calls are synchronous: use it in a worker.
+#[wasm_bindgen]
+pub struct Sorter(sorter::Sorter);
+
+#[wasm_bindgen]
+impl Sorter {
+    /// A sorter with an empty pile and no trays.
+    ///
+    /// Throws "options" when they are incomplete and "dimension-out-of-range".
+    #[wasm_bindgen(constructor)]
+    pub fn new(options: SorterOptions) -> Result<Sorter, JsValue> {
+        let options: Options = serde_wasm_bindgen::from_value(options.into())
+            .map_err(|error| js_error("options", &format!("the sorter's options can't be used: {error}")))?;
+        if !(options.seed >= 0.0 && options.seed.fract() == 0.0 && options.seed <= 9_007_199_254_740_991.0) {
+            return Err(js_error("options", "the sorter's seed must be a whole number from 0 to 2^53 − 1"));
+        }
+        let space = Space::new(options.dimension, options.non_negative).or_throw()?;
+        let Options { encoder, learner, seed, .. } = options;
+        Ok(Self(sorter::Sorter::new(Settings { encoder, space, learner, seed: seed as u64 })))
+    }
+
+    /// Adds an item by its embedding and gives its number: 0, 1, 2 … in order of arrival, never used again.
+    ///
+    /// Throws "wrong-dimension", "not-finite", "negative" and "all-zero"; nothing is added then.
+    #[wasm_bindgen(js_name = addItem)]
+    pub fn add_item(&mut self, embedding: &[f32]) -> Result<usize, JsValue> {
+        self.0.add_item(embedding).or_throw()
+    }
+
+    /// Takes an item out of the pile.
+    #[wasm_bindgen(js_name = removeItem)]
+    pub fn remove_item(&mut self, item: usize) -> Result<(), JsValue> {
+        self.0.remove_item(item).or_throw()
+    }
+
+    /// Makes a tray and gives its number. Throws "tray-name-empty", "tray-name-taken", "tray-name-too-long".
+    #[wasm_bindgen(js_name = addTray)]
+    pub fn add_tray(&mut self, name: &str) -> Result<usize, JsValue> {
+        self.0.add_tray(name).or_throw()
+    }
+
+    /// Gives a tray another name.
+    #[wasm_bindgen(js_name = renameTray)]
+    pub fn rename_tray(&mut self, tray: usize, name: &str) -> Result<(), JsValue> {
+        self.0.rename_tray(tray, name).or_throw()
+    }
+
+    /// Moves all answers of one tray into another; the emptied tray is gone.
+    #[wasm_bindgen(js_name = mergeTrays)]
+    pub fn merge_trays(&mut self, from: usize, into: usize) -> Result<(), JsValue> {
+        self.0.merge_trays(from, into).or_throw()
+    }
+
+    /// Removes a tray; its answers are open again.
+    #[wasm_bindgen(js_name = removeTray)]
+    pub fn remove_tray(&mut self, tray: usize) -> Result<(), JsValue> {
+        self.0.remove_tray(tray).or_throw()
+    }
+
+    /// This item belongs in that tray.
+    pub fn answer(&mut self, item: usize, tray: usize) -> Result<(), JsValue> {
+        self.0.answer(item, tray).or_throw()
+    }
+
+    /// These items belong in that tray: one action, undone as one.
+    #[wasm_bindgen(js_name = answerAll)]
+    pub fn answer_all(&mut self, items: &[u32], tray: usize) -> Result<(), JsValue> {
+        let items: Vec<usize> = items.iter().map(|&item| item as usize).collect();
+        self.0.answer_all(&items, tray).or_throw()
+    }
+
+    /// Makes a tray for this item: one action, undone as one. Gives the tray's number.
+    #[wasm_bindgen(js_name = answerNew)]
+    pub fn answer_new(&mut self, item: usize, name: &str) -> Result<usize, JsValue> {
+        self.0.answer_new(item, name).or_throw()
+    }
+
+    /// None of these: the person sets the item aside.
+    #[wasm_bindgen(js_name = answerNone)]
+    pub fn answer_none(&mut self, item: usize) -> Result<(), JsValue> {
+        self.0.answer_none(item).or_throw()
+    }
+
+    /// Can't tell: not asked again, still sorted.
+    pub fn skip(&mut self, item: usize) -> Result<(), JsValue> {
+        self.0.skip(item).or_throw()
+    }
+
+    /// Takes the answer back.
+    pub fn withdraw(&mut self, item: usize) -> Result<(), JsValue> {
+        self.0.withdraw(item).or_throw()
+    }
+
+    /// Undoes the last action; gives its name, or `undefined` if there is none.
+    pub fn undo(&mut self) -> ActionName {
+        JsValue::from(self.0.undo().map(|action| action.name())).into()
+    }
+
+    /// Does the last undone action again; gives its name, or `undefined` if there is none.
+    pub fn redo(&mut self) -> ActionName {
+        JsValue::from(self.0.redo().map(|action| action.name())).into()
+    }
+
+    /// Whether there is something to undo.
+    #[wasm_bindgen(getter = canUndo)]
+    pub fn can_undo(&self) -> bool {
+        self.0.ledger().can_undo()
+    }
+
+    /// Whether there is something to redo.
+    #[wasm_bindgen(getter = canRedo)]
+    pub fn can_redo(&self) -> bool {
+        self.0.ledger().can_redo()
+    }
+
+    /// The trays in the order they were made.
+    pub fn trays(&self) -> Trays {
+        let ledger = self.0.ledger();
+        let count = |tray| ledger.answered().filter(|&(_, answered)| answered == tray).count();
+        let trays: Vec<Tray> = ledger.trays().map(|(tray, name)| Tray { tray, name, answers: count(tray) }).collect();
+        to_js(&trays).into()
+    }
+
+    /// What the sorter says of every item. Learns anew if anything changed.
+    pub fn verdicts(&mut self) -> Verdicts {
+        let verdicts = self.0.verdicts();
+        let column = |pick: &dyn Fn(&sorter::Verdict) -> f64, removed: f64| -> Vec<f64> {
+            verdicts.iter().map(|verdict| verdict.as_ref().map_or(removed, pick)).collect()
+        };
+        let whole = |numbers: Vec<f64>| js_sys::Int32Array::from(&numbers.iter().map(|&x| x as i32).collect::<Vec<_>>()[..]);
+        let real = |numbers: Vec<f64>| js_sys::Float32Array::from(&numbers.iter().map(|&x| x as f32).collect::<Vec<_>>()[..]);
+        let tray = |tray: Option<usize>| tray.map_or(-1.0, |tray| tray as f64);
+        let status = |verdict: &sorter::Verdict| match verdict.answer {
+            Answer::Open => 0.0,
+            Answer::Tray(_) => 1.0,
+            Answer::None => 2.0,
+            Answer::Skipped => 3.0,
+        };
+        let bytes: Vec<u8> = column(&status, 4.0).iter().map(|&x| x as u8).collect();
+        let columns: [(&str, JsValue); 5] = [
+            ("tray", whole(column(&|v| tray(v.tray), -2.0)).into()),
+            ("probability", real(column(&|v| v.probability, 0.0)).into()),
+            ("runnerUp", whole(column(&|v| tray(v.runner_up.map(|(tray, _)| tray)), -1.0)).into()),
+            ("runnerUpProbability", real(column(&|v| v.runner_up.map_or(0.0, |(_, p)| p), 0.0)).into()),
+            ("status", js_sys::Uint8Array::from(&bytes[..]).into()),
+        ];
+        let object = js_sys::Object::new();
+        for (name, column) in columns {
+            // Setting a property on a fresh object can't fail.
+            let _ = js_sys::Reflect::set(&object, &name.into(), &column);
+        }
+        JsValue::from(object).into()
+    }
+
+    /// The item whose answer helps most, or `undefined` when every item has an answer.
+    #[wasm_bindgen(js_name = nextQuestion)]
+    pub fn next_question(&mut self) -> Option<usize> {
+        self.0.next_question()
+    }
+
+    /// Trays with an answer, most probable first; empty while there are fewer than two.
+    pub fn ranking(&mut self, item: usize) -> Result<RankedTrays, JsValue> {
+        let ranking: Vec<RankedTray> =
+            self.0.ranking(item).or_throw()?.into_iter().map(|(tray, probability)| RankedTray { tray, probability }).collect();
+        Ok(to_js(&ranking).into())
+    }
+
+    /// Options, trays, answers and the undo log as JSON, without embeddings.
+    pub fn state(&self) -> String {
+        self.0.state()
+    }
+
+    /// The sorter that was saved, with the embeddings of all its items in order.
+    ///
+    /// Embeddings beyond those that the state knows are items that arrived since. Throws "state-unreadable",
+    /// "state-newer" and what `addItem` throws.
+    pub fn restore(state: &str, embeddings: &[f32]) -> Result<Sorter, JsValue> {
+        sorter::Sorter::restore(state, embeddings).map(Self).or_throw()
+    }
+}

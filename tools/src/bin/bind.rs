@@ -17,7 +17,7 @@ fn main() -> ExitCode {
         .input_path(module)
         .out_name("kenspeckle")
         .web(true)
-        .and_then(|b| b.typescript(true).generate(out));
+        .and_then(|b| b.typescript(true).remove_name_section(true).generate(out));
     match made {
         Ok(()) => ExitCode::SUCCESS,
         Err(error) => {

@@ -1,0 +1,395 @@
+//! The façade: from embeddings and answers to verdicts and the next question.
+
+use ndarray::Array2;
+use serde::{Deserialize, Serialize};
+
+use crate::{
+    arithmetic::{dot, row, softmax},
+    ask::{Asker, Situation},
+    error::{Error, Result},
+    head::Head,
+    learner::LearnerKind,
+    ledger::{Action, Answer, Ledger},
+    pile::Pile,
+    prior::Prior,
+    space::{Centre, Space},
+    support::Support,
+};
+
+/// The newest version of the saved state.
+const STATE_VERSION: u32 = 1;
+
+/// What a sorter is made for; it stays the same for the sorter's life.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Settings {
+    /// The encoder's identity, so that embeddings of different encoders never meet.
+    pub encoder: String,
+    /// The space of its embeddings.
+    pub space: Space,
+    /// Which learner sorts.
+    pub learner: LearnerKind,
+    /// The seed of everything that is drawn.
+    pub seed: u64,
+}
+
+/// What the sorter says of one item.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Verdict {
+    /// The tray, or `None` while there are fewer than two trays with an answer and for an item that the person put in
+    /// none.
+    pub tray: Option<usize>,
+    /// How probable that tray is, 0 to 1; 1 for an answered item, 0 without a tray.
+    pub probability: f64,
+    /// The second choice with its probability.
+    pub runner_up: Option<(usize, f64)>,
+    /// What the person said.
+    pub answer: Answer,
+}
+
+impl Verdict {
+    /// How unsure: 0 where the first choice is certain, 1 where the second is as probable.
+    fn unsure(&self) -> f64 {
+        match self.runner_up {
+            Some((_, second)) => 1.0 - (self.probability - second),
+            None => 1.0,
+        }
+    }
+}
+
+#[derive(Serialize, Deserialize)]
+struct State {
+    version: u32,
+    settings: Settings,
+    ledger: Ledger,
+}
+
+/// What was learned from the answers as they are, and everything that follows from it.
+#[derive(Debug, Clone)]
+struct Learnt {
+    /// Tray of each category of the head.
+    trays: Vec<usize>,
+    /// The logits of every item, n × C; no head while there are fewer than two trays with an answer.
+    probabilities: Option<Array2<f64>>,
+    verdicts: Vec<Option<Verdict>>,
+}
+
+/// Sorts a pile by the answers given so far.
+///
+/// ```
+/// use kenspeckle::{LearnerKind, Settings, Sorter, Space};
+///
+/// let settings = Settings {
+///     encoder: "my own two numbers".into(),
+///     space: Space::new(2, false)?,
+///     learner: LearnerKind::Auto,
+///     seed: 1,
+/// };
+/// let mut sorter = Sorter::new(settings);
+/// for embedding in [[1.0, 0.1], [0.9, 0.2], [-0.1, 1.0], [0.2, 0.8]] {
+///     sorter.add_item(&embedding)?;
+/// }
+/// let (flat, tall) = (sorter.add_tray("flat")?, sorter.add_tray("tall")?);
+/// sorter.answer(0, flat)?;
+/// sorter.answer(2, tall)?;
+/// assert_eq!(sorter.verdict(1)?.tray, Some(flat));
+/// assert_eq!(sorter.verdict(3)?.tray, Some(tall));
+/// # Ok::<(), kenspeckle::Error>(())
+/// ```
+#[derive(Debug, Clone)]
+pub struct Sorter {
+    settings: Settings,
+    prior: Prior,
+    pile: Pile,
+    ledger: Ledger,
+    asker: Asker,
+    learnt: Option<Learnt>,
+}
+
+impl Sorter {
+    /// A sorter with an empty pile and no trays.
+    pub fn new(settings: Settings) -> Self {
+        Self {
+            prior: Prior::default(),
+            pile: Pile::new(settings.space),
+            ledger: Ledger::default(),
+            asker: Asker::new(settings.seed),
+            learnt: None,
+            settings,
+        }
+    }
+
+    /// What the sorter was made for.
+    pub fn settings(&self) -> &Settings {
+        &self.settings
+    }
+
+    /// How many item numbers are in use, removed items included.
+    pub fn items(&self) -> usize {
+        self.pile.len()
+    }
+
+    /// Adds an item by its embedding (d finite numbers) and gives its number: 0, 1, 2 … in order of arrival, never used
+    /// again. Cost O(d).
+    pub fn add_item(&mut self, embedding: &[f32]) -> Result<usize> {
+        let item = self.pile.add(embedding)?;
+        let same = self.ledger.add_item();
+        debug_assert_eq!(item, same);
+        self.learnt = None;
+        Ok(item)
+    }
+
+    /// Trays, answers and the log of actions.
+    pub fn ledger(&self) -> &Ledger {
+        &self.ledger
+    }
+
+    fn change<T>(&mut self, action: impl FnOnce(&mut Ledger) -> Result<T>) -> Result<T> {
+        let outcome = action(&mut self.ledger)?;
+        self.learnt = None;
+        Ok(outcome)
+    }
+
+    /// Takes an item out of the pile.
+    pub fn remove_item(&mut self, item: usize) -> Result<()> {
+        self.change(|ledger| ledger.remove_item(item))?;
+        self.pile.set_present(item, false);
+        Ok(())
+    }
+
+    /// Makes a tray and gives its number, never used again. Names are 1 to 120 characters and unique without regard to
+    /// case.
+    pub fn add_tray(&mut self, name: &str) -> Result<usize> {
+        self.change(|ledger| ledger.add_tray(name))
+    }
+
+    /// Gives a tray another name.
+    pub fn rename_tray(&mut self, tray: usize, name: &str) -> Result<()> {
+        self.change(|ledger| ledger.rename_tray(tray, name))
+    }
+
+    /// Moves all answers of one tray into another; the emptied tray is gone.
+    pub fn merge_trays(&mut self, from: usize, into: usize) -> Result<()> {
+        self.change(|ledger| ledger.merge_trays(from, into))
+    }
+
+    /// Removes a tray; its answers are open again.
+    pub fn remove_tray(&mut self, tray: usize) -> Result<()> {
+        self.change(|ledger| ledger.remove_tray(tray))
+    }
+
+    /// The person's answer: this item belongs in that tray.
+    pub fn answer(&mut self, item: usize, tray: usize) -> Result<()> {
+        self.change(|ledger| ledger.put(item, tray))
+    }
+
+    /// The same answer for several items, as one action.
+    pub fn answer_all(&mut self, items: &[usize], tray: usize) -> Result<()> {
+        self.change(|ledger| ledger.put_all(items, tray))
+    }
+
+    /// Makes a tray for this item, as one action; gives the tray's number.
+    pub fn answer_new(&mut self, item: usize, name: &str) -> Result<usize> {
+        self.change(|ledger| ledger.put_in_new(item, name))
+    }
+
+    /// The person's answer: none of these.
+    pub fn answer_none(&mut self, item: usize) -> Result<()> {
+        self.change(|ledger| ledger.put_in_none(item))
+    }
+
+    /// The person can't tell: the item is still sorted but not asked about again.
+    pub fn skip(&mut self, item: usize) -> Result<()> {
+        self.change(|ledger| ledger.skip(item))
+    }
+
+    /// Takes an answer back.
+    pub fn withdraw(&mut self, item: usize) -> Result<()> {
+        self.change(|ledger| ledger.withdraw(item))
+    }
+
+    /// Undoes the last action and says which it was.
+    pub fn undo(&mut self) -> Option<Action> {
+        let action = self.ledger.undo();
+        self.follow_ledger();
+        action
+    }
+
+    /// Does the last undone action again and says which it was.
+    pub fn redo(&mut self) -> Option<Action> {
+        let action = self.ledger.redo();
+        self.follow_ledger();
+        action
+    }
+
+    fn follow_ledger(&mut self) {
+        for item in 0..self.pile.len() {
+            self.pile.set_present(item, !self.ledger.is_removed(item));
+        }
+        self.learnt = None;
+    }
+
+    /// The verdict of every item number; `None` for removed items.
+    ///
+    /// Learns anew if anything changed: O(n² d + n³) for n answers, and O(m C d) for m items and C trays.
+    pub fn verdicts(&mut self) -> &[Option<Verdict>] {
+        &self.learnt().verdicts
+    }
+
+    /// One item's verdict.
+    pub fn verdict(&mut self, item: usize) -> Result<Verdict> {
+        let item = self.pile.check(item)?;
+        self.learnt().verdicts[item].ok_or(Error::NoSuchItem(item))
+    }
+
+    /// Every tray that has an answer, most probable first, for one item; empty while there are fewer than two.
+    pub fn ranking(&mut self, item: usize) -> Result<Vec<(usize, f64)>> {
+        let item = self.pile.check(item)?;
+        let learnt = self.learnt();
+        let Some(probabilities) = &learnt.probabilities else { return Ok(Vec::new()) };
+        let mut ranking: Vec<(usize, f64)> =
+            learnt.trays.iter().copied().zip(probabilities.row(item).iter().copied()).collect();
+        ranking.sort_by(|a, b| b.1.total_cmp(&a.1));
+        Ok(ranking)
+    }
+
+    /// The item whose answer helps most; `None` when every item has an answer.
+    pub fn next_question(&mut self) -> Option<usize> {
+        self.learnt();
+        let learnt = self.learnt.as_ref()?;
+        let mut answered = Vec::new();
+        let mut candidates = Vec::new();
+        for item in self.pile.items() {
+            match (self.ledger.answer(item), learnt.verdicts[item]) {
+                (Answer::Open, Some(verdict)) => candidates.push((item, verdict.unsure())),
+                _ => answered.push(item),
+            }
+        }
+        let situation = Situation { answered: &answered, candidates: &candidates, trays: learnt.trays.len() };
+        self.asker.next(&self.pile, &self.pile.centre(), &situation)
+    }
+
+    fn learnt(&mut self) -> &Learnt {
+        if self.learnt.is_none() {
+            self.learnt = Some(self.learn());
+        }
+        self.learnt.as_ref().expect("just learnt")
+    }
+
+    fn learn(&self) -> Learnt {
+        let mut trays: Vec<usize> = self.ledger.answered().map(|(_, tray)| tray).collect();
+        trays.sort_unstable();
+        trays.dedup();
+        let centre = self.pile.centre();
+        let probabilities = self.head(&trays, &centre).map(|head| self.probabilities(&head, &centre));
+        let verdicts = (0..self.pile.len())
+            .map(|item| {
+                let ranked = probabilities.as_ref().map(|all| best_two(all.row(item).as_slice().expect("standard layout")));
+                self.pile.contains(item).then(|| self.judge(item, &trays, ranked))
+            })
+            .collect();
+        Learnt { trays, probabilities, verdicts }
+    }
+
+    /// The head for the trays that have an answer, if there are at least two.
+    fn head(&self, trays: &[usize], centre: &Centre) -> Option<Head> {
+        let d = self.settings.space.dimension();
+        let mut numbers = Vec::new();
+        let mut labels = Vec::new();
+        for (item, tray) in self.ledger.answered() {
+            numbers.extend(centre.view(self.pile.place(item)));
+            labels.push(trays.binary_search(&tray).ok()?);
+        }
+        let rows = Array2::from_shape_vec((labels.len(), d), numbers).ok()?;
+        // Fewer than two trays is the one refusal that can happen here, and then there is nothing to tell apart.
+        let support = Support::new(rows, labels, trays.len()).ok()?;
+        Some(self.settings.learner.learn(&support, &self.prior).head)
+    }
+
+    /// Probabilities of all items, seen from the centre without moving any: W (u − μ)/‖u − μ‖ + b.
+    fn probabilities(&self, head: &Head, centre: &Centre) -> Array2<f64> {
+        let weights = head.weights();
+        let categories = head.categories();
+        let offsets: Vec<f32> = (0..categories).map(|c| dot(row(&weights, c), centre.mean())).collect();
+        let mut probabilities = Array2::zeros((self.pile.len(), categories));
+        for item in self.pile.items() {
+            let place = self.pile.place(item);
+            let factor = centre.inverse_distance(centre.product(place));
+            let logits = ndarray::Array1::from_shape_fn(categories, |c| {
+                f64::from((dot(row(&weights, c), place) - offsets[c]) * factor) + head.bias()[c]
+            });
+            probabilities.row_mut(item).assign(&softmax(logits.view()));
+        }
+        probabilities
+    }
+
+    fn judge(&self, item: usize, trays: &[usize], ranked: Option<((usize, f64), (usize, f64))>) -> Verdict {
+        let answer = self.ledger.answer(item);
+        let nothing = Verdict { tray: None, probability: 0.0, runner_up: None, answer };
+        match (answer, ranked) {
+            (Answer::Tray(tray), _) => Verdict { tray: Some(tray), probability: 1.0, ..nothing },
+            (Answer::None, _) | (_, None) => nothing,
+            (Answer::Open | Answer::Skipped, Some((first, second))) => Verdict {
+                tray: Some(trays[first.0]),
+                probability: first.1,
+                runner_up: Some((trays[second.0], second.1)),
+                answer,
+            },
+        }
+    }
+
+    /// Settings, trays, answers and the log as JSON; embeddings are kept by whoever keeps the items.
+    pub fn state(&self) -> String {
+        let state = State { version: STATE_VERSION, settings: self.settings.clone(), ledger: self.ledger.clone() };
+        serde_json::to_string(&state).expect("plain data")
+    }
+
+    /// The sorter that was saved, given the embeddings of all its items in order (items × d).
+    ///
+    /// More embeddings than the state knows items are taken as items that arrived since.
+    pub fn restore(state: &str, embeddings: &[f32]) -> Result<Self> {
+        #[derive(Deserialize)]
+        struct Version {
+            version: u32,
+        }
+        let unreadable = |error: serde_json::Error| Error::StateUnreadable(error.to_string());
+        let Version { version } = serde_json::from_str(state).map_err(unreadable)?;
+        if version > STATE_VERSION {
+            return Err(Error::StateNewer { found: version, known: STATE_VERSION });
+        }
+        let State { settings, ledger, .. } = serde_json::from_str(state).map_err(unreadable)?;
+        let space = Space::new(settings.space.dimension(), settings.space.non_negative())?;
+        let d = space.dimension();
+        if !ledger.is_consistent() {
+            return Err(Error::StateUnreadable("it names trays or items that it does not have".into()));
+        }
+        if embeddings.len() % d != 0 || embeddings.len() / d < ledger.items() {
+            let held = embeddings.len() / d;
+            return Err(Error::StateUnreadable(format!("it has {} items but {held} embeddings came with it", ledger.items())));
+        }
+        let mut sorter = Self::new(settings);
+        for embedding in embeddings.chunks_exact(d) {
+            sorter.pile.add(embedding)?;
+        }
+        sorter.ledger = ledger;
+        while sorter.ledger.items() < sorter.pile.len() {
+            sorter.ledger.add_item();
+        }
+        sorter.follow_ledger();
+        Ok(sorter)
+    }
+}
+
+/// The two largest values with their positions, the first of equals first.
+fn best_two(values: &[f64]) -> ((usize, f64), (usize, f64)) {
+    let mut first = (0, f64::NEG_INFINITY);
+    let mut second = (0, f64::NEG_INFINITY);
+    for (position, &value) in values.iter().enumerate() {
+        if value > first.1 {
+            second = first;
+            first = (position, value);
+        } else if value > second.1 {
+            second = (position, value);
+        }
+    }
+    (first, second)
+}
