@@ -30,6 +30,9 @@ WORK = ROOT / "data" / "check-encoder"
 ENCODER = ROOT / "www" / "encoders" / "photo.onnx"
 SIDE = 224
 LEAST_TO_FLOAT = 0.995
+# A picture smaller than the network's input is enlarged, and the answer hangs on how the resampler rounds between its
+# two passes: the float network on Pillow's own 8-bit and float resampling agrees to 0.993 there.
+LEAST_TO_FLOAT_ENLARGED = 0.99
 LEAST_TO_WASM = 0.9999
 FEWEST = 30
 STAMPS = 40
@@ -146,8 +149,11 @@ def main():
 
     print(f"{'picture':44}  to float  to wasm")
     for path, float_cosine, wasm_cosine in zip(found, to_float, to_wasm):
-        right = float_cosine >= LEAST_TO_FLOAT and not wasm_cosine < LEAST_TO_WASM
-        check(right, f"{path.parent.name + '/' + path.name:44}  {float_cosine:.5f}   {wasm_cosine:.6f}")
+        enlarged = min(Image.open(path).size) < SIDE
+        least = LEAST_TO_FLOAT_ENLARGED if enlarged else LEAST_TO_FLOAT
+        right = float_cosine >= least and not wasm_cosine < LEAST_TO_WASM
+        line = f"{path.parent.name + '/' + path.name:44}  {float_cosine:.5f}   {wasm_cosine:.6f}"
+        check(right, line + ("  (enlarged)" if enlarged else ""))
     print(f"to float: mean {to_float.mean():.5f}, least {to_float.min():.5f}; to wasm: least {to_wasm.min():.6f}")
     if options.json:
         options.json.write_text(json.dumps({"to_float": to_float.tolist(), "to_wasm": to_wasm.tolist()}))
