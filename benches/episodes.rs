@@ -1,8 +1,10 @@
-//! How well each learner sorts a file of episodes, item by item.
+//! How well each learner sorts a file of episodes.
 //!
-//! `cargo bench --features cli --bench episodes -- VECTORS.npy EPISODES.jsonl [--non-negative]` prints one JSON object:
-//! for each learner its accuracy (0…1) and log loss (nats) in every episode, and the median time in milliseconds to learn one
-//! episode and sort its queries. `pkg-scripts/bench` draws the episodes and makes the table.
+//! `cargo bench --features cli --bench episodes -- VECTORS.npy EPISODES.jsonl [--non-negative]` prints one JSON object: under
+//! `one by one` the learner alone, which sees each query by itself, and under `in the pile` the [`Sorter`], whose pile is the
+//! episode's examples and queries; in each, for every learner its accuracy (0…1) and log loss (nats) in every episode, and the
+//! median time in milliseconds to learn one episode and sort its queries. `pkg-scripts/bench` draws the episodes and makes the
+//! table.
 
 use std::{
     collections::BTreeMap,
@@ -12,7 +14,7 @@ use std::{
     time::Instant,
 };
 
-use kenspeckle::{LearnerKind, Prior, Space, Support};
+use kenspeckle::{LearnerKind, Prior, Settings, Sorter, Space, Support};
 use ndarray::{Array2, Axis};
 use serde::{Deserialize, Serialize};
 
@@ -39,7 +41,9 @@ struct Measured {
     milliseconds: f64,
 }
 
-fn main() -> Result<(), Box<dyn Error>> {
+type Outcome<T> = Result<T, Box<dyn Error>>;
+
+fn main() -> Outcome<()> {
     // Cargo adds `--bench`.
     let (flags, paths): (Vec<_>, Vec<_>) = std::env::args().skip(1).partition(|argument| argument.starts_with("--"));
     let [vectors, episodes] = paths.as_slice() else {
@@ -47,42 +51,84 @@ fn main() -> Result<(), Box<dyn Error>> {
     };
     let vectors: Array2<f32> = ndarray_npy::read_npy(vectors)?;
     let space = Space::new(vectors.ncols(), flags.iter().any(|flag| flag == "--non-negative"))?;
-    let mut placed = vectors;
-    for mut row in placed.rows_mut() {
+    let mut places = vectors.clone();
+    for mut row in places.rows_mut() {
         let place = space.place(&row.to_vec())?;
         row.iter_mut().zip(place).for_each(|(value, new)| *value = new);
     }
 
     let mut lines = BufReader::new(File::open(episodes)?).lines();
     let header: Header = serde_json::from_str(&lines.next().ok_or("the file of episodes is empty")??)?;
-    let episodes = lines.map(|line| Ok(serde_json::from_str(&line?)?)).collect::<Result<Vec<Episode>, Box<dyn Error>>>()?;
+    let episodes = lines.map(|line| Ok(serde_json::from_str(&line?)?)).collect::<Outcome<Vec<Episode>>>()?;
 
-    let prior = Prior::default();
-    let mut results = BTreeMap::new();
+    let mut results: BTreeMap<&str, BTreeMap<&str, Measured>> = BTreeMap::new();
     for kind in LearnerKind::ALL {
-        let mut measured = Measured::default();
-        let mut times = Vec::new();
-        for episode in &episodes {
-            let examples = placed.select(Axis(0), &episode.support);
-            let queries = placed.select(Axis(0), &episode.query);
-            let start = Instant::now();
-            let support = Support::new(examples, episode.support_labels.clone(), header.way)?;
-            let probabilities = kind.learn(&support, &prior).head.probabilities(queries.view());
-            times.push(start.elapsed().as_secs_f64() * 1e3);
-            let (mut right, mut loss) = (0.0, 0.0);
-            for (row, &label) in probabilities.outer_iter().zip(&episode.query_labels) {
-                let most = row.iter().enumerate().max_by(|a, b| a.1.total_cmp(b.1)).map(|(category, _)| category);
-                right += f64::from(u8::from(most == Some(label)));
-                loss -= row[label].max(LEAST_PROBABILITY).ln();
-            }
-            let count = episode.query_labels.len() as f64;
-            measured.accuracy.push(right / count);
-            measured.log_loss.push(loss / count);
-        }
-        times.sort_by(f64::total_cmp);
-        measured.milliseconds = times[times.len() / 2];
-        results.insert(kind.name(), measured);
+        let alone = measure(&episodes, |episode| one_by_one(kind, &places, episode, header.way))?;
+        let together = measure(&episodes, |episode| in_the_pile(kind, space, &vectors, episode, header.way))?;
+        results.entry("one by one").or_default().insert(kind.name(), alone);
+        results.entry("in the pile").or_default().insert(kind.name(), together);
     }
     println!("{}", serde_json::to_string(&results)?);
     Ok(())
+}
+
+/// Scores what `sort` says of each episode: the probability of each category (way) for each query, and the milliseconds taken.
+fn measure(episodes: &[Episode], sort: impl Fn(&Episode) -> Outcome<(Vec<Vec<f64>>, f64)>) -> Outcome<Measured> {
+    let mut measured = Measured::default();
+    let mut times = Vec::new();
+    for episode in episodes {
+        let (probabilities, milliseconds) = sort(episode)?;
+        let (mut right, mut loss) = (0.0, 0.0);
+        for (row, &label) in probabilities.iter().zip(&episode.query_labels) {
+            let most = (0..row.len()).max_by(|&a, &b| row[a].total_cmp(&row[b]));
+            right += f64::from(u8::from(most == Some(label)));
+            loss -= row[label].max(LEAST_PROBABILITY).ln();
+        }
+        let count = episode.query_labels.len() as f64;
+        measured.accuracy.push(right / count);
+        measured.log_loss.push(loss / count);
+        times.push(milliseconds);
+    }
+    times.sort_by(f64::total_cmp);
+    measured.milliseconds = times[times.len() / 2];
+    Ok(measured)
+}
+
+fn one_by_one(kind: LearnerKind, places: &Array2<f32>, episode: &Episode, way: usize) -> Outcome<(Vec<Vec<f64>>, f64)> {
+    let examples = places.select(Axis(0), &episode.support);
+    let queries = places.select(Axis(0), &episode.query);
+    let start = Instant::now();
+    let support = Support::new(examples, episode.support_labels.clone(), way)?;
+    let probabilities = kind.learn(&support, &Prior::default()).head.probabilities(queries.view());
+    let milliseconds = start.elapsed().as_secs_f64() * 1e3;
+    Ok((probabilities.outer_iter().map(|row| row.to_vec()).collect(), milliseconds))
+}
+
+fn in_the_pile(
+    kind: LearnerKind,
+    space: Space,
+    vectors: &Array2<f32>,
+    episode: &Episode,
+    way: usize,
+) -> Outcome<(Vec<Vec<f64>>, f64)> {
+    let mut sorter = Sorter::new(Settings { encoder: "benchmark".into(), space, learner: kind, seed: 1 });
+    for &row in episode.support.iter().chain(&episode.query) {
+        sorter.add_item(&vectors.row(row).to_vec())?;
+    }
+    let trays = (0..way).map(|label| sorter.add_tray(&label.to_string())).collect::<kenspeckle::Result<Vec<_>>>()?;
+    for (item, &label) in episode.support_labels.iter().enumerate() {
+        sorter.answer(item, trays[label])?;
+    }
+    let start = Instant::now();
+    sorter.verdicts();
+    let milliseconds = start.elapsed().as_secs_f64() * 1e3;
+    let mut probabilities = Vec::new();
+    for item in episode.support.len()..sorter.items() {
+        let mut row = vec![0.0; way];
+        for (tray, probability) in sorter.ranking(item)? {
+            row[trays.iter().position(|&known| known == tray).ok_or("the sorter named an unknown tray")?] = probability;
+        }
+        probabilities.push(row);
+    }
+    Ok((probabilities, milliseconds))
 }

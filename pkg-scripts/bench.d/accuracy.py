@@ -1,4 +1,4 @@
-"""How well each learner sorts, item by item, beside scikit-learn on the same episodes."""
+"""How well each learner sorts, beside scikit-learn on the same episodes."""
 
 import json
 
@@ -13,6 +13,8 @@ CONDITIONS = [("icons-test", 1), ("icons-test", 5), ("stamps", 1), ("stamps", 5)
 TITLES = {"icons-test": "drawn icons", "stamps": "stamps"}
 WAY = 5
 LEARNERS = ["prototype", "ridge", "gradient", "auto"]
+# How Kenspeckle sorts, and the spaces in which scikit-learn knows no more than it does.
+MODES = {"one by one": references.ONE_BY_ONE, "in the pile": references.SPACES}
 
 
 def interval(values):
@@ -28,23 +30,19 @@ def measure(name, shot, count, seed, say):
     vectors = sets.VECTORS / f"{name}.npy"
     ours = json.loads(embed.cargo(["bench", "--features", "cli", "--bench", "episodes", "--", str(vectors), str(path), *flags]))
     theirs = references.run(path, list(references.SPACES), say=say)
-    auto = np.array(ours["auto"]["accuracy"])
-    # A method may have had only the first episodes.
-    auto_minus = lambda measured: interval(100 * (auto[: len(measured["accuracy"])] - measured["accuracy"]))
-    summary = {**header, "kenspeckle": {}, "scikit-learn": {}, "auto_minus": {}}
-    for learner in LEARNERS:
-        summary["kenspeckle"][learner] = summarise(ours[learner]) | {"milliseconds": ours[learner]["milliseconds"]}
-        if learner != "auto":
-            summary["auto_minus"][learner] = auto_minus(ours[learner])
+    summary = {**header, "kenspeckle": {}, "scikit-learn": {}, "auto_minus": {}, "best": {}}
     for space, methods in theirs.items():
         summary["scikit-learn"][space] = {method: summarise(measured) for method, measured in methods.items()}
-        for method, measured in methods.items():
-            summary["auto_minus"][f"{method}, {space}"] = auto_minus(measured)
-    # The method that leaves Auto the least lead, chosen in hindsight, which favours scikit-learn.
-    least_lead = lambda names: min(names, key=lambda name: summary["auto_minus"][name][0])
-    of_space = {space: [f"{method}, {space}" for method in methods] for space, methods in theirs.items()}
-    summary["best"] = {space: least_lead(names) for space, names in of_space.items()}
-    summary["best"]["either"] = least_lead(sum(of_space.values(), []))
+    for mode, spaces in MODES.items():
+        summary["kenspeckle"][mode] = {name: summarise(measured) | {"milliseconds": measured["milliseconds"]} for name, measured in ours[mode].items()}
+        others = {f"Kenspeckle {name}": measured for name, measured in ours[mode].items() if name != "auto"}
+        rivals = {f"{method}, {space}": measured for space in spaces for method, measured in theirs[space].items()}
+        auto = np.array(ours[mode]["auto"]["accuracy"])
+        # A method may have had only the first episodes.
+        lead = {name: interval(100 * (auto[: len(one["accuracy"])] - one["accuracy"])) for name, one in (others | rivals).items()}
+        summary["auto_minus"][mode] = lead
+        # Chosen in hindsight, which favours scikit-learn.
+        summary["best"][mode] = min(rivals, key=lambda name: lead[name][0])
     return summary
 
 
@@ -63,42 +61,39 @@ def row(cells):
 def table(summaries):
     """The numbers as Markdown."""
     columns = [f"{TITLES[s['set']]}, {s['shot']}-shot" for s in summaries]
-    first = summaries[0]
-    text = f"## Accuracy, {WAY}-way, {first['episodes']} episodes, items one by one\n\n"
+    head = row(["", *columns]) + row(["---"] * (len(columns) + 1))
+
+    def rows(cell):
+        """A row for each of our learners in each mode and each reference in each space, where any cell has a number."""
+        text = head
+        for mode in MODES:
+            for name in LEARNERS:
+                text += row([f"**Kenspeckle {name}**, {mode}", *(cell(s["kenspeckle"][mode][name]) for s in summaries)])
+        for space in references.SPACES:
+            for name in references.METHODS:
+                cells = [cell(s["scikit-learn"][space].get(name)) for s in summaries]
+                if any(c != "–" for c in cells):
+                    text += row([f"{name}; {space}", *cells])
+        return text
+
+    text = f"## Accuracy, {WAY}-way, {summaries[0]['episodes']} episodes\n\n"
     text += "Percent right, ± half the 95 % interval of the mean over episodes. Both sides sort the same episodes "
-    text += f"(shrunk LDA, which takes long, the first {references.FIRST_EPISODES['shrunk LDA']}).\n\n"
-    text += row(["", *columns]) + row(["---"] * (len(columns) + 1))
-    cell = lambda numbers: f"{numbers['accuracy']:.1f} ± {numbers['accuracy_half_interval']:.1f}" if numbers else "–"
-    for learner in LEARNERS:
-        mark = "**" if learner == "auto" else ""
-        text += row([f"{mark}Kenspeckle {learner}{mark}", *(f"{mark}{cell(s['kenspeckle'][learner])}{mark}" for s in summaries)])
-    for space in references.SPACES:
-        for method in references.METHODS:
-            text += row([f"{method}, {space}", *(cell(s["scikit-learn"][space].get(method)) for s in summaries)])
-    text += "\n## Auto minus …, on the same episodes\n\n"
-    text += "Points, ± half the 95 % interval of the paired difference. The best of scikit-learn is chosen per column in hindsight.\n\n"
-    text += row(["", *columns]) + row(["---"] * (len(columns) + 1))
+    text += f"(shrunk LDA, which takes long, the first {references.FIRST_EPISODES['shrunk LDA']}).\n"
+    text += "One by one: no item knows of the others. In the pile: the sorter as it is used; its pile is the episode's items.\n\n"
+    text += rows(lambda n: f"{n['accuracy']:.1f} ± {n['accuracy_half_interval']:.1f}" if n else "–")
+    text += "\n## Auto minus the others, on the same episodes\n\n"
+    text += "Points, ± half the 95 % interval of the paired difference. The best of scikit-learn is chosen for each column in hindsight, "
+    text += "among the methods and spaces that know no more than Auto does.\n\n" + head
     # Adding 0.0 turns a rounded −0.0 into 0.0.
     difference = lambda pair: f"{round(pair[0], 1) + 0.0:+.1f} ± {pair[1]:.1f}".replace("-", "−")
-    for learner in LEARNERS[:-1]:
-        text += row([f"Kenspeckle {learner}", *(difference(s["auto_minus"][learner]) for s in summaries)])
-    for space in [*references.SPACES, "either"]:
-        label = "best of scikit-learn on either" if space == "either" else f"best of scikit-learn on {space}"
-        text += row([label, *(f"{difference(s['auto_minus'][s['best'][space]])} ({s['best'][space].removesuffix(', ' + space)})" for s in summaries)])
+    for mode in MODES:
+        for name in LEARNERS[:-1]:
+            text += row([f"Kenspeckle {name}, {mode}", *(difference(s["auto_minus"][mode][f"Kenspeckle {name}"]) for s in summaries)])
+        text += row([f"best of scikit-learn, {mode}", *(f"{difference(s['auto_minus'][mode][s['best'][mode]])} ({s['best'][mode]})" for s in summaries)])
     text += "\n## Log loss of the probabilities (nats, lower is better)\n\n"
-    text += row(["", *columns]) + row(["---"] * (len(columns) + 1))
-    loss = lambda numbers: f"{numbers['log_loss']:.3f} ± {numbers['log_loss_half_interval']:.3f}" if numbers and "log_loss" in numbers else "–"
-    for learner in LEARNERS:
-        text += row([f"Kenspeckle {learner}", *(loss(s["kenspeckle"][learner]) for s in summaries)])
-    for space in references.SPACES:
-        for method in references.METHODS:
-            if method in references.WITH_PROBABILITIES:
-                text += row([f"{method}, {space}", *(loss(s["scikit-learn"][space].get(method)) for s in summaries)])
+    text += rows(lambda n: f"{n['log_loss']:.3f} ± {n['log_loss_half_interval']:.3f}" if n and "log_loss" in n else "–")
     text += "\n## Time to learn one episode and sort its queries (median, ms)\n\n"
-    text += row(["", *columns]) + row(["---"] * (len(columns) + 1))
-    for learner in LEARNERS:
-        text += row([f"Kenspeckle {learner}", *(f"{s['kenspeckle'][learner]['milliseconds']:.2f}" for s in summaries)])
-    return text
+    return text + rows(lambda n: f"{n['milliseconds']:.2f}" if n and "milliseconds" in n else "–")
 
 
 def run(count, seed, say):

@@ -1,7 +1,8 @@
 """What scikit-learn makes of the same episodes, at its default settings unless the name says otherwise.
 
-Each method is given unit-length embeddings, once as the encoder gives them (the usual way) and once after the square root that
-Kenspeckle takes of never-negative ones, so that a table shows how much is the space and how much the learner.
+Each method is given unit-length embeddings: as the encoder gives them (the usual way), after the square root that Kenspeckle takes
+of never-negative ones, and seen from the mean of the episode's examples and queries, which a method that sorts items one by one
+can't know. So a table shows how much is the space and how much the learner.
 """
 
 import argparse
@@ -40,14 +41,20 @@ FIRST_EPISODES = {"shrunk LDA": 100}
 # Methods whose `predict_proba` goes with their `predict`: a single neighbour's is 0 or 1, and nearest centroid scales each feature
 # there by its spread, which it does not do in `predict` and can't do with one example a category.
 WITH_PROBABILITIES = {"logistic regression", "logistic regression, C = 10", "shrunk LDA"}
-SPACES = {"unit length": lambda x: x, "square root, unit length": np.sqrt}
+ONE_BY_ONE = ["unit length", "square root, unit length"]
+CENTRED = "square root, pile-centred, unit length"
+SPACES = [*ONE_BY_ONE, CENTRED]
 # The bound keeps one certain mistake from being infinite; log loss is reported in nats.
 LEAST_PROBABILITY = 1e-6
 
 
-def placed(vectors, space):
-    values = SPACES[space](vectors.astype(np.float64))
+def unit(values):
     return values / np.linalg.norm(values, axis=1, keepdims=True)
+
+
+def placed(vectors, space):
+    values = vectors.astype(np.float64)
+    return unit(np.sqrt(values) if space.startswith("square root") else values)
 
 
 def log_loss(probabilities, labels):
@@ -55,11 +62,14 @@ def log_loss(probabilities, labels):
     return float(-np.log(np.maximum(chosen, LEAST_PROBABILITY)).mean())
 
 
-def measure(method, values, drawn):
+def measure(method, space, values, drawn):
     """Accuracy and, where there are probabilities, log loss of one method in each episode that it gets."""
     accuracy, loss = [], []
     for episode in drawn[: FIRST_EPISODES.get(method)]:
         support, query = values[episode["support"]], values[episode["query"]]
+        if space == CENTRED:
+            centre = np.concatenate([support, query]).mean(axis=0)
+            support, query = unit(support - centre), unit(query - centre)
         labels = np.array(episode["query_labels"])
         model = METHODS[method]().fit(support, episode["support_labels"])
         accuracy.append(float((model.predict(query) == labels).mean()))
@@ -87,7 +97,7 @@ def run(path, spaces, methods=None, say=lambda text: None):
                 start = time.monotonic()
                 with warnings.catch_warnings():
                     warnings.simplefilter("ignore")
-                    measured = measure(method, values, drawn)
+                    measured = measure(method, space, values, drawn)
                 kept.parent.mkdir(parents=True, exist_ok=True)
                 kept.write_text(json.dumps(measured))
                 say(f"{header['set']} {header['way']}-way {header['shot']}-shot: scikit-learn {method}, {space}: {time.monotonic() - start:.0f} s")
@@ -110,7 +120,7 @@ def main():
             accuracy = np.array(measured["accuracy"]) * 100
             half = 1.96 * accuracy.std(ddof=1) / len(accuracy) ** 0.5
             loss = f"{np.mean(measured['log_loss']):.3f}" if measured["log_loss"] else "–"
-            print(f"{header['set']} {header['way']}/{header['shot']} {space:26} {method:28} {accuracy.mean():5.1f} ± {half:.1f}  log loss {loss}")
+            print(f"{header['set']} {header['way']}/{header['shot']} {space:38} {method:28} {accuracy.mean():5.1f} ± {half:.1f}  log loss {loss}")
 
 
 if __name__ == "__main__":
