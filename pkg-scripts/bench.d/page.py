@@ -13,7 +13,7 @@ import fetch
 import sets
 
 PACKAGES = {"playwright-core": "1.65.1", "onnxruntime-web": "1.30.0"}
-PILE, TRAYS, ANSWERS_PER_TRAY = 400, 10, 5
+PILE, TRAYS, ANSWERS_PER_TRAY = 400, 10, 10
 ROUNDS, WARM_UP = 60, 8
 FOLDER = sets.DATA / "bench" / "page"
 # A phone's camera gives about 12 million pixels.
@@ -124,6 +124,10 @@ def table(numbers):
     text += f"\n## Bytes of a first visit\n\n{len(visit['files'])} files, {raw / 1e6:.2f} MB, {wire / 1e6:.2f} MB over the wire (each brotli 11, or as it is where that is smaller). "
     text += ("The service worker then has all it needs offline. " if visit["offline"] else "No service worker took over. ")
     text += f"Requests to another origin: {len(visit['elsewhere'])}.\n\n| file | raw | wire |\n| --- | --- | --- |\n"
-    for file in visit["files"][:12]:
-        text += f"| {file['file']} | {file['raw']:,} | {file['wire']:,} |\n"
+    demo = [file for file in visit["files"] if file["file"].startswith("demo/")]
+    for file in visit["files"]:
+        if file not in demo:
+            text += f"| {file['file']} | {file['raw']:,} | {file['wire']:,} |\n"
+    if demo:
+        text += f"| {len(demo)} files of the demo pile | {sum(file['raw'] for file in demo):,} | {sum(file['wire'] for file in demo):,} |\n"
     return text

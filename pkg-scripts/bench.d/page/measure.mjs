@@ -54,7 +54,7 @@ async function pixelsByCanvas(file) {
 /** Times both engines on the same pictures, turn by turn. Times in milliseconds. */
 export async function photos({ pictures, files, rounds, warmUp }) {
   const start = performance.now();
-  await init();
+  await init({ module_or_path: "/kit/wasm/kenspeckle_bg.wasm" });
   const encoder = new PhotoEncoder(await bytesOf("/encoders/photo.onnx"));
   const loadKenspeckle = performance.now() - start;
   ort.env.wasm.numThreads = 1;
@@ -100,7 +100,7 @@ export async function photos({ pictures, files, rounds, warmUp }) {
 
 /** Times answering: each answer to the whole pile sorted again, and then the choice of the next question. Milliseconds. */
 export async function answers({ labels, trays, answersPerTray }) {
-  await init();
+  await init({ module_or_path: "/kit/wasm/kenspeckle_bg.wasm" });
   const file = await bytesOf("/data/pile.f32");
   const values = new Float32Array(file.buffer);
   const dimension = values.length / labels.length;
