@@ -60,11 +60,17 @@ pub fn gram(rows: ArrayView2<f32>) -> Array2<f64> {
 ///
 /// `ndarray`'s own goes through kernels that fuse multiply and add where the processor can.
 pub fn times(a: &Array2<f64>, b: &Array2<f64>) -> Array2<f64> {
-    let mut product = Array2::zeros((a.nrows(), b.ncols()));
-    for (a_row, mut sums) in a.outer_iter().zip(product.outer_iter_mut()) {
-        for (&factor, b_row) in a_row.iter().zip(b.outer_iter()) {
+    let columns = b.ncols();
+    let mut product = Array2::zeros((a.nrows(), columns));
+    let b = b.as_standard_layout();
+    let (Some(b), Some(sums)) = (b.as_slice(), product.as_slice_mut()) else { return product };
+    if columns == 0 {
+        return product;
+    }
+    for (a_row, sums) in a.outer_iter().zip(sums.chunks_exact_mut(columns)) {
+        for (&factor, b_row) in a_row.iter().zip(b.chunks_exact(columns)) {
             if factor != 0.0 {
-                sums.zip_mut_with(&b_row, |sum, &x| *sum += factor * x);
+                sums.iter_mut().zip(b_row).for_each(|(sum, &x)| *sum += factor * x);
             }
         }
     }

@@ -92,6 +92,18 @@ impl Centre {
         Self { mean, square }
     }
 
+    /// The centre of these places, each of d numbers.
+    pub fn of<'a>(places: impl IntoIterator<Item = &'a [f32]>) -> Self {
+        let mut sum = Vec::new();
+        let mut count = 0;
+        for place in places {
+            sum.resize(place.len(), 0.0);
+            sum.iter_mut().zip(place).for_each(|(sum, &x)| *sum += f64::from(x));
+            count += 1;
+        }
+        Self::of_sum(&sum, count)
+    }
+
     /// The centre itself, d numbers.
     pub fn mean(&self) -> &[f32] {
         &self.mean

@@ -3,7 +3,7 @@
 //! Starts at the nearest-prototype head with the prior's temperature, then takes T ≤ 20 full-batch steps of size α down
 //! the log loss, in which every category counts the same however uneven the counts. All of it happens in the span of the
 //! examples (W = Aᵀ Z), so a step costs O(n² C) whatever the dimension. Leave-one-out repeats the steps without each
-//! example: exact up to [`EXACT_LIMIT`] examples, beyond that with examples left out in that many groups.
+//! example: exact up to [`EXACT_LIMIT`] examples, beyond that in twelve groups.
 //!
 //! Use it where examples are plenty enough for prototypes to be crude and too few for a free fit. MAML: Finn et al. 2017
 //! (arXiv:1703.03400); start at the prototypes: Triantafillou et al. 2020 (arXiv:1903.03096).
@@ -15,6 +15,9 @@ use crate::{arithmetic, head::Head, prior::Prior, support::Support};
 
 /// Up to this many examples, leave-one-out is exact.
 pub const EXACT_LIMIT: usize = 48;
+
+/// In how many groups examples are left out beyond that.
+const GROUPS: usize = 12;
 
 /// The few-step gradient learner.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -70,7 +73,7 @@ impl Gradient<'_> {
         let n = support.len();
         let gram = support.gram();
         let mut left_out = LeftOut::unknown(n, support.categories());
-        let groups = if n <= EXACT_LIMIT { n } else { EXACT_LIMIT.div_ceil(2) };
+        let groups = if n <= EXACT_LIMIT { n } else { GROUPS };
         for group in 0..groups {
             let judged: Vec<usize> = group_members(support, group, groups);
             if judged.is_empty() {
@@ -117,7 +120,7 @@ mod tests {
             let labels: Vec<usize> = counts.iter().enumerate().flat_map(|(c, &n)| vec![c; n]).collect();
             let rows = Array2::from_shape_fn((labels.len(), 3), |(i, j)| ((i * 7 + j * 3) % 11) as f32);
             let support = Support::new(rows, labels, 3).unwrap();
-            let groups = if support.len() <= EXACT_LIMIT { support.len() } else { EXACT_LIMIT.div_ceil(2) };
+            let groups = if support.len() <= EXACT_LIMIT { support.len() } else { GROUPS };
             let mut judged = vec![0; support.len()];
             for group in 0..groups {
                 let members = group_members(&support, group, groups);
