@@ -109,6 +109,7 @@ export class Bench {
   async nextAfter(item: string): Promise<void> {
     await expect(async () => expect((await this.picture.count()) === 0 || (await this.inHand()) !== item).toBe(true)).toPass({
       intervals: [5, 10, 20],
+      timeout: 15_000,
     });
   }
 

@@ -55,11 +55,11 @@ test('a second tab is told, and harms nothing', async ({ page, context, site }) 
 test('a full device is said, not hidden, and nothing is lost when there is room again', async ({ page, context, site }) => {
   const bench = new Bench(page, site);
   await bench.open();
-  await bench.choose(some(0, 6));
-  await bench.allRead();
   const devtools = await context.newCDPSession(page);
   const origin = new URL(site.address).origin;
   await devtools.send('Storage.overrideQuotaForOrigin', { origin, quotaSize: 1000 });
+  await bench.choose(some(0, 6));
+  await bench.allRead();
   await bench.answer('First');
   await expect(page.getByText(/no room left/)).toBeVisible();
   await devtools.send('Storage.overrideQuotaForOrigin', { origin });

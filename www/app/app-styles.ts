@@ -165,9 +165,12 @@ export const appStyles = css`
     .brand svg {
       width: 28px;
     }
-    header.working .brand span,
     .wide {
       display: none;
+    }
+    header.working .brand span {
+      position: absolute;
+      clip-path: inset(50%);
     }
     .narrow {
       display: inline;

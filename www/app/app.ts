@@ -1,6 +1,5 @@
 import { html, LitElement, nothing, type TemplateResult } from 'lit';
-import { KenspeckleError, messageOf, PileClient, type Source, Status } from '../kit/client';
-import { csv } from '../kit/csv';
+import { KenspeckleError, messageOf, PileClient, type Source } from '../kit/client';
 import './band';
 import { hasCamera } from './camera';
 import { Desk } from './desk';
@@ -14,6 +13,7 @@ import './question';
 import './reading';
 import type { Shelves } from './shelves';
 import './shelves';
+import { handOver } from './result';
 import { shared } from './styles';
 import './welcome';
 import { words } from './words';
@@ -21,6 +21,11 @@ import { words } from './words';
 type Opened = { panel: 'help' | 'start-over' | 'zoom' | 'camera' } | { panel: 'tray'; tray: number; error?: string };
 
 const SINGLE_KEYS = 'single-keys';
+/** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
+const HAS_PILE = 'has-pile';
+
+const brand = html`<svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg>
+  <span>${words.brand}</span>`;
 
 /** The page. */
 export class Bench extends LitElement {
@@ -39,6 +44,7 @@ export class Bench extends LitElement {
   declare dropping: boolean;
   declare demoLoading: boolean;
   declare singleKeys: boolean;
+  #ready: Promise<Desk | undefined> = Promise.resolve(undefined);
   #zoomed: string | undefined;
   #pasted = 0;
   #returnTo: HTMLElement | undefined;
@@ -62,18 +68,17 @@ export class Bench extends LitElement {
   }
 
   override firstUpdated(): void {
-    void this.#open();
+    this.#ready = this.#open();
+    this.#ready.catch((error: unknown) => (this.failed = error));
   }
 
-  async #open(): Promise<void> {
-    try {
-      const client = await PileClient.open();
-      this.desk = new Desk(client, () => this.requestUpdate());
-      // The encoder comes while the person still looks at the page.
-      setTimeout(() => void client.warm().catch(() => undefined), 300);
-    } catch (error) {
-      this.failed = error;
-    }
+  async #open(): Promise<Desk> {
+    const client = await PileClient.open();
+    const desk = await Desk.lay(client, () => this.requestUpdate());
+    this.desk = desk;
+    // The encoder comes while the person still looks at the page.
+    setTimeout(() => void client.warm().catch(() => undefined), 300);
+    return desk;
   }
 
   get #question(): Question | null {
@@ -85,18 +90,23 @@ export class Bench extends LitElement {
   }
 
   async #add({ sources, problems }: Found): Promise<void> {
-    for (const problem of problems) this.desk?.complain(problem);
+    // Whoever is faster than the page finds the photos there when it is ready.
+    const desk = await this.#ready;
+    if (!desk) return;
+    for (const problem of problems) desk.complain(problem);
+    if (sources.length === 0) return;
+    localStorage.setItem(HAS_PILE, 'yes');
     void navigator.storage?.persist?.();
-    await this.desk?.add(sources);
+    await desk.add(sources);
   }
 
   async #demo(): Promise<void> {
-    if (!this.desk || this.demoLoading) return;
+    if (this.demoLoading) return;
     this.demoLoading = true;
     try {
       await this.#add({ sources: await demoSources(), problems: [] });
     } catch (error) {
-      this.desk.complain(messageOf(error));
+      await this.#add({ sources: [], problems: [messageOf(error)] });
     } finally {
       this.demoLoading = false;
     }
@@ -148,12 +158,12 @@ export class Bench extends LitElement {
       case 'tray': {
         const tray = desk.snapshot.trays[command.place]?.tray;
         if (tray === undefined || event.repeat) return;
-        if (focused === undefined) return void this.#after(desk.answer(tray));
+        if (focused === undefined) return void desk.answer(tray);
         this.#shelves?.holdPlace();
         return void desk.answer(tray, focused);
       }
       case 'guess':
-        if (desk.guess !== undefined && !event.repeat) void this.#after(desk.answer(desk.guess));
+        if (desk.guess !== undefined && !event.repeat) void desk.answer(desk.guess);
         return;
       case 'find':
         return this.#question?.find();
@@ -161,7 +171,7 @@ export class Bench extends LitElement {
         if (focused !== undefined) this.#shelves?.holdPlace();
         return void desk.none(focused ?? desk.hand);
       case 'skip':
-        return void this.#after(desk.skip());
+        return void desk.skip();
       case 'undo':
         return void desk.undo();
       case 'redo':
@@ -177,13 +187,6 @@ export class Bench extends LitElement {
       case 'help':
         return this.#openPanel({ panel: 'help' });
     }
-  }
-
-  /** After an answer the keys belong to the next question. */
-  async #after(answer: Promise<unknown>): Promise<void> {
-    await answer;
-    await this.updateComplete;
-    this.#question?.settle();
   }
 
   async #zoom(): Promise<void> {
@@ -223,21 +226,8 @@ export class Bench extends LitElement {
 
   #takeResult(): void {
     const { desk } = this;
-    if (!desk?.snapshot) return;
-    const { tray, probability, status } = desk.snapshot.verdicts;
-    const rows = desk.items
-      .filter(({ number }) => status[number] !== Status.removed)
-      .map(({ number, name }) => {
-        const placed = (tray[number] ?? -1) >= 0;
-        return [name, placed ? desk.trayName(tray[number] ?? -1) : '', placed ? (probability[number] ?? 0).toFixed(4) : ''];
-      });
-    const link = document.createElement('a');
-    const url = URL.createObjectURL(new Blob([csv([['item', 'tray', 'probability'], ...rows])], { type: 'text/csv' }));
-    link.href = url;
-    link.download = 'sorted-pile.csv';
-    link.click();
-    setTimeout(() => URL.revokeObjectURL(url), 60_000);
-    desk.said = words.resultTaken(link.download);
+    if (!desk) return;
+    desk.said = words.resultTaken(handOver(desk));
     this.requestUpdate();
   }
 
@@ -249,11 +239,11 @@ export class Bench extends LitElement {
     on('choose-folder', () => this.#choose(true));
     on('camera', () => this.#openPanel({ panel: 'camera' }));
     on<{ sources: Source[] }>('pictures', ({ sources }) => void this.#add({ sources, problems: [] }));
-    on<{ tray: number }>('answer', ({ tray }) => void this.#after(this.desk?.answer(tray) ?? Promise.resolve()));
-    on<{ name: string }>('answer-new', ({ name }) => void this.#after(this.desk?.answerNew(name) ?? Promise.resolve()));
+    on<{ tray: number }>('answer', ({ tray }) => void this.desk?.answer(tray));
+    on<{ name: string }>('answer-new', ({ name }) => void this.desk?.answerNew(name));
     on<{ item: number; tray: number }>('place', ({ item, tray }) => void (tray < 0 ? this.desk?.none(item) : this.desk?.answer(tray, item)));
-    on('none', () => void this.#after(this.desk?.none() ?? Promise.resolve()));
-    on('skip', () => void this.#after(this.desk?.skip() ?? Promise.resolve()));
+    on('none', () => void this.desk?.none());
+    on('skip', () => void this.desk?.skip());
     on('withdraw', () => void this.desk?.withdraw());
     on('back', () => this.desk?.backToQuestion());
     on('zoom', () => void this.#zoom());
@@ -289,10 +279,12 @@ export class Bench extends LitElement {
   async #clear(): Promise<void> {
     this.#closePanel();
     this.#shelves?.tiles.clear();
+    localStorage.removeItem(HAS_PILE);
     await this.desk?.clear();
   }
 
   async #discard(): Promise<void> {
+    localStorage.removeItem(HAS_PILE);
     await PileClient.discard();
     location.reload();
   }
@@ -325,7 +317,7 @@ export class Bench extends LitElement {
   #top(bench: boolean): TemplateResult {
     const { desk } = this;
     return html`<header class=${bench ? 'working' : ''}>
-      <p class="brand"><svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg><span>${words.brand}</span></p>
+      ${bench ? html`<h1 class="brand">${brand}</h1>` : html`<p class="brand">${brand}</p>`}
       ${bench && desk
         ? html`<ken-band .tally=${desk.view?.tally}></ken-band>
             <nav aria-label="Pile">
@@ -347,6 +339,7 @@ export class Bench extends LitElement {
   }
 
   #welcome(): TemplateResult {
+    if (!this.desk && localStorage.getItem(HAS_PILE)) return html`<main class="failure"><p>${words.opening}</p></main>`;
     return html`<ken-welcome ?loading=${this.demoLoading} ?hasCamera=${hasCamera()}></ken-welcome>`;
   }
 
@@ -388,12 +381,10 @@ export class Bench extends LitElement {
 
   #panel(): TemplateResult | typeof nothing {
     const { desk, opened } = this;
+    if (opened?.panel === 'help') return html`<ken-help class="panel" ?singleKeys=${this.singleKeys}></ken-help>`;
+    if (opened?.panel === 'camera') return html`<ken-camera class="panel"></ken-camera>`;
     if (!opened || !desk) return nothing;
     switch (opened.panel) {
-      case 'help':
-        return html`<ken-help class="panel" ?singleKeys=${this.singleKeys}></ken-help>`;
-      case 'camera':
-        return html`<ken-camera class="panel"></ken-camera>`;
       case 'zoom':
         return html`<ken-zoom class="panel" .picture=${this.#zoomed ?? this.#pictureOf.url} .name=${desk.handItem?.name ?? ''}></ken-zoom>`;
       case 'start-over': {

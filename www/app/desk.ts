@@ -33,7 +33,7 @@ export class Desk {
   /** What was said about a failed save. */
   #unsaved: string | undefined;
 
-  constructor(client: PileClient, redraw: () => void) {
+  private constructor(client: PileClient, redraw: () => void) {
     this.client = client;
     this.#redraw = redraw;
     client.on('change', () => {
@@ -47,7 +47,13 @@ export class Desk {
     });
     client.on('saved', ({ detail }) => this.#saved(detail));
     if (client.notKept !== undefined) this.complain(words.notKept);
-    void this.#show(undefined);
+  }
+
+  /** A desk with the client's pile already on it. */
+  static async lay(client: PileClient, redraw: () => void): Promise<Desk> {
+    const desk = new Desk(client, redraw);
+    await desk.#show(undefined);
+    return desk;
   }
 
   get items(): readonly Item[] {

@@ -23,7 +23,8 @@ export class Reading extends LitElement {
   }
 
   override render(): TemplateResult {
-    return html`${this.#reading()} ${this.#outcome()}
+    return html`<section aria-label=${words.news}>
+      ${this.#reading()} ${this.#outcome()}
       <div role="alert">
         ${this.problems.map(
           (problem) => html`<p class="line problem">
@@ -31,7 +32,8 @@ export class Reading extends LitElement {
             <button class="plain" @click=${() => tell(this, 'dismiss', { problem })}>${words.dismiss}</button>
           </p>`,
         )}
-      </div>`;
+      </div>
+    </section>`;
   }
 
   #reading(): TemplateResult | typeof nothing {

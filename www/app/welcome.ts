@@ -85,7 +85,7 @@ export class Welcome extends LitElement {
         justify-items: start;
       }
       h1 {
-        font-size: clamp(2rem, 4.6vw, 3.5rem);
+        font-size: clamp(2rem, 4vw, 3.4rem);
         line-height: 1.06;
         letter-spacing: -0.02em;
         text-wrap: balance;

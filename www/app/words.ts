@@ -123,6 +123,7 @@ export const words = {
   // Reading
   reading: (done: number, total: number, seconds: number | undefined) =>
     `Reading photos: ${count(done)} of ${count(total)}${seconds === undefined ? '' : `, ${timeLeft(seconds)}`}`,
+  news: 'News',
   readingShort: 'Reading photos',
   stop: 'Stop',
   stopped: (done: number, total: number) => `Stopped after ${count(done)} of ${count(total)}.`,
@@ -147,6 +148,7 @@ export const words = {
   notKept: 'This browser keeps nothing for this page (a private window?). The pile lasts until you close the tab: take the result before.',
   withoutOriginals: 'This device is nearly full: from now on only small pictures are kept, so zoom will be coarse after a reload.',
   savedAgain: 'All changes are kept again.',
+  opening: 'Taking up the pile …',
   cantStart: 'The page can’t start',
   reload: 'Reload',
   tryAgain: 'Try again',

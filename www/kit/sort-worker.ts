@@ -110,7 +110,7 @@ function apply(action: Action): string | undefined {
     case 'answer':
       return void to.answer(action.item, action.tray);
     case 'answer-new':
-      return void to.answer(action.item, to.addTray(action.name));
+      return void to.answerNew(action.item, action.name);
     case 'none':
       return void to.answerNone(action.item);
     case 'skip':

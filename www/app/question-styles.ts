@@ -1,0 +1,171 @@
+import { css } from 'lit';
+
+export const questionStyles = css`
+  :host {
+    display: flex;
+    flex-direction: column;
+  }
+  section {
+    flex: 1 1 auto;
+    display: flex;
+    flex-direction: column;
+    gap: 0.7rem;
+    min-height: 0;
+  }
+  header {
+    display: flex;
+    align-items: baseline;
+    gap: 0.8rem;
+  }
+  h2 {
+    font-size: 1.55rem;
+    line-height: 1.2;
+    white-space: nowrap;
+  }
+  h2:focus {
+    outline: none;
+  }
+  .name {
+    min-width: 0;
+    margin-inline-start: auto;
+    overflow: hidden;
+    text-overflow: ellipsis;
+    white-space: nowrap;
+    font-size: 0.88rem;
+    direction: rtl;
+    unicode-bidi: plaintext;
+  }
+  .mat {
+    position: relative;
+    display: flex;
+    flex: 1 1 auto;
+    height: clamp(190px, 40vh, 460px);
+    min-height: 170px;
+    padding: 8px;
+    border-radius: 14px;
+    background: var(--bright);
+  }
+  img {
+    width: 100%;
+    height: 100%;
+    object-fit: contain;
+    border-radius: 8px;
+    background: var(--quiet);
+    cursor: grab;
+  }
+  .zoom {
+    position: absolute;
+    inset-block-end: 14px;
+    inset-inline-end: 14px;
+    background: var(--surface);
+  }
+  .rows {
+    display: grid;
+    grid-template-columns: repeat(auto-fill, minmax(min(165px, 100%), 1fr));
+    gap: 8px;
+    list-style: none;
+  }
+  .choice {
+    position: relative;
+    display: flex;
+    align-items: center;
+    gap: 0.55rem;
+    width: 100%;
+    min-height: 46px;
+    padding: 4px 10px 8px;
+    text-align: start;
+    overflow: hidden;
+  }
+  button.choice::after {
+    content: '';
+    position: absolute;
+    inset-inline-start: 0;
+    inset-block-end: 0;
+    block-size: 5px;
+    inline-size: calc(var(--fraction) * 100%);
+    background: var(--edge);
+  }
+  .choice .label {
+    flex: 1;
+    min-width: 0;
+    overflow-wrap: anywhere;
+    line-height: 1.2;
+    font-weight: 600;
+  }
+  .choice .figure {
+    font-variant-numeric: tabular-nums;
+    color: var(--ink-soft);
+    font-size: 0.9rem;
+  }
+  .choice.guessed {
+    flex-wrap: wrap;
+    row-gap: 0;
+    border: 2px solid var(--bright);
+    background: var(--bright-soft);
+  }
+  .choice.guessed .figure {
+    color: inherit;
+    font-weight: 600;
+  }
+  .choice.guessed::after {
+    background: var(--bright);
+  }
+  .choice .guess {
+    flex-basis: 100%;
+    font-size: 0.8rem;
+    line-height: 1.3;
+  }
+  .choice.given {
+    box-shadow: inset 0 0 0 2px var(--ink);
+  }
+  .no-key {
+    width: 1.6em;
+  }
+  @media (pointer: coarse), (max-width: 820px) {
+    .mat {
+      height: clamp(190px, 33vh, 460px);
+    }
+    .choice kbd,
+    .no-key {
+      display: none;
+    }
+  }
+  .field {
+    position: relative;
+  }
+  .in-field {
+    position: absolute;
+    inset-inline-end: 10px;
+    top: 50%;
+    translate: 0 -50%;
+    pointer-events: none;
+  }
+  input:focus + .in-field {
+    visibility: hidden;
+  }
+  #found {
+    max-height: 15rem;
+    overflow: auto;
+    display: grid;
+    gap: 4px;
+  }
+  .option {
+    padding-block: 4px;
+    border: 2px solid transparent;
+    border-radius: var(--radius);
+    background: var(--raised);
+    cursor: pointer;
+  }
+  .option[aria-selected='true'] {
+    border-color: var(--ink);
+  }
+  .hint-line {
+    font-size: 0.94rem;
+  }
+  .standing {
+    display: flex;
+    flex-wrap: wrap;
+    align-items: center;
+    font-size: 0.94rem;
+  }
+`;
