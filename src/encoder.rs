@@ -8,7 +8,7 @@ mod photo;
 mod picture;
 
 #[cfg(feature = "photo")]
-pub use photo::{Photo, PhotoEncoder};
+pub use photo::{Photo, PhotoEncoder, file_fingerprint};
 
 /// Most pixels a picture may have: more than any camera takes, little enough for a browser's memory.
 pub const MAX_PIXELS: u64 = 100_000_000;

@@ -131,6 +131,11 @@ impl Encoder for PhotoEncoder {
     }
 }
 
+/// Names a file's content: the first 128 bits of its SHA-256, in hexadecimal. The same as [`Photo`]'s.
+pub fn file_fingerprint(file: &[u8]) -> String {
+    fingerprint(&[file])
+}
+
 /// The first 128 bits of the SHA-256 of the parts, in hexadecimal.
 fn fingerprint(parts: &[&[u8]]) -> String {
     let mut hash = Sha256::new();
