@@ -70,7 +70,9 @@ pub enum EncoderError {
         height: u32,
     },
     /// A picture format by its first bytes, but the rest can't be decoded.
-    #[error("this {format} picture is cut off or damaged ({reason}); copy it again from where it came from, or save it anew with a picture program")]
+    #[error(
+        "this {format} picture is cut off or damaged ({reason}); copy it again from where it came from, or save it anew with a picture program"
+    )]
     ImageUnreadable {
         /// The format's name.
         format: &'static str,
@@ -86,7 +88,9 @@ pub enum EncoderError {
         reason: String,
     },
     /// Pixels handed over do not fill the frame they were said to fill.
-    #[error("a frame of {width} × {height} pixels takes 4 bytes a pixel, but {bytes} bytes came; pass the RGBA bytes of one whole frame")]
+    #[error(
+        "a frame of {width} × {height} pixels takes 4 bytes a pixel, but {bytes} bytes came; pass the RGBA bytes of one whole frame"
+    )]
     FrameSize {
         /// Pixels across.
         width: u32,

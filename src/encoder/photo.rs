@@ -48,7 +48,10 @@ impl PhotoEncoder {
     /// [`EncoderError::EncoderFile`] when the file is damaged or of another shape.
     pub fn from_bytes(file: &[u8]) -> Result<Self, EncoderError> {
         let network = Network::from_bytes(file)?;
-        Ok(Self { network, identity: format!("efficientnet-lite0:{}", fingerprint(&[file])) })
+        Ok(Self {
+            network,
+            identity: format!("efficientnet-lite0:{}", fingerprint(&[file])),
+        })
     }
 
     /// The encoder that is part of the program. Only with the feature `cli`: a page loads the file by itself.
@@ -73,7 +76,13 @@ impl PhotoEncoder {
     ///
     /// # Errors
     /// The frame is empty or too large, or `rgba` is not `4 × width × height` bytes long.
-    pub fn read_pixels(&self, rgba: &[u8], width: u32, height: u32, thumbnail_side: u32) -> Result<Photo, EncoderError> {
+    pub fn read_pixels(
+        &self,
+        rgba: &[u8],
+        width: u32,
+        height: u32,
+        thumbnail_side: u32,
+    ) -> Result<Photo, EncoderError> {
         let picture = Picture::from_rgba(rgba, width, height)?;
         let fingerprint = fingerprint(&[&width.to_le_bytes(), &height.to_le_bytes(), rgba]);
         self.keep(&picture, thumbnail_side, fingerprint)
@@ -107,7 +116,10 @@ impl Clone for PhotoEncoder {
     fn clone(&self) -> Self {
         let mut network = self.network.clone();
         network.detach();
-        Self { network, identity: self.identity.clone() }
+        Self {
+            network,
+            identity: self.identity.clone(),
+        }
     }
 }
 

@@ -45,7 +45,11 @@ impl PhotoEncoder {
     ///
     /// Throws "image-empty", "not-an-image", "image-too-large" or "image-unreadable"; the message is a clause about
     /// the file, to put after its name and a colon.
-    pub fn read(&self, bytes: &[u8], #[wasm_bindgen(js_name = thumbnailSide)] thumbnail_side: u32) -> Result<Photo, JsValue> {
+    pub fn read(
+        &self,
+        bytes: &[u8],
+        #[wasm_bindgen(js_name = thumbnailSide)] thumbnail_side: u32,
+    ) -> Result<Photo, JsValue> {
         self.0.read(bytes, thumbnail_side).map(Photo).map_err(thrown)
     }
 
@@ -60,7 +64,10 @@ impl PhotoEncoder {
         height: u32,
         #[wasm_bindgen(js_name = thumbnailSide)] thumbnail_side: u32,
     ) -> Result<Photo, JsValue> {
-        self.0.read_pixels(rgba, width, height, thumbnail_side).map(Photo).map_err(thrown)
+        self.0
+            .read_pixels(rgba, width, height, thumbnail_side)
+            .map(Photo)
+            .map_err(thrown)
     }
 }
 
