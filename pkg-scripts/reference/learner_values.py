@@ -1,0 +1,134 @@
+"""Reference values for the learners, computed by scikit-learn and numpy on tables that scikit-learn carries.
+
+Writes tests/data/learners.json, which tests/learner_values.rs compares with. `--check` compares the file that is there
+instead and exits with 1 where it differs.
+"""
+
+import json
+import sys
+from pathlib import Path
+
+import numpy as np
+import sklearn
+from sklearn.datasets import load_digits, load_iris, load_wine
+from sklearn.linear_model import Ridge
+from sklearn.metrics import log_loss
+from sklearn.neighbors import NearestCentroid
+from sklearn.preprocessing import StandardScaler
+
+OUT = Path(__file__).resolve().parents[2] / "tests" / "data" / "learners.json"
+STEPS, STEP_SIZE, TEMPERATURE = 10, 20.0, 6.0
+
+
+def unit(x):
+    return x / np.linalg.norm(x, axis=1, keepdims=True)
+
+
+def task(table, counts, seed):
+    """Unit vectors of a table: `counts[c]` examples of category c and up to 8 queries of each."""
+    x, y = table.data, table.target
+    x = unit(StandardScaler().fit_transform(x)).astype(np.float32)
+    random = np.random.Generator(np.random.PCG64(seed))
+    support, query = [], []
+    for category, count in enumerate(counts):
+        members = random.permutation(np.flatnonzero(y == category))
+        support += members[:count].tolist()
+        query += members[count : count + 8].tolist()
+    return x[support], y[support], x[query]
+
+
+def ridge(x, y, query, penalty):
+    """Category means of squared errors plus penalty · ‖W‖²: scikit-learn's Ridge with weights 1/n_c."""
+    categories = y.max() + 1
+    targets = np.eye(categories)[y] - 1 / categories
+    fit = Ridge(alpha=penalty).fit(x.astype(np.float64), targets, sample_weight=1 / np.bincount(y)[y])
+    return fit.predict(query.astype(np.float64))
+
+
+def ridge_left_out(x, y, penalty):
+    """Refits without each example; None where its category would be empty."""
+    counts = np.bincount(y)
+    rows = []
+    for i in range(len(y)):
+        keep = np.arange(len(y)) != i
+        rows.append(ridge(x[keep], y[keep], x[i : i + 1], penalty)[0].tolist() if counts[y[i]] > 1 else None)
+    return rows
+
+
+def gradient(x, y, query):
+    """Full-batch steps down the category-balanced log loss in weight space, from the prototypes."""
+    x, query = x.astype(np.float64), query.astype(np.float64)
+    categories = y.max() + 1
+    means = np.stack([x[y == c].mean(0) for c in range(categories)])
+    weights, bias = 2 * TEMPERATURE * means, -TEMPERATURE * (means**2).sum(1)
+    share = 1 / (np.bincount(y)[y] * categories)
+    for _ in range(STEPS):
+        logits = x @ weights.T + bias
+        p = np.exp(logits - logits.max(1, keepdims=True))
+        p /= p.sum(1, keepdims=True)
+        error = (p - np.eye(categories)[y]) * share[:, None]
+        weights, bias = weights - STEP_SIZE * error.T @ x, bias - STEP_SIZE * error.sum(0)
+    logits = x @ weights.T + bias
+    loss = log_loss(y, np.exp(logits) / np.exp(logits).sum(1, keepdims=True), sample_weight=share)
+    return (query @ weights.T + bias).tolist(), loss
+
+
+def values():
+    tasks = []
+    for name, table, counts in [
+        ("iris", load_iris(), [4, 4, 4]),
+        ("iris, uneven", load_iris(), [9, 3, 1]),
+        ("wine", load_wine(), [5, 2, 7]),
+        ("digits", load_digits(), [3] * 10),
+    ]:
+        x, y, query = task(table, counts, seed=len(tasks) + 1)
+        gradient_logits, gradient_loss = gradient(x, y, query)
+        tasks.append(
+            {
+                "name": name,
+                "labels": y.tolist(),
+                "examples": x.tolist(),
+                "queries": query.tolist(),
+                "nearest_centroid": NearestCentroid().fit(x, y).predict(query).tolist(),
+                "ridge": [
+                    {"penalty": p, "logits": ridge(x, y, query, p).tolist(), "left_out": ridge_left_out(x, y, p)} for p in (0.02, 0.3)
+                ],
+                "gradient": gradient_logits,
+                "gradient_loss": gradient_loss,
+            }
+        )
+    return {
+        "source": "UCI tables iris, wine and digits as scikit-learn carries them, standardised, unit length",
+        "scikit-learn": sklearn.__version__,
+        "numpy": np.__version__,
+        "steps": STEPS,
+        "step_size": STEP_SIZE,
+        "temperature": TEMPERATURE,
+        "tasks": tasks,
+    }
+
+
+def close(a, b):
+    if isinstance(a, dict):
+        return a.keys() == b.keys() and all(close(a[k], b[k]) for k in a)
+    if isinstance(a, list):
+        return isinstance(b, list) and len(a) == len(b) and all(map(close, a, b))
+    return abs(a - b) < 1e-5 if isinstance(a, float) and isinstance(b, float) else a == b
+
+
+def rounded(value):
+    if isinstance(value, dict):
+        return {k: rounded(v) for k, v in value.items()}
+    if isinstance(value, list):
+        return [rounded(v) for v in value]
+    return round(value, 7) if isinstance(value, float) else value
+
+
+if __name__ == "__main__":
+    new = rounded(values())
+    if sys.argv[1:] == ["--check"]:
+        same = close(json.loads(OUT.read_text()), new)
+        print("learner values:", "as committed" if same else "differ from tests/data/learners.json")
+        print(f"{int(same)} passed, {int(not same)} failed")
+        sys.exit(not same)
+    OUT.write_text(json.dumps(new, separators=(",", ":")) + "\n")

@@ -1,0 +1,116 @@
+//! Learners against scikit-learn and numpy: `pkg-scripts/reference/learner_values.py` wrote the values and names the
+//! versions in them.
+
+use kenspeckle::{
+    Prior, Support,
+    learner::{Gradient, Learner, Prototype, Ridge},
+};
+use ndarray::Array2;
+use serde::Deserialize;
+
+#[derive(Deserialize)]
+struct Values {
+    steps: usize,
+    step_size: f64,
+    temperature: f64,
+    tasks: Vec<Task>,
+}
+
+#[derive(Deserialize)]
+struct Task {
+    name: String,
+    labels: Vec<usize>,
+    examples: Vec<Vec<f32>>,
+    queries: Vec<Vec<f32>>,
+    nearest_centroid: Vec<usize>,
+    ridge: Vec<RidgeValues>,
+    gradient: Vec<Vec<f64>>,
+    gradient_loss: f64,
+}
+
+#[derive(Deserialize)]
+struct RidgeValues {
+    penalty: f64,
+    logits: Vec<Vec<f64>>,
+    left_out: Vec<Option<Vec<f64>>>,
+}
+
+fn values() -> Values {
+    serde_json::from_str(include_str!("data/learners.json")).unwrap()
+}
+
+fn rows(rows: &[Vec<f32>]) -> Array2<f32> {
+    Array2::from_shape_fn((rows.len(), rows[0].len()), |(i, j)| rows[i][j])
+}
+
+impl Task {
+    fn support(&self) -> Support {
+        let categories = self.labels.iter().max().unwrap() + 1;
+        Support::new(rows(&self.examples), self.labels.clone(), categories).unwrap()
+    }
+}
+
+fn assert_close(name: &str, ours: &Array2<f64>, theirs: &[Vec<f64>], tolerance: f64) {
+    assert_eq!(ours.nrows(), theirs.len());
+    for (row, reference) in ours.outer_iter().zip(theirs) {
+        for (a, b) in row.iter().zip(reference) {
+            assert!((a - b).abs() < tolerance, "{name}: {row} is not {reference:?}");
+        }
+    }
+}
+
+#[test]
+fn prototypes_choose_as_scikit_learns_nearest_centroid() {
+    for task in values().tasks {
+        let head = Prototype { shrinkage: 0.0 }.learn(&task.support()).head;
+        let logits = head.logits(rows(&task.queries).view());
+        let chosen: Vec<usize> =
+            logits.outer_iter().map(|row| kenspeckle::arithmetic::arg_max(row.iter()).unwrap()).collect();
+        assert_eq!(chosen, task.nearest_centroid, "{}", task.name);
+    }
+}
+
+#[test]
+fn ridge_fits_as_scikit_learns_ridge() {
+    for task in values().tasks {
+        let support = task.support();
+        for reference in &task.ridge {
+            let learned = Ridge::learn_at(&support, reference.penalty * support.shot());
+            assert_close(&task.name, &learned.head.logits(rows(&task.queries).view()), &reference.logits, 2e-5);
+            for (example, expected) in reference.left_out.iter().enumerate() {
+                let ours = learned.left_out.get(example);
+                assert_eq!(ours.is_some(), expected.is_some());
+                if let (Some(ours), Some(expected)) = (ours, expected) {
+                    let ours = ours.to_owned().insert_axis(ndarray::Axis(0));
+                    assert_close(&task.name, &ours, std::slice::from_ref(expected), 5e-5);
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn gradient_steps_as_numpy_takes_them() {
+    let values = values();
+    let prior = Prior {
+        steps: values.steps,
+        step_size: values.step_size,
+        start_temperature: Some(values.temperature),
+        ..Prior::default()
+    };
+    for task in &values.tasks {
+        let support = task.support();
+        let head = Gradient { prior: &prior }.learn(&support).head;
+        assert_close(&task.name, &head.logits(rows(&task.queries).view()), &task.gradient, 1e-4);
+
+        // The loss that the steps go down, against scikit-learn's log_loss with the same weights.
+        let probabilities = head.probabilities(support.embeddings());
+        let loss: f64 = (0..support.len())
+            .map(|i| {
+                let label = support.labels()[i];
+                -probabilities[[i, label]].ln() / (support.counts()[label] * support.categories()) as f64
+            })
+            .sum();
+        assert!((loss - task.gradient_loss).abs() < 1e-5, "{}: {loss} {}", task.name, task.gradient_loss);
+    }
+}
