@@ -323,7 +323,7 @@ fn on_white(pixel: &[u8], channels: usize, depth: usize) -> [u8; 3] {
         1 => u32::from(pixel[channel]),
         _ => (u32::from(u16::from_ne_bytes([pixel[2 * channel], pixel[2 * channel + 1]])) + 128) / 257,
     };
-    let alpha = if channels % 2 == 0 { value(channels - 1) } else { 255 };
+    let alpha = if matches!(channels, 2 | 4) { value(channels - 1) } else { 255 };
     let mixed = |channel| ((value(channel) * alpha + 255 * (255 - alpha) + 127) / 255) as u8;
     if channels < 3 {
         [mixed(0); 3]
