@@ -50,7 +50,7 @@ def vectors_of(name, say):
     sets.VECTORS.mkdir(parents=True, exist_ok=True)
     done = subprocess.run([PROGRAM, "embed", sets.SETS / name, "--out", file], capture_output=True, text=True, check=False)
     if done.returncode:
-        raise sets.Unmeasured(f"`kenspeckle embed` failed: {done.stderr.strip()}")
+        raise sets.Unmeasured(f"`kenspeckle embed` failed (exit code {done.returncode}): {done.stderr.strip()}")
     names = file.with_suffix(".names.csv")
     with open(names, newline="", encoding="utf-8") as rows:
         items = [row["item"] for row in csv.DictReader(rows)]

@@ -80,7 +80,9 @@ def icons():
 def stamps():
     """Unpacks the stamps: one category a folder of the package that holds enough pictures of its own."""
     target = sets.SETS / "stamps"
-    if (target / "copyright").exists():
+    # Beside the folder, not in it: the program takes every file below a folder for a photo.
+    licences = sets.SETS / "stamps.copyright"
+    if licences.exists():
         return print(f"stamps: {len(list(target.glob('*/*.png')))} pictures are there")
     with tempfile.TemporaryDirectory(prefix="kenspeckle-stamps-") as folder:
         # apt-get warns when it can't drop its rights for a folder of ours: it fetches all the same.
@@ -101,8 +103,8 @@ def stamps():
                 shutil.copyfile(picture, category / picture.name)
             count += len(pictures)
         # Copied last: it marks the set as complete.
-        shutil.copyfile(usr / "doc" / STAMPS_PACKAGE / "copyright", target / "copyright")
-        print(f"stamps: {package.name.rsplit('_', 1)[0]}: {count} pictures; licences in {(target / 'copyright').relative_to(sets.ROOT)}")
+        shutil.copyfile(usr / "doc" / STAMPS_PACKAGE / "copyright", licences)
+        print(f"stamps: {package.name.rsplit('_', 1)[0]}: {count} pictures; licences in {licences.relative_to(sets.ROOT)}")
 
 
 def table(name, load, standardise):
