@@ -93,6 +93,7 @@ def run(say):
         "network": beside(photos["network"]),
         "files": {name: beside(times) for name, times in photos["files"].items()},
         "answer_to_sorted": summarise(answers["sort"]),
+        "answer_to_sorted_last_turn": summarise(answers["sort"][-TRAYS:]),
         "next_question": summarise(answers["question"]),
         "right_after_all_answers": answers["right"][-1],
         "first_visit": visit,
@@ -106,6 +107,7 @@ def table(numbers):
     text += "| | median | 95th percentile | most |\n| --- | --- | --- | --- |\n"
     times = lambda name, t: f"| {name} | {t['median']:.1f} | {t['95th percentile']:.1f} | {t['most']:.1f} |\n"
     text += times(f"from an answer to the sorted pile ({PILE} items, {TRAYS} trays, 1 to {ANSWERS_PER_TRAY} answers each)", numbers["answer_to_sorted"])
+    text += times(f"the same, the last {TRAYS} of these answers", numbers["answer_to_sorted_last_turn"])
     text += times("choosing the next question", numbers["next_question"])
     text += f"\nAt most {MOST_MILLISECONDS_TO_SORT} ms was asked for the first line.\n"
     text += f"\n## Time per photo beside {numbers['libraries']}, turn by turn\n\n"
