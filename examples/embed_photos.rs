@@ -26,11 +26,7 @@ fn embed(encoder: &str, out: &str, photos: &[String]) -> Result<(), String> {
     let file = fs::read(encoder).map_err(|error| named(encoder, &error))?;
     let began = Instant::now();
     let encoder = PhotoEncoder::from_bytes(&file).map_err(|error| named(encoder, &error))?;
-    eprintln!(
-        "{} loaded in {:.0} ms",
-        encoder.identity(),
-        began.elapsed().as_secs_f64() * 1e3
-    );
+    eprintln!("{} loaded in {:.0} ms", encoder.identity(), began.elapsed().as_secs_f64() * 1e3);
 
     let mut values = Vec::new();
     let began = Instant::now();
@@ -38,10 +34,7 @@ fn embed(encoder: &str, out: &str, photos: &[String]) -> Result<(), String> {
         let file = fs::read(photo).map_err(|error| named(photo, &error))?;
         values.extend(encoder.embed(&file).map_err(|error| named(photo, &error))?);
     }
-    eprintln!(
-        "{:.1} ms a photo",
-        began.elapsed().as_secs_f64() * 1e3 / photos.len().max(1) as f64
-    );
+    eprintln!("{:.1} ms a photo", began.elapsed().as_secs_f64() * 1e3 / photos.len().max(1) as f64);
     fs::write(out, npy(&values, photos.len(), encoder.dimension())).map_err(|error| named(out, &error))
 }
 

@@ -109,7 +109,9 @@ impl LearnerKind {
     pub fn learn(self, support: &Support, prior: &Prior) -> Learned {
         match self {
             Self::Auto => Auto { prior }.learn(support),
-            Self::Prototype => calibrate(prior.prototype().learn(support), support, prior.prototype_temperature(support)),
+            Self::Prototype => {
+                calibrate(prior.prototype().learn(support), support, prior.prototype_temperature(support))
+            }
             Self::Ridge => prior.ridge().calibrated(support),
             Self::Gradient => calibrate(prior.gradient().learn(support), support, 1.0),
         }

@@ -320,7 +320,9 @@ impl Ledger {
         let tray_ok = |answer: &Answer| !matches!(answer, Answer::Tray(tray) if *tray >= self.trays.len());
         let change_ok = |change: &Change| match change {
             Change::Answered { item, from, to } => *item < self.answers.len() && tray_ok(from) && tray_ok(to),
-            Change::TrayMade { tray } | Change::TrayGone { tray } | Change::Renamed { tray, .. } => *tray < self.trays.len(),
+            Change::TrayMade { tray } | Change::TrayGone { tray } | Change::Renamed { tray, .. } => {
+                *tray < self.trays.len()
+            }
             Change::ItemGone { item } => *item < self.answers.len(),
         };
         let live_ok = |answer: &Answer| !matches!(answer, Answer::Tray(tray) if !self.trays[*tray].live);

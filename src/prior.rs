@@ -25,9 +25,9 @@ pub struct Prior {
     pub step_size: f64,
     /// How many steps the gradient learner takes (at most 20).
     pub steps: usize,
-    /// The shares of prototype, ridge and gradient in the mix before there is evidence; they add up to 1.
-    pub preference: [f64; 3],
-    /// How many examples' worth of evidence the preference counts for.
+    /// How much of the pile's centre is known beyond the examples themselves, 0 to 1. Nearest prototypes need it.
+    pub centre_known: f64,
+    /// How strongly the mix of learners is held to the preference, in nats for a share of 1 too much.
     pub preference_weight: f64,
 }
 
@@ -39,8 +39,8 @@ impl Default for Prior {
             start_temperature: None,
             step_size: 20.0,
             steps: 10,
-            preference: [0.35, 0.5, 0.15],
-            preference_weight: 4.0,
+            centre_known: 0.0,
+            preference_weight: 20.0,
         }
     }
 }
@@ -59,6 +59,15 @@ impl Prior {
 
     pub(crate) fn gradient(&self) -> Gradient<'_> {
         Gradient { prior: self }
+    }
+
+    /// The shares of prototype, ridge and gradient in the mix before there is evidence; they add up to 1.
+    ///
+    /// Seen from the centre of a pile, nearest prototypes are best at one example a category; otherwise ridge is.
+    pub(crate) fn preference(&self, support: &Support) -> [f64; 3] {
+        let gradient = 0.1;
+        let prototype = 0.1 + 0.7 * self.centre_known / support.shot().powi(2);
+        [prototype, 1.0 - prototype - gradient, gradient]
     }
 
     /// The factor that turns squared distances to prototypes into logits: distances between unit vectors shrink as

@@ -12,7 +12,7 @@ use crate::{
     ledger::{Action, Answer, Ledger},
     pile::Pile,
     prior::Prior,
-    space::{Centre, Space},
+    space::{CENTRE_CAUTION, Centre, Space},
     support::Support,
 };
 
@@ -283,7 +283,8 @@ impl Sorter {
         let probabilities = self.head(&trays, &centre).map(|head| self.probabilities(&head, &centre));
         let verdicts = (0..self.pile.len())
             .map(|item| {
-                let ranked = probabilities.as_ref().map(|all| best_two(all.row(item).as_slice().expect("standard layout")));
+                let ranked =
+                    probabilities.as_ref().map(|all| best_two(all.row(item).as_slice().expect("standard layout")));
                 self.pile.contains(item).then(|| self.judge(item, &trays, ranked))
             })
             .collect();
@@ -302,7 +303,9 @@ impl Sorter {
         let rows = Array2::from_shape_vec((labels.len(), d), numbers).ok()?;
         // Fewer than two trays is the one refusal that can happen here, and then there is nothing to tell apart.
         let support = Support::new(rows, labels, trays.len()).ok()?;
-        Some(self.settings.learner.learn(&support, &self.prior).head)
+        let others = self.pile.items().count().saturating_sub(support.len()) as f64;
+        let prior = Prior { centre_known: others / (others + CENTRE_CAUTION), ..self.prior.clone() };
+        Some(self.settings.learner.learn(&support, &prior).head)
     }
 
     /// Probabilities of all items, seen from the centre without moving any: W (u − μ)/‖u − μ‖ + b.
@@ -364,7 +367,10 @@ impl Sorter {
         }
         if embeddings.len() % d != 0 || embeddings.len() / d < ledger.items() {
             let held = embeddings.len() / d;
-            return Err(Error::StateUnreadable(format!("it has {} items but {held} embeddings came with it", ledger.items())));
+            return Err(Error::StateUnreadable(format!(
+                "it has {} items but {held} embeddings came with it",
+                ledger.items()
+            )));
         }
         let mut sorter = Self::new(settings);
         for embedding in embeddings.chunks_exact(d) {

@@ -187,8 +187,7 @@ fn embedded_photos_sort_as_the_photos_do() {
     assert_eq!(vectors.dim(), (10, 1280));
     assert!(vectors.iter().all(|x| *x >= 0.0));
     fs::write(root.join("labels.csv"), "rings\nrings\nrings\nstripes\nstripes\nstripes\n").unwrap();
-    let output =
-        kenspeckle(root, &["sort", "pile.npy", "--examples", "examples.npy", "--labels", "labels.csv"]);
+    let output = kenspeckle(root, &["sort", "pile.npy", "--examples", "examples.npy", "--labels", "labels.csv"]);
     assert!(output.status.success(), "{}", said(&output));
     let by_vector = table(std::str::from_utf8(&output.stdout).unwrap());
     let by_photo = table(std::str::from_utf8(&sort_photos(&folder, &[]).stdout).unwrap());
@@ -222,7 +221,10 @@ fn vectors_that_cannot_be_sorted_are_refused_by_name() {
     type Spoil = fn(&Path);
     let cases: [(Spoil, &[&str]); 10] = [
         (|root| write_npy(root.join("pile.npy"), &Array1::<f32>::ones(6)).unwrap(), &["pile.npy", "1 dimensions"]),
-        (|root| write_npy(root.join("pile.npy"), &Array3::<f32>::ones((2, 3, 4))).unwrap(), &["pile.npy", "3 dimensions"]),
+        (
+            |root| write_npy(root.join("pile.npy"), &Array3::<f32>::ones((2, 3, 4))).unwrap(),
+            &["pile.npy", "3 dimensions"],
+        ),
         (|root| write_npy(root.join("pile.npy"), &Array2::<f32>::ones((2, 5))).unwrap(), &["5 numbers", "3"]),
         (|root| write_npy(root.join("pile.npy"), &Array2::<f32>::ones((2, 1))).unwrap(), &["pile.npy", "1 numbers"]),
         (|root| write_npy(root.join("pile.npy"), &Array2::<f32>::ones((0, 3))).unwrap(), &["pile.npy", "no item"]),
@@ -260,7 +262,13 @@ fn vectors_that_cannot_be_sorted_are_refused_by_name() {
 #[test]
 fn single_vectors_that_are_no_numbers_are_left_out_by_row() {
     let folder = vectors();
-    let bad = array![[1.0_f32, 0.2, -0.1], [f32::NAN, 1.0, 0.3], [0.0, 0.0, 0.0], [0.1, f32::INFINITY, 0.0], [-0.1, 1.0, 0.3]];
+    let bad = array![
+        [1.0_f32, 0.2, -0.1],
+        [f32::NAN, 1.0, 0.3],
+        [0.0, 0.0, 0.0],
+        [0.1, f32::INFINITY, 0.0],
+        [-0.1, 1.0, 0.3]
+    ];
     write_npy(folder.path().join("pile.npy"), &bad).unwrap();
     let output = kenspeckle(folder.path(), &SORT_VECTORS);
     let said = said(&output);

@@ -48,9 +48,7 @@ fn expected() -> BTreeMap<String, Expected> {
 }
 
 fn cells(thumbnail: &[u8]) -> Vec<[f64; 3]> {
-    let pixels = image::load_from_memory_with_format(thumbnail, image::ImageFormat::Jpeg)
-        .unwrap()
-        .into_rgb8();
+    let pixels = image::load_from_memory_with_format(thumbnail, image::ImageFormat::Jpeg).unwrap().into_rgb8();
     let (width, height) = (pixels.width() / 4, pixels.height() / 3);
     let mut means = Vec::new();
     for row in 0..3 {
@@ -74,9 +72,7 @@ fn every_kind_of_file_shows_what_pillow_shows() {
     let expected = expected();
     assert!(expected.len() >= 28);
     for (name, expected) in expected {
-        let photo = ENCODER
-            .read(&picture(&name), 4096)
-            .unwrap_or_else(|error| panic!("{name}: {error}"));
+        let photo = ENCODER.read(&picture(&name), 4096).unwrap_or_else(|error| panic!("{name}: {error}"));
         assert_eq!((photo.width, photo.height), (expected.width, expected.height), "{name}");
         // The thumbnail is a JPEG of its own, and decoders differ by a level or two.
         for (ours, theirs) in cells(&photo.thumbnail).iter().zip(&expected.cells) {
@@ -99,10 +95,7 @@ fn all_eight_orientations_come_out_upright() {
         file[at + 9] = 1;
         let as_stored = cosine(&upright, &ENCODER.embed(&file).unwrap());
         // A picture turned before it is stored loses other details to JPEG.
-        assert!(
-            turned > 0.97 && as_stored < turned,
-            "orientation {orientation}: {turned}, as stored {as_stored}"
-        );
+        assert!(turned > 0.97 && as_stored < turned, "orientation {orientation}: {turned}, as stored {as_stored}");
     }
     let upright = ENCODER.embed(&picture("plain.png")).unwrap();
     for file in ["orientation-6.png", "orientation-6.webp"] {
@@ -124,10 +117,7 @@ fn an_embedding_is_finite_and_never_negative_and_the_same_each_time() {
 
 #[test]
 fn pictures_of_one_pixel_and_of_one_row_work() {
-    for (name, size, colour) in [
-        ("one-pixel.png", (1, 1), [200, 30, 90]),
-        ("sliver.png", (3000, 1), [10, 160, 90]),
-    ] {
+    for (name, size, colour) in [("one-pixel.png", (1, 1), [200, 30, 90]), ("sliver.png", (3000, 1), [10, 160, 90])] {
         let photo = ENCODER.read(&picture(name), 256).unwrap();
         assert_eq!((photo.width, photo.height), size);
         let thumbnail = image::load_from_memory(&photo.thumbnail).unwrap().into_rgb8();
@@ -142,21 +132,13 @@ fn pictures_of_one_pixel_and_of_one_row_work() {
 fn a_thumbnail_keeps_to_its_side_and_is_never_enlarged() {
     for (side, size) in [(48, (48, 30)), (1, (1, 1)), (0, (1, 1)), (1000, (96, 60))] {
         let photo = ENCODER.read(&picture("orientation-6.jpg"), side).unwrap();
-        assert_eq!(
-            image::load_from_memory(&photo.thumbnail)
-                .unwrap()
-                .into_rgb8()
-                .dimensions(),
-            size
-        );
+        assert_eq!(image::load_from_memory(&photo.thumbnail).unwrap().into_rgb8().dimensions(), size);
     }
 }
 
 #[test]
 fn a_frame_of_pixels_embeds_like_the_file() {
-    let pixels = image::load_from_memory(&picture("transparent.png"))
-        .unwrap()
-        .into_rgba8();
+    let pixels = image::load_from_memory(&picture("transparent.png")).unwrap().into_rgba8();
     let frame = ENCODER.read_pixels(pixels.as_raw(), 96, 60, 64).unwrap();
     let file = ENCODER.read(&picture("transparent.png"), 64).unwrap();
     assert_eq!(frame.embedding, file.embedding);
@@ -214,23 +196,14 @@ fn a_picture_cut_off_anywhere_is_an_error() {
         let whole = picture(name);
         for percent in [3, 10, 30, 60, 80] {
             let error = error(&whole[..whole.len() * percent / 100]);
-            assert!(
-                matches!(error.code(), "image-unreadable"),
-                "{name} at {percent} %: {error:?}"
-            );
+            assert!(matches!(error.code(), "image-unreadable"), "{name} at {percent} %: {error:?}");
         }
     }
 }
 
 #[test]
 fn an_enormous_picture_is_refused_by_its_header() {
-    assert_eq!(
-        error(&picture("huge.png")),
-        EncoderError::ImageTooLarge {
-            width: 20_000,
-            height: 20_000
-        }
-    );
+    assert_eq!(error(&picture("huge.png")), EncoderError::ImageTooLarge { width: 20_000, height: 20_000 });
 
     let mut jpeg = picture("orientation-1.jpg");
     let frame = jpeg.windows(2).position(|marker| marker == [0xFF, 0xC0]).unwrap();
@@ -283,11 +256,7 @@ fn damaged_files_give_an_error_or_a_picture_and_never_a_panic() {
             let mut file = whole.clone();
             for _ in 0..=mix.below(4) {
                 // Half of the damage goes into the header, where decoders trust what they read.
-                let end = if mix.below(2) == 0 {
-                    file.len().min(80)
-                } else {
-                    file.len()
-                };
+                let end = if mix.below(2) == 0 { file.len().min(80) } else { file.len() };
                 let at = mix.below(end);
                 match mix.below(4) {
                     0 => file[at] = mix.below(256) as u8,
@@ -310,8 +279,5 @@ fn damaged_files_give_an_error_or_a_picture_and_never_a_panic() {
         }
     }
     // The mutations reach both sides: pictures that still read, and decoders that give up.
-    assert!(
-        outcomes["read"] > 50 && outcomes["image-unreadable"] > 50,
-        "{outcomes:?}"
-    );
+    assert!(outcomes["read"] > 50 && outcomes["image-unreadable"] > 50, "{outcomes:?}");
 }

@@ -126,7 +126,9 @@ fn degenerate_examples_give_finite_answers() {
 #[test]
 fn ridge_in_either_form_is_the_same_fit() {
     let n = kenspeckle::learner::DUAL_LIMIT + 40;
-    let rows = Array2::from_shape_fn((n, 6), |(i, j)| (((i * 31 + j * 17) % 101) as f32 / 50.0 - 1.0) + (i % 3 == j) as u8 as f32);
+    let rows = Array2::from_shape_fn((n, 6), |(i, j)| {
+        (((i * 31 + j * 17) % 101) as f32 / 50.0 - 1.0) + (i % 3 == j) as u8 as f32
+    });
     let labels: Vec<usize> = (0..n).map(|i| i % 3).collect();
     let support = Support::new(rows.clone(), labels, 3).unwrap();
     let prior = Prior::default();

@@ -55,12 +55,18 @@ def ridge_left_out(x, y, penalty):
     return rows
 
 
+def prototype(x, y):
+    """Weights and bias of −‖z − mean_c‖² + s²/n_c, but for ‖z‖²; s² the pooled variance within categories."""
+    counts = np.bincount(y)
+    means = np.stack([x[y == c].mean(0) for c in range(len(counts))])
+    variance = ((x - means[y]) ** 2).sum() / max(len(y) - len(counts), 1)
+    return 2 * means, variance / counts - (means**2).sum(1)
+
+
 def gradient(x, y, query):
     """Full-batch steps down the category-balanced log loss in weight space, from the prototypes."""
-    x, query = x.astype(np.float64), query.astype(np.float64)
     categories = y.max() + 1
-    means = np.stack([x[y == c].mean(0) for c in range(categories)])
-    weights, bias = 2 * TEMPERATURE * means, -TEMPERATURE * (means**2).sum(1)
+    weights, bias = (TEMPERATURE * part for part in prototype(x, y))
     share = 1 / (np.bincount(y)[y] * categories)
     for _ in range(STEPS):
         logits = x @ weights.T + bias
@@ -82,14 +88,19 @@ def values():
         ("digits", load_digits(), [3] * 10),
     ]:
         x, y, query = task(table, counts, seed=len(tasks) + 1)
-        gradient_logits, gradient_loss = gradient(x, y, query)
+        wide, wide_query = x.astype(np.float64), query.astype(np.float64)
+        gradient_logits, gradient_loss = gradient(wide, y, wide_query)
+        weights, bias = prototype(wide, y)
+        even = len(set(counts)) == 1
         tasks.append(
             {
                 "name": name,
                 "labels": y.tolist(),
                 "examples": x.tolist(),
                 "queries": query.tolist(),
-                "nearest_centroid": NearestCentroid().fit(x, y).predict(query).tolist(),
+                # scikit-learn takes nothing off for uneven counts.
+                "nearest_centroid": NearestCentroid().fit(x, y).predict(query).tolist() if even else None,
+                "prototype": (wide_query @ weights.T + bias).tolist(),
                 "ridge": [
                     {"penalty": p, "logits": ridge(x, y, query, p).tolist(), "left_out": ridge_left_out(x, y, p)} for p in (0.02, 0.3)
                 ],

@@ -40,21 +40,13 @@ impl Network {
         let wanted = [1, 3, SIDE, SIDE].map(Dimension::Fixed);
         let shape = |node| model.node_info(node).and_then(|info| info.shape());
         if shape(input).as_deref() != Some(wanted.as_slice()) {
-            return Err(EncoderError::EncoderFile(format!(
-                "its input is not of shape 1 × 3 × {SIDE} × {SIDE}"
-            )));
+            return Err(EncoderError::EncoderFile(format!("its input is not of shape 1 × 3 × {SIDE} × {SIDE}")));
         }
         let dimension = match shape(output).as_deref() {
             Some([Dimension::Fixed(1), Dimension::Fixed(dimension @ 1..)]) => *dimension,
             _ => return Err(EncoderError::EncoderFile("its output is not one row of numbers".into())),
         };
-        Ok(Self {
-            model: Arc::new(model),
-            input,
-            output,
-            dimension,
-            threads: one_thread(),
-        })
+        Ok(Self { model: Arc::new(model), input, output, dimension, threads: one_thread() })
     }
 
     pub(super) fn dimension(&self) -> usize {

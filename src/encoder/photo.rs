@@ -48,10 +48,7 @@ impl PhotoEncoder {
     /// [`EncoderError::EncoderFile`] when the file is damaged or of another shape.
     pub fn from_bytes(file: &[u8]) -> Result<Self, EncoderError> {
         let network = Network::from_bytes(file)?;
-        Ok(Self {
-            network,
-            identity: format!("efficientnet-lite0:{}", fingerprint(&[file])),
-        })
+        Ok(Self { network, identity: format!("efficientnet-lite0:{}", fingerprint(&[file])) })
     }
 
     /// The encoder that is part of the program. Only with the feature `cli`: a page loads the file by itself.
@@ -116,10 +113,7 @@ impl Clone for PhotoEncoder {
     fn clone(&self) -> Self {
         let mut network = self.network.clone();
         network.detach();
-        Self {
-            network,
-            identity: self.identity.clone(),
-        }
+        Self { network, identity: self.identity.clone() }
     }
 }
 

@@ -46,9 +46,7 @@ impl Picture {
             Ok(format @ (ImageFormat::Png | ImageFormat::WebP | ImageFormat::Gif)) => decode_other(file, format),
             // "BM" begins many a text too; the four reserved bytes of the header are zero.
             Ok(ImageFormat::Bmp) if file.get(6..10) == Some(&[0; 4]) => decode_other(file, ImageFormat::Bmp),
-            _ => Err(EncoderError::NotAnImage {
-                found: kind_of_file(file),
-            }),
+            _ => Err(EncoderError::NotAnImage { found: kind_of_file(file) }),
         }
     }
 
@@ -59,11 +57,7 @@ impl Picture {
         }
         check_size(width, height)?;
         if rgba.len() as u64 != u64::from(width) * u64::from(height) * 4 {
-            return Err(EncoderError::FrameSize {
-                width,
-                height,
-                bytes: rgba.len(),
-            });
+            return Err(EncoderError::FrameSize { width, height, bytes: rgba.len() });
         }
         Ok(Self {
             pixels: rgb_image(width, height, to_rgb8(rgba.to_vec(), 4, 1)),
@@ -122,9 +116,8 @@ impl Picture {
 /// Antialiased bicubic resampling (Keys 1981, a = −½) of the part `[left, top, width, height]`, in one step.
 fn resample(pixels: &RgbImage, [left, top, width, height]: [f64; 4], to_width: u32, to_height: u32) -> RgbImage {
     let mut bytes = vec![0; to_width as usize * to_height as usize * 3];
-    let options = ResizeOptions::new()
-        .resize_alg(ResizeAlg::Convolution(FilterType::CatmullRom))
-        .crop(left, top, width, height);
+    let options =
+        ResizeOptions::new().resize_alg(ResizeAlg::Convolution(FilterType::CatmullRom)).crop(left, top, width, height);
     // The typed views keep the code for other kinds of pixels out of the WebAssembly module.
     let source = TypedImageRef::<U8x3>::from_buffer(pixels.width(), pixels.height(), pixels.as_raw());
     let target = TypedImage::<U8x3>::from_buffer(to_width, to_height, &mut bytes);
@@ -139,9 +132,7 @@ fn resample(pixels: &RgbImage, [left, top, width, height]: [f64; 4], to_width: u
 fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
     // Headers leniently, as cameras write them; the pixels strictly, or a picture cut off half-way would count as a
     // good one with a grey lower half.
-    let lenient = DecoderOptions::default()
-        .set_max_width(usize::MAX)
-        .set_max_height(usize::MAX);
+    let lenient = DecoderOptions::default().set_max_width(usize::MAX).set_max_height(usize::MAX);
     let mut decoder = JpegDecoder::new_with_options(ZCursor::new(file), lenient.set_strict_mode(false));
     decoder.decode_headers().map_err(jpeg_error)?;
     let incomplete = || jpeg_error(DecodeErrors::FormatStatic("its header is incomplete"));
@@ -149,11 +140,7 @@ fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
     let (width, height) = (u32::from(info.width), u32::from(info.height));
     check_size(width, height)?;
     let grey = decoder.input_colorspace() == Some(ColorSpace::Luma);
-    let (colours, channels) = if grey {
-        (ColorSpace::Luma, 1)
-    } else {
-        (ColorSpace::RGB, 3)
-    };
+    let (colours, channels) = if grey { (ColorSpace::Luma, 1) } else { (ColorSpace::RGB, 3) };
     let bytes = width as usize * height as usize * channels;
     // A progressive picture keeps its 16-bit coefficients until the last scan.
     let coefficients = if info.sof.is_sequential_dct() { 0 } else { bytes * 2 };
@@ -165,27 +152,16 @@ fn decode_jpeg(file: &[u8]) -> Result<Picture, EncoderError> {
     }
     let mut pixels = vec![0; bytes];
     decoder.decode_into(&mut pixels).map_err(jpeg_error)?;
-    let orientation = decoder
-        .exif()
-        .and_then(|exif| Orientation::from_exif_chunk(exif))
-        .unwrap_or(Orientation::NoTransforms);
-    Ok(Picture {
-        pixels: rgb_image(width, height, to_rgb8(pixels, channels, 1)),
-        orientation,
-    })
+    let orientation =
+        decoder.exif().and_then(|exif| Orientation::from_exif_chunk(exif)).unwrap_or(Orientation::NoTransforms);
+    Ok(Picture { pixels: rgb_image(width, height, to_rgb8(pixels, channels, 1)), orientation })
 }
 
 fn jpeg_error(error: DecodeErrors) -> EncoderError {
     let format = "JPEG";
     match error {
-        DecodeErrors::Unsupported(scheme) => EncoderError::ImageUnsupported {
-            format,
-            reason: format!("{scheme:?}"),
-        },
-        other => EncoderError::ImageUnreadable {
-            format,
-            reason: other.to_string(),
-        },
+        DecodeErrors::Unsupported(scheme) => EncoderError::ImageUnsupported { format, reason: format!("{scheme:?}") },
+        other => EncoderError::ImageUnreadable { format, reason: other.to_string() },
     }
 }
 
@@ -209,19 +185,13 @@ fn decode_other(file: &[u8], format: ImageFormat) -> Result<Picture, EncoderErro
         ColorType::Rgba16 => (4, 2),
         other => {
             let reason = format!("{other:?}");
-            return Err(EncoderError::ImageUnsupported {
-                format: name(format),
-                reason,
-            });
+            return Err(EncoderError::ImageUnsupported { format: name(format), reason });
         }
     };
     let orientation = decoder.orientation().unwrap_or(Orientation::NoTransforms);
     let mut bytes = vec![0; width as usize * height as usize * channels * depth];
     decoder.read_image_boxed(&mut bytes).map_err(failed)?;
-    Ok(Picture {
-        pixels: rgb_image(width, height, to_rgb8(bytes, channels, depth)),
-        orientation,
-    })
+    Ok(Picture { pixels: rgb_image(width, height, to_rgb8(bytes, channels, depth)), orientation })
 }
 
 /// The format's decoder. Not `image::ImageReader`, which would bring a second JPEG decoder into the module.
@@ -248,18 +218,9 @@ fn image_error(error: ImageError, format: ImageFormat, width: u32, height: u32) 
     let format = name(format);
     match error {
         ImageError::Limits(_) if width > 0 => EncoderError::NoMemory { width, height },
-        ImageError::Unsupported(error) => EncoderError::ImageUnsupported {
-            format,
-            reason: error.to_string(),
-        },
-        ImageError::Decoding(error) => EncoderError::ImageUnreadable {
-            format,
-            reason: innermost(&error),
-        },
-        other => EncoderError::ImageUnreadable {
-            format,
-            reason: other.to_string(),
-        },
+        ImageError::Unsupported(error) => EncoderError::ImageUnsupported { format, reason: error.to_string() },
+        ImageError::Decoding(error) => EncoderError::ImageUnreadable { format, reason: innermost(&error) },
+        other => EncoderError::ImageUnreadable { format, reason: other.to_string() },
     }
 }
 
@@ -285,15 +246,8 @@ fn check_size(width: u32, height: u32) -> Result<(), EncoderError> {
 /// Tries the memory out before the decoder takes it: in WebAssembly a decoder that gets none ends the whole module.
 fn check_memory(bytes: u64, width: u32, height: u32) -> Result<(), EncoderError> {
     let available = bytes <= 2 * MAX_BYTES
-        && (bytes < LARGE
-            || Vec::<u8>::new()
-                .try_reserve_exact(usize::try_from(bytes).unwrap_or(usize::MAX))
-                .is_ok());
-    if available {
-        Ok(())
-    } else {
-        Err(EncoderError::NoMemory { width, height })
-    }
+        && (bytes < LARGE || Vec::<u8>::new().try_reserve_exact(usize::try_from(bytes).unwrap_or(usize::MAX)).is_ok());
+    if available { Ok(()) } else { Err(EncoderError::NoMemory { width, height }) }
 }
 
 /// Grey or colour pixels, with alpha or without, `depth` 1 or 2 bytes a channel (in this machine's order), as RGB on
@@ -304,10 +258,7 @@ fn to_rgb8(mut bytes: Vec<u8>, channels: usize, depth: usize) -> Vec<u8> {
         return bytes;
     }
     if stride < 3 {
-        return bytes
-            .chunks_exact(stride)
-            .flat_map(|pixel| on_white(pixel, channels, depth))
-            .collect();
+        return bytes.chunks_exact(stride).flat_map(|pixel| on_white(pixel, channels, depth)).collect();
     }
     let count = bytes.len() / stride;
     for index in 0..count {
@@ -325,11 +276,7 @@ fn on_white(pixel: &[u8], channels: usize, depth: usize) -> [u8; 3] {
     };
     let alpha = if matches!(channels, 2 | 4) { value(channels - 1) } else { 255 };
     let mixed = |channel| ((value(channel) * alpha + 255 * (255 - alpha) + 127) / 255) as u8;
-    if channels < 3 {
-        [mixed(0); 3]
-    } else {
-        [mixed(0), mixed(1), mixed(2)]
-    }
+    if channels < 3 { [mixed(0); 3] } else { [mixed(0), mixed(1), mixed(2)] }
 }
 
 /// `bytes` always holds the whole picture; were it too short, the picture would be black rather than a panic.
@@ -354,11 +301,7 @@ fn kind_of_file(file: &[u8]) -> &'static str {
     } else if starts(b"PK\x03\x04") {
         "a ZIP archive or an office document"
     } else if !file.contains(&0) && str::from_utf8(file).is_ok() {
-        if file.windows(4).take(1024).any(|tag| tag == b"<svg") {
-            "an SVG drawing"
-        } else {
-            "a text"
-        }
+        if file.windows(4).take(1024).any(|tag| tag == b"<svg") { "an SVG drawing" } else { "a text" }
     } else {
         "a file of another kind"
     }

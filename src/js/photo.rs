@@ -64,10 +64,7 @@ impl PhotoEncoder {
         height: u32,
         #[wasm_bindgen(js_name = thumbnailSide)] thumbnail_side: u32,
     ) -> Result<Photo, JsValue> {
-        self.0
-            .read_pixels(rgba, width, height, thumbnail_side)
-            .map(Photo)
-            .map_err(thrown)
+        self.0.read_pixels(rgba, width, height, thumbnail_side).map(Photo).map_err(thrown)
     }
 }
 

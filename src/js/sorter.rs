@@ -249,8 +249,10 @@ impl Sorter {
         let column = |pick: &dyn Fn(&sorter::Verdict) -> f64, removed: f64| -> Vec<f64> {
             verdicts.iter().map(|verdict| verdict.as_ref().map_or(removed, pick)).collect()
         };
-        let whole = |numbers: Vec<f64>| js_sys::Int32Array::from(&numbers.iter().map(|&x| x as i32).collect::<Vec<_>>()[..]);
-        let real = |numbers: Vec<f64>| js_sys::Float32Array::from(&numbers.iter().map(|&x| x as f32).collect::<Vec<_>>()[..]);
+        let whole =
+            |numbers: Vec<f64>| js_sys::Int32Array::from(&numbers.iter().map(|&x| x as i32).collect::<Vec<_>>()[..]);
+        let real =
+            |numbers: Vec<f64>| js_sys::Float32Array::from(&numbers.iter().map(|&x| x as f32).collect::<Vec<_>>()[..]);
         let tray = |tray: Option<usize>| tray.map_or(-1.0, |tray| tray as f64);
         let status = |verdict: &sorter::Verdict| match verdict.answer {
             Answer::Open => 0.0,
@@ -282,8 +284,13 @@ impl Sorter {
 
     /// Trays with an answer, most probable first; empty while there are fewer than two.
     pub fn ranking(&mut self, item: usize) -> Result<RankedTrays, JsValue> {
-        let ranking: Vec<RankedTray> =
-            self.0.ranking(item).or_throw()?.into_iter().map(|(tray, probability)| RankedTray { tray, probability }).collect();
+        let ranking: Vec<RankedTray> = self
+            .0
+            .ranking(item)
+            .or_throw()?
+            .into_iter()
+            .map(|(tray, probability)| RankedTray { tray, probability })
+            .collect();
         Ok(to_js(&ranking).into())
     }
 

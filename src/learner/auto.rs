@@ -37,7 +37,7 @@ impl Learner for Auto<'_> {
 
 impl Auto<'_> {
     fn shares(&self, members: &[Learned; 3], support: &Support) -> [f64; 3] {
-        let preference = self.prior.preference;
+        let preference = self.prior.preference(support);
         if members.iter().all(|m| m.left_out.known() == 0) {
             return preference;
         }

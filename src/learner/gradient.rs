@@ -1,6 +1,6 @@
 //! A few gradient steps: a softmax head that starts at the prototypes and descends on the examples.
 //!
-//! Starts at the nearest-prototype head with the prior's temperature, then takes T ≤ 20 full-batch steps of size α down
+//! Starts at the nearest-prototype head (without shrinkage) with the prior's temperature, then takes T ≤ 20 full-batch steps of size α down
 //! the log loss, in which every category counts the same however uneven the counts. All of it happens in the span of the
 //! examples (W = Aᵀ Z), so a step costs O(n² C) whatever the dimension. Leave-one-out repeats the steps without each
 //! example: exact up to [`EXACT_LIMIT`] examples, beyond that in twelve groups.
@@ -52,7 +52,8 @@ impl Gradient<'_> {
         let squares = (&means * &products).sum_axis(Axis(0));
         let temperature = self.prior.prototype_temperature(support);
         let mut coefficients = means * (2.0 * temperature);
-        let mut bias = squares * -temperature;
+        let variance = variance(support, kept, &counts, &squares);
+        let mut bias = Array1::from_shape_fn(categories, |c| temperature * (variance / counts[c] as f64 - squares[c]));
         products *= 2.0 * temperature;
 
         for _ in 0..self.prior.steps {
@@ -87,6 +88,15 @@ impl Gradient<'_> {
         }
         left_out
     }
+}
+
+/// The pooled variance within categories of the kept examples, given each category's count and squared mean.
+fn variance(support: &Support, kept: &[usize], counts: &[usize], squares: &Array1<f64>) -> f64 {
+    let gram = support.gram();
+    let total: f64 = kept.iter().map(|&i| gram[[i, i]]).sum();
+    let between: f64 = counts.iter().zip(squares).map(|(&count, square)| count as f64 * square).sum();
+    let freedom = kept.len() - counts.len();
+    if freedom == 0 { 0.0 } else { (total - between).max(0.0) / freedom as f64 }
 }
 
 /// The examples of a group, never all of a category: examples are dealt out to the groups category by category.

@@ -11,7 +11,8 @@
 //!
 //! and the residual of an example left out is A_i / P_ii, P the inverse of that matrix (Allen 1974; Cawley 2006,
 //! doi:10.1109/IJCNN.2006.246634). An example left out also lowers n_c for the others of its category; a correction of
-//! rank n_c makes the closed form exactly the refit. λ is chosen among six by leave-one-out log loss.
+//! rank n_c makes the closed form exactly the refit. λ is chosen among six by leave-one-out log loss, from the prior's
+//! own guess downhill.
 //!
 //! Use it from about two examples a category. Cost O(n² d + n³) for n examples up to [`DUAL_LIMIT`]; beyond, λ and the
 //! temperature come from a spread-out subset of that size and the fit is done in d × d: O(n d² + d³).
@@ -21,7 +22,12 @@
 use ndarray::{Array1, Array2, Axis};
 
 use super::{Learned, Learner, LeftOut, calibrate, calibrate::temperature, log_loss};
-use crate::{arithmetic::{self, Cholesky}, head::Head, prior::Prior, support::Support};
+use crate::{
+    arithmetic::{self, Cholesky},
+    head::Head,
+    prior::Prior,
+    support::Support,
+};
 
 /// The strengths tried.
 const STRENGTHS: [f64; 6] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0];
@@ -66,7 +72,13 @@ impl Ridge<'_> {
             return self.learn_large(support);
         }
         let (solution, strength) = self.choose(support);
-        (Learned { head: Head::new(support.combine(&solution.coefficients), solution.bias), left_out: solution.left_out }, strength)
+        (
+            Learned {
+                head: Head::new(support.combine(&solution.coefficients), solution.bias),
+                left_out: solution.left_out,
+            },
+            strength,
+        )
     }
 
     /// Learns at a given strength λ > 0, with the exact leave-one-out logits (at most [`DUAL_LIMIT`] examples).
@@ -83,15 +95,23 @@ impl Ridge<'_> {
             let (loss, known) = log_loss(&solution.left_out, support, factor);
             (known, loss + pull, solution, strength)
         };
-        let first = judge(self.prior.ridge_strength);
-        if first.0 == 0 {
-            return (first.2, first.3);
+        let start = judge(self.prior.ridge_strength);
+        if start.0 == 0 {
+            return (start.2, start.3);
         }
-        let best = STRENGTHS
-            .into_iter()
-            .filter(|&strength| strength != self.prior.ridge_strength)
-            .map(judge)
-            .fold(first, |best, next| if next.1 < best.1 { next } else { best });
+        // Downhill in both directions from the prior's strength: the loss has one valley in practice, and every strength
+        // costs a factorisation.
+        let weaker = STRENGTHS.into_iter().rev().filter(|&strength| strength < self.prior.ridge_strength);
+        let stronger = STRENGTHS.into_iter().filter(|&strength| strength > self.prior.ridge_strength);
+        let mut best = start;
+        for direction in [weaker.collect::<Vec<_>>(), stronger.collect()] {
+            for next in direction.into_iter().map(judge) {
+                if next.1 >= best.1 {
+                    break;
+                }
+                best = next;
+            }
+        }
         (best.2, best.3)
     }
 
@@ -220,6 +240,7 @@ fn spread_subset(support: &Support, size: usize) -> (Support, Vec<usize>) {
     }
     let labels = members.iter().map(|&i| support.labels()[i]).collect();
     let rows = support.embeddings().select(Axis(0), &members);
-    let subset = Support::new(rows, labels, support.categories()).expect("part of a support set with every category in it");
+    let subset =
+        Support::new(rows, labels, support.categories()).expect("part of a support set with every category in it");
     (subset, members)
 }

@@ -62,7 +62,8 @@ pub fn progress(items: usize, what: &str) -> ProgressBar {
     if !std::io::stderr().is_terminal() {
         return ProgressBar::hidden();
     }
-    let style = ProgressStyle::with_template("{msg} {wide_bar} {pos} of {len}, {eta} left").unwrap_or_else(|_| ProgressStyle::default_bar());
+    let style = ProgressStyle::with_template("{msg} {wide_bar} {pos} of {len}, {eta} left")
+        .unwrap_or_else(|_| ProgressStyle::default_bar());
     let bar = ProgressBar::new(items as u64).with_style(style).with_message(what.to_owned());
     bar.enable_steady_tick(Duration::from_millis(200));
     bar

@@ -33,7 +33,10 @@ impl Embed {
         let (found, troubles) = photos::embed(&self.photos, &parts, "embedding")?;
         troubles.iter().for_each(|trouble| console::say(trouble));
         let Some(first) = found.first() else {
-            return Err(Failure::because(format!("{}: none of its files is a photo that can be read", self.photos.display())));
+            return Err(Failure::because(format!(
+                "{}: none of its files is a photo that can be read",
+                self.photos.display()
+            )));
         };
         let dimension = first.embedding.len();
         let array = Array2::from_shape_fn((found.len(), dimension), |(i, j)| found[i].embedding[j]);

@@ -82,7 +82,10 @@ pub fn embed(folder: &Path, parts: &[PathBuf], what: &str) -> Result<(Vec<Photo>
             done
         };
         let workers: Vec<_> = (0..workers).map(|_| scope.spawn(work)).collect();
-        workers.into_iter().flat_map(|worker| worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic))).collect()
+        workers
+            .into_iter()
+            .flat_map(|worker| worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
+            .collect()
     });
     bar.finish_and_clear();
     console::go_on()?;

@@ -118,7 +118,8 @@ impl Sort {
         let verdicts = sorter.verdicts();
         let mut items = Vec::with_capacity(pile.len());
         for (number, name) in &pile {
-            let verdict = verdicts[*number].as_ref().and_then(|verdict| Some((*names.get(&verdict.tray?)?, verdict.probability)));
+            let verdict =
+                verdicts[*number].as_ref().and_then(|verdict| Some((*names.get(&verdict.tray?)?, verdict.probability)));
             let (tray, probability) = verdict.ok_or_else(|| Failure::because(format!("{name}: it got no tray")))?;
             items.push(Sorted { item: name, tray, probability });
         }
@@ -129,12 +130,17 @@ impl Sort {
     fn read_photos(&self) -> Result<Material, Failure> {
         let parts = photos::files_below(&self.pile)?;
         if parts.is_empty() {
-            return Err(Failure::because(format!("{}: there is no file in this folder; name the folder with the pile", self.pile.display())));
+            return Err(Failure::because(format!(
+                "{}: there is no file in this folder; name the folder with the pile",
+                self.pile.display()
+            )));
         }
         let (example_parts, mut troubles) = example_files(&self.examples)?;
         let (examples, unreadable_examples) = photos::embed(&self.examples, &example_parts, "examples")?;
         let (pile, unreadable) = photos::embed(&self.pile, &parts, "pile")?;
-        let within = |folder: &Path, lines: Vec<String>| lines.into_iter().map(|line| format!("{}/{line}", folder.display())).collect::<Vec<_>>();
+        let within = |folder: &Path, lines: Vec<String>| {
+            lines.into_iter().map(|line| format!("{}/{line}", folder.display())).collect::<Vec<_>>()
+        };
         troubles.extend(within(&self.examples, unreadable_examples));
         troubles.extend(within(&self.pile, unreadable));
         troubles.iter().for_each(|trouble| console::say(trouble));
@@ -154,7 +160,9 @@ impl Sort {
 
     fn read_vectors(&self) -> Result<Material, Failure> {
         let Some(labels) = &self.labels else {
-            return Err(Failure::because("examples in an .npy file need --labels FILE.csv, one category a line in the same order"));
+            return Err(Failure::because(
+                "examples in an .npy file need --labels FILE.csv, one category a line in the same order",
+            ));
         };
         let pile = vectors::read(&self.pile)?;
         let examples = vectors::read(&self.examples)?;
@@ -180,7 +188,11 @@ impl Sort {
         let items = |array: &ndarray::Array2<f32>, path: &Path| -> Vec<Item> {
             let names = vectors::names_beside(path, array.nrows());
             let name = |row: usize| names.as_ref().map_or_else(|| row.to_string(), |names| names[row].clone());
-            array.outer_iter().enumerate().map(|(row, numbers)| Item { name: name(row), embedding: numbers.to_vec() }).collect()
+            array
+                .outer_iter()
+                .enumerate()
+                .map(|(row, numbers)| Item { name: name(row), embedding: numbers.to_vec() })
+                .collect()
         };
         let examples = items(&examples, &self.examples)
             .into_iter()
@@ -203,7 +215,10 @@ impl Sort {
                     seed: self.seed,
                     trays: counts.clone(),
                     unreadable: material.troubles,
-                    items: items.iter().map(|i| Sorted { item: i.item, tray: i.tray, probability: i.probability }).collect(),
+                    items: items
+                        .iter()
+                        .map(|i| Sorted { item: i.item, tray: i.tray, probability: i.probability })
+                        .collect(),
                 };
                 serde_json::to_writer_pretty(&mut *to, &report).map_err(|error| error.to_string())?;
                 return writeln!(to).map_err(|error| error.to_string());
@@ -214,13 +229,16 @@ impl Sort {
         };
         match &self.out {
             Some(path) => output::write_whole(path, |file| put(file))?,
-            None => put(&mut std::io::stdout().lock()).map_err(|reason| Failure::because(format!("the result can't be shown ({reason})")))?,
+            None => put(&mut std::io::stdout().lock())
+                .map_err(|reason| Failure::because(format!("the result can't be shown ({reason})")))?,
         }
         let unsure = items.iter().filter(|item| item.probability < 0.5).count();
         let shares: Vec<String> = counts.iter().map(|(tray, count)| format!("{tray} {count}")).collect();
         console::say(&format!("{} items sorted: {}", items.len(), shares.join(", ")));
         if unsure > 0 {
-            console::say(&format!("{unsure} of them less than half sure; a few more examples of the trays in question help most"));
+            console::say(&format!(
+                "{unsure} of them less than half sure; a few more examples of the trays in question help most"
+            ));
         }
         if let Some(path) = &self.out {
             console::say(&format!("the result is in {}", path.display()));
@@ -235,10 +253,17 @@ fn example_files(folder: &Path) -> Result<(Vec<PathBuf>, Vec<String>), Failure> 
     let (inside, loose): (Vec<_>, Vec<_>) = all.into_iter().partition(|part| part.components().count() > 1);
     let mut troubles: Vec<String> = loose
         .iter()
-        .map(|part| format!("{}/{}: it lies outside the category folders; put it into the folder of its category", folder.display(), photos::shown(part)))
+        .map(|part| {
+            format!(
+                "{}/{}: it lies outside the category folders; put it into the folder of its category",
+                folder.display(),
+                photos::shown(part)
+            )
+        })
         .collect();
     let with_files: HashSet<_> = inside.iter().filter_map(|part| part.iter().next()).collect();
-    let entries = std::fs::read_dir(folder).map_err(|error| Failure::because(format!("{}: can't list this folder ({error})", folder.display())))?;
+    let entries = std::fs::read_dir(folder)
+        .map_err(|error| Failure::because(format!("{}: can't list this folder ({error})", folder.display())))?;
     let mut empty: Vec<String> = entries
         .flatten()
         .filter(|entry| entry.path().is_dir() && !with_files.contains(entry.file_name().as_os_str()))
@@ -246,7 +271,12 @@ fn example_files(folder: &Path) -> Result<(Vec<PathBuf>, Vec<String>), Failure> 
         .filter(|name| !name.starts_with('.'))
         .collect();
     empty.sort();
-    troubles.extend(empty.iter().map(|name| format!("{}/{name}: this category has no example; put at least one photo in, or remove the folder", folder.display())));
+    troubles.extend(empty.iter().map(|name| {
+        format!(
+            "{}/{name}: this category has no example; put at least one photo in, or remove the folder",
+            folder.display()
+        )
+    }));
     if inside.is_empty() {
         return Err(Failure::because(format!(
             "{}: there is no example in it; make one folder for each category there, with a few photos in each",
@@ -286,7 +316,10 @@ fn without_disputed(photos: Vec<photos::Photo>) -> (Vec<Example>, usize) {
         }
         let own = category(&photo.name);
         if names.iter().any(|name| category(name) != own) {
-            console::say(&format!("{}: the same file is in several categories, so none of them counts; keep it in one", names.join(" and ")));
+            console::say(&format!(
+                "{}: the same file is in several categories, so none of them counts; keep it in one",
+                names.join(" and ")
+            ));
             disputed += 1;
             continue;
         }
@@ -341,7 +374,9 @@ fn add_examples(sorter: &mut Sorter, material: &mut Material) -> Result<BTreeMap
             Some(only) => format!("there is only “{only}”"),
             None => "there is none".to_owned(),
         };
-        return Err(Failure::because(format!("sorting needs examples of at least two categories, and {there}; add examples of another one")));
+        return Err(Failure::because(format!(
+            "sorting needs examples of at least two categories, and {there}; add examples of another one"
+        )));
     }
     Ok(trays)
 }

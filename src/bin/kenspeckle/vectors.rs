@@ -42,9 +42,13 @@ pub fn read(path: &Path) -> Result<Array2<f32>, Failure> {
     }
     let width = if header.double { 8 } else { 4 };
     if items.checked_mul(dimension).and_then(|cells| cells.checked_mul(width)) != Some(bytes.len() - header.length) {
-        return Err(trouble(format!("it is cut off or damaged: it should hold {items} × {dimension} numbers and does not; write it anew")));
+        return Err(trouble(format!(
+            "it is cut off or damaged: it should hold {items} × {dimension} numbers and does not; write it anew"
+        )));
     }
-    let damaged = |error: ndarray_npy::ReadNpyError| trouble(format!("it can't be read ({error}); write it anew with numpy.save"));
+    let damaged = |error: ndarray_npy::ReadNpyError| {
+        trouble(format!("it can't be read ({error}); write it anew with numpy.save"))
+    };
     let array = if header.double {
         load::<f64>(&bytes).map_err(damaged)?.mapv(|x| x as f32)
     } else {
@@ -83,7 +87,8 @@ impl Header {
             _ => return None,
         };
         let shape = text.split("'shape':").nth(1)?.split_once('(')?.1.split_once(')')?.0;
-        let shape = shape.split(',').map(str::trim).filter(|n| !n.is_empty()).map(|n| n.parse().ok()).collect::<Option<_>>()?;
+        let shape =
+            shape.split(',').map(str::trim).filter(|n| !n.is_empty()).map(|n| n.parse().ok()).collect::<Option<_>>()?;
         Some(Self { double, shape, length: start + length })
     }
 }
@@ -103,7 +108,8 @@ pub fn read_labels(path: &Path) -> Result<Vec<String>, Failure> {
         .map_err(|error| trouble(format!("it can't be read ({error})")))?;
     let mut labels = Vec::new();
     for (line, row) in rows.records().enumerate() {
-        let row = row.map_err(|error| trouble(format!("line {} can't be read ({error}); save it as UTF-8", line + 1)))?;
+        let row =
+            row.map_err(|error| trouble(format!("line {} can't be read ({error}); save it as UTF-8", line + 1)))?;
         let label = row.get(0).unwrap_or("").trim().to_owned();
         if label.is_empty() {
             return Err(trouble(format!("line {} names no category; write one category a line", line + 1)));
@@ -116,7 +122,6 @@ pub fn read_labels(path: &Path) -> Result<Vec<String>, Failure> {
 /// The names beside an `.npy` file that `kenspeckle embed` wrote, if they are there and as many as the items.
 pub fn names_beside(path: &Path, items: usize) -> Option<Vec<String>> {
     let mut rows = csv::Reader::from_path(path.with_extension("names.csv")).ok()?;
-    let names: Vec<String> =
-        rows.records().map(|row| row.ok()?.get(0).map(str::to_owned)).collect::<Option<_>>()?;
+    let names: Vec<String> = rows.records().map(|row| row.ok()?.get(0).map(str::to_owned)).collect::<Option<_>>()?;
     (names.len() == items).then_some(names)
 }

@@ -24,17 +24,9 @@ impl Camera {
         let balance = dice.range(-0.05, 0.05);
         let soft = dice.chance(0.2);
         Self {
-            exposure: [
-                exposure * (1.0 + balance),
-                exposure,
-                exposure * (1.0 - balance),
-            ],
+            exposure: [exposure * (1.0 + balance), exposure, exposure * (1.0 - balance)],
             vignette: dice.range(0.1, 0.36),
-            blur: if soft {
-                dice.range(0.8, 1.4)
-            } else {
-                dice.range(0.25, 0.6)
-            },
+            blur: if soft { dice.range(0.8, 1.4) } else { dice.range(0.25, 0.6) },
             noise: dice.range(0.003, 0.011),
         }
     }
@@ -45,15 +37,10 @@ impl Camera {
         let once = blur_turned(&linear, side, &weights);
         let soft = blur_turned(&once, side, &weights);
         let middle = side as f32 / 2.0;
-        let table: Vec<f32> = (0..TABLE)
-            .map(|i| encode(i as f32 / (TABLE - 1) as f32))
-            .collect();
+        let table: Vec<f32> = (0..TABLE).map(|i| encode(i as f32 / (TABLE - 1) as f32)).collect();
         let mut bytes = Vec::with_capacity(side * side * 3);
         for (i, pixel) in soft.iter().enumerate() {
-            let (x, y) = (
-                (i % side) as f32 / middle - 1.0,
-                (i / side) as f32 / middle - 1.0,
-            );
+            let (x, y) = ((i % side) as f32 / middle - 1.0, (i / side) as f32 / middle - 1.0);
             let fall = 1.0 - self.vignette * smooth(0.35, 1.5, length(x, y));
             let grain = self.noise * dice.normal();
             for (value, exposure) in pixel.iter().zip(self.exposure) {
@@ -73,18 +60,12 @@ fn film(x: f32) -> f32 {
 
 /// The sRGB transfer function (IEC 61966-2-1).
 fn encode(x: f32) -> f32 {
-    if x <= 0.003_130_8 {
-        12.92 * x
-    } else {
-        1.055 * libm::powf(x, 1.0 / 2.4) - 0.055
-    }
+    if x <= 0.003_130_8 { 12.92 * x } else { 1.055 * libm::powf(x, 1.0 / 2.4) - 0.055 }
 }
 
 fn gaussian(deviation: f32) -> Vec<f32> {
     let reach = libm::ceilf(deviation * 2.5) as i32;
-    let raw: Vec<f32> = (-reach..=reach)
-        .map(|i| libm::expf(-(i * i) as f32 / (2.0 * deviation * deviation)))
-        .collect();
+    let raw: Vec<f32> = (-reach..=reach).map(|i| libm::expf(-(i * i) as f32 / (2.0 * deviation * deviation))).collect();
     let sum: f32 = raw.iter().sum();
     raw.iter().map(|w| w / sum).collect()
 }

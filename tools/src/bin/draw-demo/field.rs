@@ -9,10 +9,7 @@ pub struct Field {
 impl Field {
     /// A field of zeros.
     pub fn new(side: usize) -> Self {
-        Self {
-            side,
-            values: vec![0.0; side * side],
-        }
+        Self { side, values: vec![0.0; side * side] }
     }
 
     /// A field with the value of `f(column, row)` everywhere.
@@ -77,8 +74,7 @@ impl Field {
     pub fn halved(&self) -> Self {
         Self::from(self.side / 2, |column, row| {
             let (x, y) = (2 * column, 2 * row);
-            (self.get(x, y) + self.get(x + 1, y) + self.get(x, y + 1) + self.get(x + 1, y + 1))
-                / 4.0
+            (self.get(x, y) + self.get(x + 1, y) + self.get(x, y + 1) + self.get(x + 1, y + 1)) / 4.0
         })
     }
 

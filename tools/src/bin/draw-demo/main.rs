@@ -69,17 +69,11 @@ fn order(mut args: impl Iterator<Item = String>) -> Result<Order, String> {
             _ => out = Some(PathBuf::from(arg)),
         }
     }
-    Ok(Order {
-        out: out.ok_or("name the folder to draw into")?,
-        seed,
-        count,
-    })
+    Ok(Order { out: out.ok_or("name the folder to draw into")?, seed, count })
 }
 
 fn number<T: std::str::FromStr>(option: &str, value: Option<String>) -> Result<T, String> {
-    value
-        .and_then(|v| v.parse().ok())
-        .ok_or_else(|| format!("{option} needs a whole number after it"))
+    value.and_then(|v| v.parse().ok()).ok_or_else(|| format!("{option} needs a whole number after it"))
 }
 
 fn draw(order: &Order) -> Result<String, String> {
@@ -96,12 +90,7 @@ fn draw(order: &Order) -> Result<String, String> {
             let pixels = find.draw(&noise, &mut Dice::new(order.seed, number as u64));
             let mut bytes = Vec::new();
             JpegEncoder::new_with_quality(&mut bytes, QUALITY)
-                .encode(
-                    &pixels,
-                    scene::SIDE as u32,
-                    scene::SIDE as u32,
-                    ExtendedColorType::Rgb8,
-                )
+                .encode(&pixels, scene::SIDE as u32, scene::SIDE as u32, ExtendedColorType::Rgb8)
                 .map_err(|e| format!("can't encode picture {number}: {e}"))?;
             let name = format!("find-{number:04}.jpg");
             let path = order.out.join(&name);
@@ -110,18 +99,11 @@ fn draw(order: &Order) -> Result<String, String> {
         })
         .collect::<Result<_, String>>()?;
     let total: usize = drawn.iter().map(|(_, size)| size).sum();
-    let items: Vec<_> = drawn
-        .iter()
-        .zip(&finds)
-        .map(|((name, _), find)| json!({ "file": name, "tray": find.tray() }))
-        .collect();
+    let items: Vec<_> =
+        drawn.iter().zip(&finds).map(|((name, _), find)| json!({ "file": name, "tray": find.tray() })).collect();
     let count = items.len();
     let index = json!({ "title": pile::TITLE, "about": pile::ABOUT, "items": items });
     let path = order.out.join("index.json");
     fs::write(&path, format!("{index:#}\n")).map_err(|e| failed(&path, e))?;
-    Ok(format!(
-        "{count} pictures, {:.2} MB, in {}",
-        total as f64 / 1e6,
-        order.out.display()
-    ))
+    Ok(format!("{count} pictures, {:.2} MB, in {}", total as f64 / 1e6, order.out.display()))
 }

@@ -82,12 +82,7 @@ pub enum Family {
 impl Material {
     /// A material of this family, everything else left to chance.
     pub fn new(family: Family, dice: &mut Dice) -> Self {
-        let soil_colour = dice.pick(&[
-            [0.16, 0.105, 0.06],
-            [0.24, 0.18, 0.11],
-            [0.1, 0.085, 0.065],
-            [0.3, 0.25, 0.18],
-        ]);
+        let soil_colour = dice.pick(&[[0.16, 0.105, 0.06], [0.24, 0.18, 0.11], [0.1, 0.085, 0.065], [0.3, 0.25, 0.18]]);
         let plain = Self {
             base: [0.5; 3],
             body: [0.5; 3],
@@ -103,11 +98,7 @@ impl Material {
             crackle: 0.0,
             rubbed: 0.0,
             rough_height: 0.008,
-            soil: if dice.chance(0.45) {
-                dice.range(0.25, 0.9)
-            } else {
-                0.0
-            },
+            soil: if dice.chance(0.45) { dice.range(0.25, 0.9) } else { 0.0 },
             soil_colour,
             at: (dice.unit(), dice.unit()),
         };
@@ -156,23 +147,14 @@ impl Material {
                     shine: 0.055,
                     mottle: 0.28,
                     speckle: 0.08,
-                    crackle: if dice.chance(0.5) {
-                        dice.range(0.3, 0.8)
-                    } else {
-                        0.0
-                    },
+                    crackle: if dice.chance(0.5) { dice.range(0.3, 0.8) } else { 0.0 },
                     rubbed: dice.range(0.3, 0.8),
                     rough_height: 0.005,
                     ..plain
                 }
             }
             Family::Bone => {
-                let base = dice.pick(&[
-                    [0.66, 0.57, 0.42],
-                    [0.55, 0.42, 0.26],
-                    [0.72, 0.68, 0.58],
-                    [0.34, 0.23, 0.13],
-                ]);
+                let base = dice.pick(&[[0.66, 0.57, 0.42], [0.55, 0.42, 0.26], [0.72, 0.68, 0.58], [0.34, 0.23, 0.13]]);
                 Self {
                     base,
                     body: times(base, 0.85),
@@ -220,20 +202,11 @@ impl Material {
                 speckle: 0.1,
                 rough_height: 0.01,
                 soil: dice.range(0.3, 0.9),
-                soil_colour: dice.pick(&[
-                    [0.12, 0.32, 0.24],
-                    [0.2, 0.36, 0.32],
-                    [0.16, 0.13, 0.08],
-                ]),
+                soil_colour: dice.pick(&[[0.12, 0.32, 0.24], [0.2, 0.36, 0.32], [0.16, 0.13, 0.08]]),
                 ..plain
             },
             Family::Wood => {
-                let base = dice.pick(&[
-                    [0.2, 0.11, 0.055],
-                    [0.34, 0.2, 0.1],
-                    [0.1, 0.065, 0.045],
-                    [0.42, 0.32, 0.22],
-                ]);
+                let base = dice.pick(&[[0.2, 0.11, 0.055], [0.34, 0.2, 0.1], [0.1, 0.065, 0.045], [0.42, 0.32, 0.22]]);
                 Self {
                     base,
                     body: times(base, 1.4),
@@ -261,11 +234,8 @@ impl Material {
     /// The unevenness of the surface at (x, y) of the thing's frame, about ±1.
     pub fn unevenness(&self, noise: &Noise, x: f32, y: f32) -> f32 {
         let (u, v) = (x + self.at.0 * 7.0, y + self.at.1 * 7.0);
-        let grain = if self.streak > 0.2 {
-            noise.fine.at(u * 0.9, v * 0.06)
-        } else {
-            noise.fine.at(u * 0.22, v * 0.22)
-        };
+        let grain =
+            if self.streak > 0.2 { noise.fine.at(u * 0.9, v * 0.06) } else { noise.fine.at(u * 0.22, v * 0.22) };
         grain + 0.5 * noise.cloud.at(u * 0.3, v * 0.3)
     }
 
@@ -279,11 +249,7 @@ impl Material {
             let streak = noise.fine.at(u * 0.7 + 0.06 * cloud, v * 0.035);
             colour = times(colour, 1.0 + self.streak * streak);
         }
-        colour = blend(
-            colour,
-            self.paint,
-            spot.paint * smooth(-0.9, 0.0, fine + 0.4),
-        );
+        colour = blend(colour, self.paint, spot.paint * smooth(-0.9, 0.0, fine + 0.4));
         let mut roughness = self.roughness;
         let mut shine = self.shine;
         let mut metal = self.metal;
@@ -297,12 +263,8 @@ impl Material {
 
         let height = 1.0 - spot.low;
         let rim = smooth(0.12, 0.0, spot.inside);
-        let worn = smooth(
-            0.95,
-            1.25,
-            self.rubbed * (0.75 * height + 0.8 * rim + 0.55 * cloud + 0.2 * fine) + 0.35,
-        )
-        .max(spot.fresh);
+        let worn = smooth(0.95, 1.25, self.rubbed * (0.75 * height + 0.8 * rim + 0.55 * cloud + 0.2 * fine) + 0.35)
+            .max(spot.fresh);
         colour = blend(colour, times(self.body, 1.0 + 0.15 * fine), worn);
         if self.metal == 0.0 {
             roughness = mix(roughness, 0.85, worn);
@@ -310,11 +272,7 @@ impl Material {
         }
         if self.soil > 0.0 {
             let patch = noise.cloud.at(v * 0.16 + 0.37, u * 0.16);
-            let cover = smooth(
-                0.55,
-                0.95,
-                self.soil * (0.55 + 0.75 * patch + 0.25 * spot.low + 0.12 * fine),
-            );
+            let cover = smooth(0.55, 0.95, self.soil * (0.55 + 0.75 * patch + 0.25 * spot.low + 0.12 * fine));
             colour = blend(colour, times(self.soil_colour, 1.0 + 0.35 * fine), cover);
             roughness = mix(roughness, 0.95, cover);
             shine = mix(shine, 0.02, cover);
@@ -324,11 +282,6 @@ impl Material {
             shine = mix(0.04, shine, metal);
             roughness = mix(0.8, roughness, metal);
         }
-        Surface {
-            colour: colour.map(|c| c.max(0.004)),
-            roughness,
-            shine,
-            metal,
-        }
+        Surface { colour: colour.map(|c| c.max(0.004)), roughness, shine, metal }
     }
 }

@@ -39,11 +39,7 @@ impl Noise {
     /// The tiles for a seed.
     pub fn new(seed: u64) -> Self {
         let mut dice = Dice::new(seed, u64::MAX);
-        Self {
-            cloud: fractal(&mut dice, 4, 6),
-            fine: fractal(&mut dice, 24, 4),
-            cells: cells(&mut dice, 18),
-        }
+        Self { cloud: fractal(&mut dice, 4, 6), fine: fractal(&mut dice, 24, 4), cells: cells(&mut dice, 18) }
     }
 }
 
@@ -53,9 +49,8 @@ fn fractal(dice: &mut Dice, first: usize, octaves: usize) -> Tile {
     let mut strength = 1.0;
     let mut waves = first;
     for _ in 0..octaves {
-        let gradients: Vec<(f32, f32)> = (0..waves * waves)
-            .map(|_| super::math::angle(dice.range(0.0, core::f32::consts::TAU)))
-            .collect();
+        let gradients: Vec<(f32, f32)> =
+            (0..waves * waves).map(|_| super::math::angle(dice.range(0.0, core::f32::consts::TAU))).collect();
         for row in 0..SIDE {
             let y = row as f32 * waves as f32 / SIDE as f32;
             let (iy, ty) = (y as usize, y - y.floor());
@@ -79,9 +74,7 @@ fn fractal(dice: &mut Dice, first: usize, octaves: usize) -> Tile {
 }
 
 fn cells(dice: &mut Dice, across: usize) -> Tile {
-    let points: Vec<(f32, f32)> = (0..across * across)
-        .map(|_| (dice.unit(), dice.unit()))
-        .collect();
+    let points: Vec<(f32, f32)> = (0..across * across).map(|_| (dice.unit(), dice.unit())).collect();
     let mut values = Vec::with_capacity(SIDE * SIDE);
     for row in 0..SIDE {
         for column in 0..SIDE {
@@ -92,10 +85,7 @@ fn cells(dice: &mut Dice, across: usize) -> Tile {
                 for dx in 0..3 {
                     let (cx, cy) = (x as usize + across + dx - 1, y as usize + across + dy - 1);
                     let p = points[(cy % across) * across + cx % across];
-                    let d = length(
-                        cx as f32 - across as f32 + p.0 - x,
-                        cy as f32 - across as f32 + p.1 - y,
-                    );
+                    let d = length(cx as f32 - across as f32 + p.0 - x, cy as f32 - across as f32 + p.1 - y);
                     if d < nearest {
                         (nearest, second) = (d, nearest);
                     } else {

@@ -91,23 +91,14 @@ impl Find {
             }
         };
         let material = Material::new(family, dice);
-        scene::draw(
-            noise,
-            dice,
-            thing.as_ref(),
-            &material,
-            matches!(self, Self::Tally(_)),
-        )
+        scene::draw(noise, dice, thing.as_ref(), &material, matches!(self, Self::Tally(_)))
     }
 }
 
 /// The whole pile in the order it lies, shuffled so that an item's number says nothing about it.
 pub fn finds(seed: u64) -> Vec<Find> {
-    let tallies =
-        (0..TRAYS.len()).flat_map(|tray| core::iter::repeat_n(Find::Tally(tray), TRAYS[tray].2));
-    let strays = STRAYS
-        .iter()
-        .flat_map(|&(kind, count)| core::iter::repeat_n(Find::Stray(kind), count));
+    let tallies = (0..TRAYS.len()).flat_map(|tray| core::iter::repeat_n(Find::Tally(tray), TRAYS[tray].2));
+    let strays = STRAYS.iter().flat_map(|&(kind, count)| core::iter::repeat_n(Find::Stray(kind), count));
     let mut finds: Vec<Find> = tallies.chain(strays).collect();
     Dice::new(seed, 0).shuffle(&mut finds);
     finds
@@ -134,19 +125,12 @@ mod tests {
         let finds = finds(9);
         let trays: Vec<_> = finds.iter().map(|find| find.tray()).collect();
         for (name, _, count) in TRAYS {
-            assert_eq!(
-                trays.iter().filter(|&&tray| tray == Some(name)).count(),
-                count
-            );
+            assert_eq!(trays.iter().filter(|&&tray| tray == Some(name)).count(), count);
         }
         let strays = STRAYS.iter().map(|&(_, count)| count).sum::<usize>();
         assert_eq!(trays.iter().filter(|tray| tray.is_none()).count(), strays);
         // Shuffled, neighbours share a tray about one time in nine; laid out by tray nearly always.
         let alike = trays.windows(2).filter(|pair| pair[0] == pair[1]).count();
-        assert!(
-            alike * 4 < trays.len(),
-            "{alike} neighbours of {} share a tray",
-            trays.len()
-        );
+        assert!(alike * 4 < trays.len(), "{alike} neighbours of {} share a tray", trays.len());
     }
 }

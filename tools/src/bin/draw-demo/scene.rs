@@ -58,11 +58,7 @@ impl Pose {
             centre: (dice.range(-0.11, 0.11), dice.range(-0.11, 0.11)),
             scale: dice.range(0.64, 0.82),
             // Most finds are laid the right way up, more or less.
-            turn: angle(if dice.chance(0.06) {
-                dice.range(0.0, TAU)
-            } else {
-                0.17 * dice.normal()
-            }),
+            turn: angle(if dice.chance(0.06) { dice.range(0.0, TAU) } else { 0.17 * dice.normal() }),
             squeeze: dice.range(0.88, 1.0),
             wear: 0.9 * dice.unit() * dice.unit(),
             chips,
@@ -91,23 +87,12 @@ impl Light {
         let lamp = times([1.0 + warm, 1.0, 1.0 - 1.25 * warm], dice.range(2.1, 2.7));
         let cool = dice.range(0.0, 0.14);
         let room = times([1.0 - cool, 1.0, 1.0 + cool], dice.range(0.34, 0.62));
-        Self {
-            towards: (cos * flat, sin * flat, up),
-            lamp,
-            room,
-            softness: dice.range(0.18, 0.5),
-        }
+        Self { towards: (cos * flat, sin * flat, up), lamp, room, softness: dice.range(0.18, 0.5) }
     }
 }
 
 /// Draws a thing: the picture's pixels, red, green and blue, row by row.
-pub fn draw(
-    noise: &Noise,
-    dice: &mut Dice,
-    thing: &dyn Solid,
-    material: &Material,
-    tally: bool,
-) -> Vec<u8> {
+pub fn draw(noise: &Noise, dice: &mut Dice, thing: &dyn Solid, material: &Material, tally: bool) -> Vec<u8> {
     let bench = Bench::new(dice);
     let pose = Pose::new(dice, tally);
     let light = Light::new(dice);
@@ -124,15 +109,7 @@ pub fn draw(
                 Some(found) => found,
                 None => {
                     let (height, colour) = bench.at(noise, x, y);
-                    (
-                        height,
-                        Surface {
-                            colour,
-                            roughness: 0.9,
-                            shine: MATT,
-                            metal: 0.0,
-                        },
-                    )
+                    (height, Surface { colour, roughness: 0.9, shine: MATT, metal: 0.0 })
                 }
             };
             heights.set(column, row, height);
@@ -176,10 +153,7 @@ fn thing_at(
     x: f32,
     y: f32,
 ) -> Option<(f32, Surface)> {
-    let (u, v) = (
-        (x - pose.centre.0) / pose.scale,
-        (y - pose.centre.1) / (pose.scale * pose.squeeze),
-    );
+    let (u, v) = ((x - pose.centre.0) / pose.scale, (y - pose.centre.1) / (pose.scale * pose.squeeze));
     if u * u + v * v > 1.7 {
         return None;
     }
@@ -225,14 +199,7 @@ fn thing_at(
     } else {
         relief
     };
-    let spot = Spot {
-        x: u,
-        y: v,
-        low: low * smooth(0.0, 0.1, -edge),
-        inside: -edge,
-        fresh,
-        paint: found.paint,
-    };
+    let spot = Spot { x: u, y: v, low: low * smooth(0.0, 0.1, -edge), inside: -edge, fresh, paint: found.paint };
     Some((height * pose.scale, material.surface(noise, &spot)))
 }
 
@@ -274,8 +241,7 @@ fn corners(heights: &Field) -> Field {
     let wide = heights.blurred(13);
     Field::from(heights.side(), |column, row| {
         let here = heights.get(column, row);
-        let below = (near.get(column, row) - here).max(0.0) * 13.0
-            + (wide.get(column, row) - here).max(0.0) * 6.5;
+        let below = (near.get(column, row) - here).max(0.0) * 13.0 + (wide.get(column, row) - here).max(0.0) * 6.5;
         1.0 / (1.0 + below)
     })
 }
@@ -297,8 +263,7 @@ fn shade(surface: &Surface, normal: (f32, f32, f32), lit: f32, open: f32, light:
     let toward_half = ((nx * lx + ny * ly + nz * (lz + 1.0)) * half).clamp(0.0, 1.0);
     let a = surface.roughness * surface.roughness;
     let spread = toward_half * toward_half * (a * a - 1.0) + 1.0;
-    let highlight =
-        (a * a / (core::f32::consts::PI * spread * spread)).min(6.0) * facing * lit * 0.8;
+    let highlight = (a * a / (core::f32::consts::PI * spread * spread)).min(6.0) * facing * lit * 0.8;
 
     // What a shiny surface mirrors: a bright window on the lamp's side, a dim room elsewhere.
     let (rx, ry) = (2.0 * nz * nx, 2.0 * nz * ny);
@@ -309,17 +274,10 @@ fn shade(surface: &Surface, normal: (f32, f32, f32), lit: f32, open: f32, light:
     let window = smooth(0.3 - blur, 0.3 + blur, side)
         * smooth(0.8 + blur, 0.8 - blur, side)
         * smooth(0.42 + blur, 0.42 - blur, across.abs());
-    let mirrored =
-        0.22 + 0.3 * smooth(-0.9, 0.9, side) + 2.2 * window * (1.0 - 0.7 * surface.roughness);
+    let mirrored = 0.22 + 0.3 * smooth(-0.9, 0.9, side) + 2.2 * window * (1.0 - 0.7 * surface.roughness);
     let grazing = 1.0 - nz;
     let fresnel = surface.shine
-        + (1.0 - surface.shine)
-            * grazing
-            * grazing
-            * grazing
-            * grazing
-            * 0.35
-            * (1.0 - surface.roughness);
+        + (1.0 - surface.shine) * grazing * grazing * grazing * grazing * 0.35 * (1.0 - surface.roughness);
 
     core::array::from_fn(|i| {
         let colour = surface.colour[i];

@@ -13,11 +13,7 @@ pub struct Place {
 impl Place {
     /// A place without mark or paint.
     pub fn plain(edge: f32) -> Self {
-        Self {
-            edge,
-            relief: 0.0,
-            paint: 0.0,
-        }
+        Self { edge, relief: 0.0, paint: 0.0 }
     }
 }
 

@@ -50,14 +50,7 @@ impl Stray {
                 (cos, sin, dice.range(0.5, 0.8))
             })
             .collect();
-        Self {
-            kind,
-            a: dice.unit(),
-            b: dice.unit(),
-            c: dice.unit(),
-            bend: dice.range(-0.3, 0.3),
-            corners,
-        }
+        Self { kind, a: dice.unit(), b: dice.unit(), c: dice.unit(), bend: dice.range(-0.3, 0.3), corners }
     }
 }
 
@@ -67,19 +60,14 @@ impl Solid for Stray {
             Kind::Pebble => {
                 let (u, v) = (x / mix(0.6, 0.9, self.a), y / mix(0.75, 0.95, self.b));
                 let around = libm::atan2f(v, u);
-                let lump = 1.0
-                    + 0.07 * libm::sinf(2.0 * around + 6.0 * self.c)
-                    + 0.05 * libm::sinf(3.0 * around + self.a);
+                let lump =
+                    1.0 + 0.07 * libm::sinf(2.0 * around + 6.0 * self.c) + 0.05 * libm::sinf(3.0 * around + self.a);
                 let edge = (length(u, v) - lump) * 0.75;
                 let vein = ridge(
                     x * 0.8 + y * self.bend + 0.15 * libm::sinf(3.0 * y) - 0.3 * (self.b - 0.5),
                     0.03 + 0.06 * self.c,
                 );
-                Place {
-                    edge,
-                    relief: 0.0,
-                    paint: vein,
-                }
+                Place { edge, relief: 0.0, paint: vein }
             }
             Kind::Nail => {
                 let u = x + self.bend * (y * y - 0.4);
@@ -95,27 +83,16 @@ impl Solid for Stray {
                 let ribs = mix(15.0, 21.0, self.a);
                 let rib = libm::cosf(around * ribs);
                 let fan = r - 1.42 * libm::sqrtf(libm::cosf(around * 0.88).max(0.0)) - 0.02 * rib;
-                let edge = fan
-                    .max(around.abs() * r.max(0.1) - 1.25 * r.max(0.1))
-                    .max(-0.62 - y);
+                let edge = fan.max(around.abs() * r.max(0.1) - 1.25 * r.max(0.1)).max(-0.62 - y);
                 let growth = ridge((r * 5.0 + self.b).fract() - 0.5, 0.25);
-                Place {
-                    edge: edge * 0.8,
-                    relief: (0.5 + 0.5 * rib) * smooth(0.1, 0.5, r),
-                    paint: growth * 0.7,
-                }
+                Place { edge: edge * 0.8, relief: (0.5 + 0.5 * rib) * smooth(0.1, 0.5, r), paint: growth * 0.7 }
             }
             Kind::Key => {
                 let bow = (length(x * 1.05, y + 0.58) - 0.26).abs() - 0.075;
                 let shaft = to_segment(x, y, (0.0, -0.3), (0.0, 0.9)) - 0.07;
                 let collar = to_box(x, y + 0.22, (0.13, 0.05), 0.03);
                 let mut bit = to_box(x - 0.22, y - 0.7, (0.2, 0.17), 0.02);
-                let notch = to_box(
-                    x - mix(0.22, 0.34, self.a),
-                    y - mix(0.6, 0.8, self.b),
-                    (0.05, 0.1),
-                    0.0,
-                );
+                let notch = to_box(x - mix(0.22, 0.34, self.a), y - mix(0.6, 0.8, self.b), (0.05, 0.1), 0.0);
                 bit = bit.max(-notch);
                 Place::plain(bow.min(shaft).min(collar).min(bit))
             }
@@ -131,30 +108,19 @@ impl Solid for Stray {
                 }
                 let (u, v) = turn(x, y, angle(self.a * PI));
                 let curve = v + 0.25 * u * u;
-                let stripe = ridge(curve - 0.1, 0.12)
-                    .max(ridge(curve + 0.22, 0.05))
-                    .max(ridge(curve - 0.5, 0.06));
-                Place {
-                    edge: edge.max(length(x, y) - 1.05),
-                    relief: 0.0,
-                    paint: smooth(0.05, 0.3, stripe),
-                }
+                let stripe = ridge(curve - 0.1, 0.12).max(ridge(curve + 0.22, 0.05)).max(ridge(curve - 0.5, 0.06));
+                Place { edge: edge.max(length(x, y) - 1.05), relief: 0.0, paint: smooth(0.05, 0.3, stripe) }
             }
             Kind::Button => {
                 let r = length(x, y);
                 let gap = mix(0.13, 0.17, self.a);
                 let hole = length(x.abs() - gap, y.abs() - gap) - 0.075;
                 let edge = (r - 0.78).max(-hole);
-                Place {
-                    edge,
-                    relief: smooth(0.5, 0.58, r) * smooth(0.8, 0.7, r),
-                    paint: 0.0,
-                }
+                Place { edge, relief: smooth(0.5, 0.58, r) * smooth(0.8, 0.7, r), paint: 0.0 }
             }
             Kind::Twig => {
                 let u = x + self.bend * 1.2 * y * y + 0.05 * libm::sinf(5.0 * y + 6.0 * self.a);
-                let width = mix(0.16, 0.1, smooth(-1.0, 1.0, y))
-                    + 0.02 * libm::sinf(9.0 * y + 6.0 * self.b);
+                let width = mix(0.16, 0.1, smooth(-1.0, 1.0, y)) + 0.02 * libm::sinf(9.0 * y + 6.0 * self.b);
                 let stem = (u.abs() - width).max(y.abs() - 0.96);
                 let spur = to_segment(u, y, (0.0, 0.1), (0.42, -0.3 - 0.2 * self.c)) - 0.06;
                 Place::plain(stem.min(spur))

@@ -97,11 +97,7 @@ impl Tally {
             let half = dice.range(0.74, 0.82);
             Outline::Tablet(half, half * dice.range(0.94, 1.0), dice.range(0.08, 0.3))
         };
-        let tablet = Outline::Tablet(
-            dice.range(0.5, 0.6),
-            dice.range(0.9, 0.98),
-            dice.range(0.06, 0.26),
-        );
+        let tablet = Outline::Tablet(dice.range(0.5, 0.6), dice.range(0.9, 0.98), dice.range(0.06, 0.26));
         let disc = Outline::Disc;
         let choices = match mark {
             Mark::Daystar => [disc, disc, disc, Outline::Scallop(dice.whole(4, 6) as f32)],
@@ -127,9 +123,7 @@ impl Tally {
         let hole = match mark {
             Mark::Hailstones if dice.chance(0.5) => Some((0.0, 0.0, dice.range(0.13, 0.19))),
             Mark::Ladder | Mark::Fishbone | Mark::Daystar | Mark::Hailstones => None,
-            _ if dice.chance(0.22) => {
-                Some((dice.range(-0.05, 0.05), -0.74, dice.range(0.08, 0.11)))
-            }
+            _ if dice.chance(0.22) => Some((dice.range(-0.05, 0.05), -0.74, dice.range(0.08, 0.11))),
             _ => None,
         };
         let sunk = dice.chance(0.28);
@@ -142,11 +136,7 @@ impl Tally {
             phase: dice.unit(),
             hand: if dice.chance(0.5) { 1.0 } else { -1.0 },
             line: dice.range(0.8, 1.2),
-            wobble: (
-                dice.range(0.0, TAU),
-                dice.range(0.0, TAU),
-                dice.range(0.01, 0.03),
-            ),
+            wobble: (dice.range(0.0, TAU), dice.range(0.0, TAU), dice.range(0.01, 0.03)),
             rim: dice.chance(0.35).then(|| dice.range(0.055, 0.085)),
             hole,
             rounding: dice.range(0.08, 0.22),
@@ -219,16 +209,8 @@ impl Tally {
                 let off = (turned - (turned + 0.5).floor()) * sector;
                 let (cos, sin) = angle(off);
                 let radius = (0.8 * PI * 0.5 / self.count * 1.05).min(0.17) * self.line.min(1.05);
-                let pellet = ridge(
-                    length(r * cos - 0.56 * self.size.min(1.02), r * sin),
-                    radius,
-                )
-                .sqrt();
-                let middle = if self.hole.is_some() {
-                    ridge(r - 0.27, 0.05)
-                } else {
-                    ridge(r, 0.19).sqrt()
-                };
+                let pellet = ridge(length(r * cos - 0.56 * self.size.min(1.02), r * sin), radius).sqrt();
+                let middle = if self.hole.is_some() { ridge(r - 0.27, 0.05) } else { ridge(r, 0.19).sqrt() };
                 pellet.max(middle)
             }
             Mark::Netting => {
@@ -240,8 +222,7 @@ impl Tally {
                 let lean = 0.6 + 0.22 * self.size;
                 let norm = (1.0 + lean * lean).sqrt();
                 let width = 0.058 * self.line;
-                ridge(line((x + y * lean) / norm), width)
-                    .max(ridge(line((x - y * lean) / norm), width))
+                ridge(line((x + y * lean) / norm), width).max(ridge(line((x - y * lean) / norm), width))
             }
             Mark::TwoMoons => {
                 let radius = 0.33 * self.size;
@@ -266,20 +247,13 @@ impl Solid for Tally {
             return Place::plain(edge);
         }
         let (a, b, strength) = self.wobble;
-        let (wx, wy) = (
-            x + strength * libm::sinf(3.1 * y + a),
-            y + strength * libm::sinf(2.7 * x + b),
-        );
+        let (wx, wy) = (x + strength * libm::sinf(3.1 * y + a), y + strength * libm::sinf(2.7 * x + b));
         let border = self.rim.map_or(0.09, |width| width * 2.0 + 0.07);
         let mut relief = self.relief(wx, wy) * smooth(0.02, 0.09, -edge - border + 0.05);
         if let Some(width) = self.rim {
             relief = relief.max(ridge(edge + width + 0.06, width));
         }
-        Place {
-            edge,
-            relief,
-            paint: 0.0,
-        }
+        Place { edge, relief, paint: 0.0 }
     }
 
     fn rounding(&self) -> f32 {
