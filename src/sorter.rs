@@ -365,7 +365,7 @@ impl Sorter {
         if !ledger.is_consistent() {
             return Err(Error::StateUnreadable("it names trays or items that it does not have".into()));
         }
-        if embeddings.len() % d != 0 || embeddings.len() / d < ledger.items() {
+        if !embeddings.len().is_multiple_of(d) || embeddings.len() / d < ledger.items() {
             let held = embeddings.len() / d;
             return Err(Error::StateUnreadable(format!(
                 "it has {} items but {held} embeddings came with it",

@@ -9,10 +9,9 @@
 //! ⎣    1ᵀ     0 ⎦ ⎣ bᵀ ⎦ = ⎣ 0 ⎦
 //! ```
 //!
-//! and the residual of an example left out is A_i / P_ii, P the inverse of that matrix (Allen 1974; Cawley 2006,
-//! doi:10.1109/IJCNN.2006.246634). An example left out also lowers n_c for the others of its category; a correction of
-//! rank n_c makes the closed form exactly the refit. λ is chosen among six by leave-one-out log loss, from the prior's
-//! own guess downhill.
+//! and the residual of an example left out is A_i / P_ii, P the inverse of that matrix (Allen 1974; Cawley 2006). An
+//! example left out also lowers n_c for the others of its category; a correction of rank n_c makes the closed form exactly
+//! the refit. λ is chosen among six by leave-one-out log loss, from the prior's own guess downhill.
 //!
 //! Use it from about two examples a category. Cost O(n² d + n³) for n examples up to [`DUAL_LIMIT`]; beyond, λ and the
 //! temperature come from a spread-out subset of that size and the fit is done in d × d: O(n d² + d³).
@@ -202,20 +201,20 @@ fn leave_one_out(
 /// The same minimum by the normal equations in d × d, for many examples.
 fn fit_primal(support: &Support, strength: f64) -> Head {
     let penalty = strength / support.shot();
-    let (n, d, categories) = (support.len(), support.dimension(), support.categories());
+    let (d, categories) = (support.dimension(), support.categories());
     let weights: Vec<f64> = support.labels().iter().map(|&label| 1.0 / support.counts()[label] as f64).collect();
     let mut mean = Array1::<f64>::zeros(d);
-    for i in 0..n {
-        let share = weights[i] / categories as f64;
+    for (i, weight) in weights.iter().enumerate() {
+        let share = weight / categories as f64;
         mean.iter_mut().zip(support.embedding(i)).for_each(|(m, &x)| *m += share * f64::from(x));
     }
     let mut scatter = Array2::<f64>::zeros((d, d));
     let mut moments = Array2::<f64>::zeros((d, categories));
     let mut centred = vec![0.0; d];
-    for i in 0..n {
+    for (i, weight) in weights.iter().enumerate() {
         centred.iter_mut().zip(support.embedding(i)).zip(&mean).for_each(|((out, &x), &m)| *out = f64::from(x) - m);
         for j in 0..d {
-            let factor = weights[i] * centred[j];
+            let factor = weight * centred[j];
             let row = &mut scatter.row_mut(j);
             let row = row.as_slice_mut().expect("standard layout");
             row[..=j].iter_mut().zip(&centred).for_each(|(sum, &x)| *sum += factor * x);
