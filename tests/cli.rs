@@ -44,7 +44,7 @@ fn draw(rings: bool, variant: u32) -> RgbImage {
     let (x0, y0) = (90.0 + (variant % 7) as f32 * 4.0, 100.0 + (variant % 5) as f32 * 5.0);
     RgbImage::from_fn(200, 210, |x, y| {
         let along = if rings { (x as f32 - x0).hypot(y as f32 - y0) as u32 } else { x + y / 3 + variant };
-        if along / width % 2 == 0 { ink } else { paper }
+        if (along / width).is_multiple_of(2) { ink } else { paper }
     })
 }
 
