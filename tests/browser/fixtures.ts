@@ -22,7 +22,10 @@ export interface Site {
 }
 
 /** Every test gets a server of its own, and fails on a request to another origin or a breach of the page's policy. */
-export const test = base.extend<{ site: Site; guard: void }>({
+export const test = base.extend<{ site: Site; provoked: string | undefined; guard: void }>({
+  /** What a test does on purpose for the guard to notice; it must notice it. */
+  provoked: [undefined, { option: true }],
+
   site: async ({}, use) => {
     const { server, address } = await serve(join(root, 'www/app/dist'), 4600);
     let running = true;
@@ -36,7 +39,7 @@ export const test = base.extend<{ site: Site; guard: void }>({
     await stop();
   },
   guard: [
-    async ({ context, site }, use) => {
+    async ({ context, site, provoked }, use) => {
       const elsewhere: string[] = [];
       const breaches: string[] = [];
       context.on('request', (request) => {
@@ -54,6 +57,10 @@ export const test = base.extend<{ site: Site; guard: void }>({
       });
       await use();
       expect(elsewhere, 'requests to another origin').toEqual([]);
+      if (provoked !== undefined) {
+        expect(breaches.filter((breach) => breach.includes(provoked)), 'the guard noticed').not.toEqual([]);
+        return;
+      }
       expect(breaches, 'breaches of the policy, and uncaught errors').toEqual([]);
     },
     { auto: true },

@@ -72,7 +72,7 @@ export const appStyles = css`
   main:not(.failure) {
     flex: 1;
     display: grid;
-    grid-template-columns: minmax(360px, 31%) minmax(0, 1fr);
+    grid-template-columns: minmax(380px, 32%) minmax(0, 1fr);
     align-items: start;
     gap: 24px;
     padding: 14px 20px 24px;
@@ -86,7 +86,7 @@ export const appStyles = css`
     overflow: auto;
     margin: -6px;
     padding: 6px;
-    scrollbar-gutter: stable;
+    scrollbar-width: thin;
   }
   ken-question {
     flex: 0 1 auto;

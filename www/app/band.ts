@@ -43,6 +43,7 @@ export class Band extends LitElement {
         height: 14px;
         border-radius: 5px;
         overflow: hidden;
+        forced-color-adjust: none;
       }
       .bar span {
         flex: 0 0 calc(var(--fraction) * 100%);
@@ -85,6 +86,7 @@ export class Band extends LitElement {
         width: 18px;
         height: 11px;
         border-radius: 3px;
+        forced-color-adjust: none;
       }
     `,
   ];

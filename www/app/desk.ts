@@ -77,7 +77,7 @@ export class Desk {
   /** Where the sorter puts the item in hand. */
   get guess(): number | undefined {
     const of = this.#of(this.hand);
-    return of && of.tray >= 0 ? of.tray : undefined;
+    return of && of.tray >= 0 && of.status !== Status.answered ? of.tray : undefined;
   }
 
   get outOfTurn(): boolean {

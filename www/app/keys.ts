@@ -12,6 +12,7 @@ const single: Record<string, Command> = {
   z: { do: 'zoom' },
   q: { do: 'back' },
   delete: { do: 'remove' },
+  backspace: { do: 'remove' },
   '?': { do: 'help' },
 };
 

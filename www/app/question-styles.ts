@@ -69,10 +69,10 @@ export const questionStyles = css`
     position: relative;
     display: flex;
     align-items: center;
-    gap: 0.55rem;
+    gap: 0.45rem;
     width: 100%;
     min-height: 46px;
-    padding: 4px 10px 8px;
+    padding: 4px 8px 8px;
     text-align: start;
     overflow: hidden;
   }
@@ -89,13 +89,15 @@ export const questionStyles = css`
     flex: 1;
     min-width: 0;
     overflow-wrap: anywhere;
+    hyphens: auto;
     line-height: 1.2;
+    font-size: 0.97rem;
     font-weight: 600;
   }
   .choice .figure {
     font-variant-numeric: tabular-nums;
     color: var(--ink-soft);
-    font-size: 0.9rem;
+    font-size: 0.85rem;
   }
   .choice.guessed {
     flex-wrap: wrap;

@@ -168,7 +168,7 @@ export class Shelves extends LitElement {
         ${total === 0 ? html`<p class="soft empty">${words.emptyTray}</p>` : nothing}
       </div>
       <div class="plate">
-        ${key && isTray ? html`<kbd aria-hidden="true">${key}</kbd>` : nothing}
+        ${key && isTray ? html`<kbd class="hint" aria-hidden="true">${key}</kbd>` : nothing}
         <h3>${name}</h3>
         <span class="soft total">${count(total)}${shelf.note ? html`, ${shelf.note}` : nothing}</span>
         ${shelf.front.length > 0 ? html`<span class="unsure">${count(shelf.front.length)} ${words.unsure}</span>` : nothing}
@@ -180,7 +180,7 @@ export class Shelves extends LitElement {
               aria-label=${open ? words.fewer : words.moreLong(hidden, name)}
               @click=${() => (this.open = open ? undefined : tray)}
             >
-              ${open ? words.fewer : words.more(hidden)}
+              ${open ? words.fewer : html`${words.more[0](hidden)}<span class="long">${words.more[1]}</span>`}
             </button>`
           : nothing}
         ${isTray
@@ -314,6 +314,7 @@ export class Shelves extends LitElement {
         display: flex;
         flex-direction: column;
         min-width: 0;
+        container-type: inline-size;
         border-radius: 12px;
         background: var(--surface);
         outline: 2px solid transparent;
@@ -348,7 +349,7 @@ export class Shelves extends LitElement {
       .plate {
         display: flex;
         align-items: center;
-        gap: 0.55rem;
+        gap: 0.45rem;
         min-height: 46px;
         margin-top: 10px;
         padding: 2px 4px 2px 12px;
@@ -367,9 +368,9 @@ export class Shelves extends LitElement {
         white-space: nowrap;
       }
       .unsure {
-        font-size: 0.86rem;
+        font-size: 0.84rem;
         white-space: nowrap;
-        padding: 0 0.45em;
+        padding: 0 0.4em;
         border: 1px dashed var(--edge);
         border-radius: 6px;
       }
@@ -383,6 +384,15 @@ export class Shelves extends LitElement {
         width: 20px;
         display: block;
         fill: currentColor;
+      }
+      .long {
+        display: none;
+        white-space: pre;
+      }
+      @container (min-width: 460px) {
+        .long {
+          display: inline;
+        }
       }
       .empty {
         font-size: 0.9rem;

@@ -62,7 +62,7 @@ export class Welcome extends LitElement {
         <p class="private"><strong>${words.private}</strong> ${words.privateLong}</p>
       </div>
       <div class="heap" aria-hidden="true" @click=${() => tell(this, 'demo', {})}>
-        ${this.heap.map((url) => html`<img src=${url} alt="" />`)}
+        ${this.heap.map((url) => html`<img src=${url} alt="" loading="lazy" />`)}
       </div>
     </main>`;
   }

@@ -80,7 +80,7 @@ export const words = {
   unsureOf: (tray: string) => `${tray}: unsure, least sure first`,
   unsure: 'unsure',
   emptyTray: 'Nothing here yet',
-  more: (n: number) => `+${count(n)}`,
+  more: [(n: number) => `+${count(n)}`, ' more'] as const,
   moreLong: (n: number, tray: string) => `Show ${count(n)} more in ${tray}`,
   fewer: 'Show fewer',
   tile: (name: string, tray: string, how: string) => `${name}, ${tray}, ${how}`,
