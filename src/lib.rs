@@ -41,3 +41,8 @@ pub use prior::Prior;
 pub use sorter::{Settings, Sorter, Verdict};
 pub use space::Space;
 pub use support::Support;
+
+/// The README's example is run as a test.
+#[cfg(doctest)]
+#[doc = include_str!("../README.md")]
+pub struct ReadmeExamples;
