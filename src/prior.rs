@@ -65,8 +65,9 @@ impl Prior {
     ///
     /// Seen from the centre of a pile, nearest prototypes are best at one example a category; otherwise ridge is.
     pub(crate) fn preference(&self, support: &Support) -> [f64; 3] {
-        let gradient = 0.1;
-        let prototype = 0.1 + 0.7 * self.centre_known / support.shot().powi(2);
+        let shot = support.shot();
+        let gradient = 0.1 * (1.0 - 1.0 / shot);
+        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.9 * self.centre_known / (shot * shot);
         [prototype, 1.0 - prototype - gradient, gradient]
     }
 

@@ -72,7 +72,7 @@ impl Space {
 
 /// How many items of no particular kind stand beside a pile's own when its centre is taken, so that the centre of a few
 /// items does not swallow what tells them apart.
-pub(crate) const CENTRE_CAUTION: f64 = 4.0;
+pub(crate) const CENTRE_CAUTION: f64 = 2.0;
 
 /// Below this distance from the centre an item has no direction that rounding has not made.
 const NO_DIRECTION: f32 = 1e-5;
