@@ -1,9 +1,11 @@
 //! The program `kenspeckle`: sort a folder of photos, or vectors, by a few examples of each category.
 //!
-//! One file a command; [`photos`] and [`vectors`] read what is outside, [`output`] writes, [`console`] speaks to the person.
+//! One file a command; [`photos`], [`vectors`] and [`labelled`] read what is outside, [`output`] writes, [`console`] speaks
+//! to the person.
 
 mod console;
 mod embed;
+mod labelled;
 mod output;
 mod photos;
 mod sort;

@@ -1,8 +1,8 @@
 //! `kenspeckle sort`: a pile and a few examples in, every item's tray out.
 
 use std::{
-    collections::{BTreeMap, HashMap, HashSet},
-    path::{Path, PathBuf},
+    collections::{BTreeMap, HashMap},
+    path::PathBuf,
 };
 
 use clap::Args;
@@ -14,6 +14,7 @@ use serde::Serialize;
 
 use crate::{
     console::{self, Failure},
+    labelled::{self, Example, Item},
     output, photos, vectors,
 };
 
@@ -48,17 +49,6 @@ pub struct Sort {
     /// Write JSON instead of a table.
     #[arg(long)]
     json: bool,
-}
-
-/// An item of the pile or an example, ready to be added.
-struct Item {
-    name: String,
-    embedding: Vec<f32>,
-}
-
-struct Example {
-    item: Item,
-    category: String,
 }
 
 /// What was read, and what could not be.
@@ -135,20 +125,15 @@ impl Sort {
                 self.pile.display()
             )));
         }
-        let (example_parts, mut troubles) = example_files(&self.examples)?;
-        let (examples, unreadable_examples) = photos::embed(&self.examples, &example_parts, "examples")?;
+        let (examples, mut troubles) = labelled::photos(&self.examples, "examples")?;
         let (pile, unreadable) = photos::embed(&self.pile, &parts, "pile")?;
-        let within = |folder: &Path, lines: Vec<String>| {
-            lines.into_iter().map(|line| format!("{}/{line}", folder.display())).collect::<Vec<_>>()
-        };
-        troubles.extend(within(&self.examples, unreadable_examples));
-        troubles.extend(within(&self.pile, unreadable));
+        troubles.extend(labelled::within(&self.pile, unreadable));
         troubles.iter().for_each(|trouble| console::say(trouble));
         repeated_in_pile(&pile);
 
         let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
         let space = Space::new(encoder.dimension(), encoder.non_negative()).map_err(Failure::because)?;
-        let (examples, disputed) = without_disputed(examples);
+        let (examples, disputed) = labelled::without_disputed(examples);
         Ok(Material {
             encoder: encoder.identity().to_owned(),
             space,
@@ -173,33 +158,16 @@ impl Sort {
                 examples.ncols()
             )));
         }
-        let categories = vectors::read_labels(labels)?;
-        if categories.len() != examples.nrows() {
-            return Err(Failure::because(format!(
-                "{} names {} categories but {} holds {} examples; give one category a line for each example",
-                labels.display(),
-                categories.len(),
-                self.examples.display(),
-                examples.nrows()
-            )));
-        }
         let negative = pile.iter().chain(&examples).any(|&x| x < 0.0);
         let space = Space::new(pile.ncols(), !negative && !self.signed).map_err(Failure::because)?;
-        let items = |array: &ndarray::Array2<f32>, path: &Path| -> Vec<Item> {
-            let names = vectors::names_beside(path, array.nrows());
-            let name = |row: usize| names.as_ref().map_or_else(|| row.to_string(), |names| names[row].clone());
-            array
-                .outer_iter()
-                .enumerate()
-                .map(|(row, numbers)| Item { name: name(row), embedding: numbers.to_vec() })
-                .collect()
-        };
-        let examples = items(&examples, &self.examples)
-            .into_iter()
-            .zip(categories)
-            .map(|(item, category)| Example { item, category })
-            .collect();
-        Ok(Material { encoder: "vectors".into(), space, pile: items(&pile, &self.pile), examples, troubles: 0 })
+        let examples = labelled::vectors(&examples, &self.examples, labels)?;
+        Ok(Material {
+            encoder: "vectors".into(),
+            space,
+            pile: labelled::items(&pile, &self.pile),
+            examples,
+            troubles: 0,
+        })
     }
 
     fn write(&self, material: &Material, trays: &BTreeMap<String, usize>, items: Vec<Sorted>) -> Result<(), Failure> {
@@ -247,45 +215,6 @@ impl Sort {
     }
 }
 
-/// The files in the category folders, and lines about what lies outside them or about folders with nothing in them.
-fn example_files(folder: &Path) -> Result<(Vec<PathBuf>, Vec<String>), Failure> {
-    let all = photos::files_below(folder)?;
-    let (inside, loose): (Vec<_>, Vec<_>) = all.into_iter().partition(|part| part.components().count() > 1);
-    let mut troubles: Vec<String> = loose
-        .iter()
-        .map(|part| {
-            format!(
-                "{}/{}: it lies outside the category folders; put it into the folder of its category",
-                folder.display(),
-                photos::shown(part)
-            )
-        })
-        .collect();
-    let with_files: HashSet<_> = inside.iter().filter_map(|part| part.iter().next()).collect();
-    let entries = std::fs::read_dir(folder)
-        .map_err(|error| Failure::because(format!("{}: can't list this folder ({error})", folder.display())))?;
-    let mut empty: Vec<String> = entries
-        .flatten()
-        .filter(|entry| entry.path().is_dir() && !with_files.contains(entry.file_name().as_os_str()))
-        .map(|entry| entry.file_name().to_string_lossy().into_owned())
-        .filter(|name| !name.starts_with('.'))
-        .collect();
-    empty.sort();
-    troubles.extend(empty.iter().map(|name| {
-        format!(
-            "{}/{name}: this category has no example; put at least one photo in, or remove the folder",
-            folder.display()
-        )
-    }));
-    if inside.is_empty() {
-        return Err(Failure::because(format!(
-            "{}: there is no example in it; make one folder for each category there, with a few photos in each",
-            folder.display()
-        )));
-    }
-    Ok((inside, troubles))
-}
-
 /// Says which photos of the pile are the same file; they are sorted all the same.
 fn repeated_in_pile(pile: &[photos::Photo]) {
     let mut first: HashMap<&str, &str> = HashMap::new();
@@ -297,38 +226,6 @@ fn repeated_in_pile(pile: &[photos::Photo]) {
             }
         }
     }
-}
-
-/// Examples by category, a file in one category once, and a file in several categories not at all; and how many such
-/// files there are.
-fn without_disputed(photos: Vec<photos::Photo>) -> (Vec<Example>, usize) {
-    let mut places: HashMap<String, Vec<String>> = HashMap::new();
-    for photo in &photos {
-        places.entry(photo.fingerprint.clone()).or_default().push(photo.name.clone());
-    }
-    let category = |name: &str| name.split('/').next().unwrap_or("").to_owned();
-    let mut disputed = 0;
-    let mut examples = Vec::new();
-    for photo in photos {
-        let names = &places[&photo.fingerprint];
-        if names[0] != photo.name {
-            continue;
-        }
-        let own = category(&photo.name);
-        if names.iter().any(|name| category(name) != own) {
-            console::say(&format!(
-                "{}: the same file is in several categories, so none of them counts; keep it in one",
-                names.join(" and ")
-            ));
-            disputed += 1;
-            continue;
-        }
-        if names.len() > 1 {
-            console::say(&format!("{}: the same file; it counts once", names.join(" and ")));
-        }
-        examples.push(Example { item: Item { name: photo.name, embedding: photo.embedding }, category: own });
-    }
-    (examples, disputed)
 }
 
 /// Adds the pile; gives the number and name of each item that could be added.
