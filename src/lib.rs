@@ -15,6 +15,7 @@
 //! | [`ask`] | which item's answer helps most |
 //! | [`ledger`] | trays and answers, with undo and redo |
 //! | [`sorter`] | the façade |
+//! | [`meta`] | small tasks drawn from labelled material, and rehearsing on them |
 //!
 //! The same input gives the same bits natively and in WebAssembly: sums run in one fixed order ([`arithmetic`]).
 
@@ -25,6 +26,7 @@ mod error;
 pub mod head;
 pub mod learner;
 pub mod ledger;
+pub mod meta;
 pub mod pile;
 pub mod prior;
 pub mod sorter;
