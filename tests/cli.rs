@@ -1,6 +1,8 @@
 //! The program as a person runs it: real files in, tables, exit codes and messages out.
 #![cfg(feature = "cli")]
 
+mod program;
+
 use std::{
     collections::BTreeMap,
     fs,
@@ -8,23 +10,10 @@ use std::{
     process::{Command, Output},
 };
 
-use image::{Rgb, RgbImage};
 use ndarray::{Array1, Array2, Array3, array};
 use ndarray_npy::write_npy;
+use program::{draw, kenspeckle, lines_with, said};
 use tempfile::TempDir;
-
-fn kenspeckle(folder: &Path, arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_kenspeckle")).current_dir(folder).args(arguments).output().unwrap()
-}
-
-fn said(output: &Output) -> String {
-    String::from_utf8(output.stderr.clone()).unwrap()
-}
-
-/// Lines that mention all of these.
-fn lines_with<'a>(text: &'a str, parts: &[&str]) -> Vec<&'a str> {
-    text.lines().filter(|line| parts.iter().all(|part| line.contains(part))).collect()
-}
 
 /// A table as item → (tray, probability).
 fn table(text: &str) -> BTreeMap<String, (String, f64)> {
@@ -34,18 +23,6 @@ fn table(text: &str) -> BTreeMap<String, (String, f64)> {
         .map(|row| row.unwrap())
         .map(|row| (row[0].to_owned(), (row[1].to_owned(), row[2].parse().unwrap())))
         .collect()
-}
-
-/// Stripes or rings in changing colours, widths and places.
-fn draw(rings: bool, variant: u32) -> RgbImage {
-    let ink = Rgb([(variant * 53 % 200) as u8, (variant * 97 % 200) as u8, (variant * 31 % 200) as u8]);
-    let paper = Rgb([235 - (variant * 11 % 60) as u8, 230, 225 - (variant * 17 % 60) as u8]);
-    let width = 9 + variant % 5;
-    let (x0, y0) = (90.0 + (variant % 7) as f32 * 4.0, 100.0 + (variant % 5) as f32 * 5.0);
-    RgbImage::from_fn(200, 210, |x, y| {
-        let along = if rings { (x as f32 - x0).hypot(y as f32 - y0) as u32 } else { x + y / 3 + variant };
-        if (along / width).is_multiple_of(2) { ink } else { paper }
-    })
 }
 
 /// `pile/` with ten photos, `examples/{rings,stripes}/` with three each.

@@ -8,6 +8,9 @@ mod embed;
 mod labelled;
 mod output;
 mod photos;
+mod plot;
+mod rehearse;
+mod report;
 mod sort;
 mod vectors;
 
@@ -40,6 +43,7 @@ struct Arguments {
 enum Command {
     Sort(sort::Sort),
     Embed(embed::Embed),
+    Rehearse(rehearse::Rehearse),
 }
 
 fn main() -> ExitCode {
@@ -48,6 +52,7 @@ fn main() -> ExitCode {
     let done = match arguments.command {
         Command::Sort(sort) => sort.run(),
         Command::Embed(embed) => embed.run(),
+        Command::Rehearse(rehearse) => rehearse.run(),
     };
     match done {
         Ok(0) => ExitCode::SUCCESS,
