@@ -70,10 +70,7 @@ impl Asker {
     /// The item whose answer helps most, the first of several; `None` if there is no candidate.
     pub fn next(&mut self, pile: &Pile, centre: &Centre, situation: &Situation) -> Option<usize> {
         self.catch_up(pile);
-        let seen = |item: usize| {
-            let product = centre.product(pile.place(item));
-            (product, centre.inverse_distance(product))
-        };
+        let seen = |item: usize| pile.seen_from(centre, item);
         let anchors: Vec<(usize, (f32, f32))> = self
             .anchors
             .iter()

@@ -64,6 +64,52 @@ pub enum Error {
     /// With fewer than two categories there is nothing to tell apart.
     #[error("sorting needs at least two categories with an example each, and there is {0}")]
     TooFewCategories(usize),
+    /// Embeddings or what was learned from them belong to another encoder.
+    #[error(
+        "this is for the encoder {found}, and {expected} is in use; embeddings of different encoders can't be mixed"
+    )]
+    OtherEncoder {
+        /// The encoder in use.
+        expected: String,
+        /// The other one.
+        found: String,
+    },
+    /// A starter file can't be used.
+    #[error("this starter can't be used: {0}; make it again with `kenspeckle learn`")]
+    StarterUnreadable(String),
+    /// A file of sums can't be used.
+    #[error("these sums can't be used: {0}; gather them again with `kenspeckle learn --partial`")]
+    StatisticsUnreadable(String),
+    /// A starter file comes from a newer version.
+    #[error("this starter has version {found}, and this program reads up to version {known}; update the program")]
+    StarterNewer {
+        /// The starter's version.
+        found: u32,
+        /// The newest version known here.
+        known: u32,
+    },
+    /// Too little to learn a starter from.
+    #[error(
+        "there are {items} items in {categories} categories, too little to learn from: a starter needs at least two \
+         categories and one with two items; add past piles"
+    )]
+    TooLittleToLearn {
+        /// Categories with an item.
+        categories: usize,
+        /// Items in all.
+        items: usize,
+    },
+    /// A starter of few categories would tell too much of them.
+    #[error(
+        "a starter of {found} categories may tell what they were; it is only shared from {least} on: add past piles, \
+         or lower the limit if it stays with you"
+    )]
+    TooFewToShare {
+        /// Categories learned from.
+        found: usize,
+        /// The least that are shared.
+        least: usize,
+    },
     /// A tray's name is empty.
     #[error("a tray needs a name; type at least one letter")]
     TrayNameEmpty,
@@ -114,6 +160,12 @@ impl Error {
             Error::LabelOutOfRange { .. } => "label-out-of-range",
             Error::NoExample(_) => "no-example",
             Error::TooFewCategories(_) => "too-few-categories",
+            Error::OtherEncoder { .. } => "other-encoder",
+            Error::StarterUnreadable(_) => "starter-unreadable",
+            Error::StatisticsUnreadable(_) => "statistics-unreadable",
+            Error::StarterNewer { .. } => "starter-newer",
+            Error::TooLittleToLearn { .. } => "too-little-to-learn",
+            Error::TooFewToShare { .. } => "too-few-to-share",
             Error::TrayNameEmpty => "tray-name-empty",
             Error::TrayNameTaken(_) => "tray-name-taken",
             Error::TrayNameTooLong { .. } => "tray-name-too-long",

@@ -11,6 +11,9 @@
 //! | [`learner`] | nearest prototype, ridge, a few gradient steps, and the mix of them |
 //! | [`head`] | what is learned: one logit a category |
 //! | [`prior`] | what is known before the first example |
+//! | [`meta`] | learning from past piles |
+//! | [`starter`] | what past piles taught, as one file |
+//! | [`whitening`] | how past categories scattered, taken out of the space |
 //! | [`pile`] | the items and their centre |
 //! | [`ask`] | which item's answer helps most |
 //! | [`ledger`] | trays and answers, with undo and redo |
@@ -19,6 +22,7 @@
 //!
 //! The same input gives the same bits natively and in WebAssembly: sums run in one fixed order ([`arithmetic`]).
 
+mod archive;
 pub mod arithmetic;
 pub mod ask;
 pub mod encoder;
@@ -27,11 +31,14 @@ pub mod head;
 pub mod learner;
 pub mod ledger;
 pub mod meta;
+mod npy;
 pub mod pile;
 pub mod prior;
 pub mod sorter;
 pub mod space;
+pub mod starter;
 pub mod support;
+pub mod whitening;
 
 #[cfg(target_family = "wasm")]
 mod js;
@@ -42,6 +49,7 @@ pub use learner::LearnerKind;
 pub use prior::Prior;
 pub use sorter::{Settings, Sorter, Verdict};
 pub use space::Space;
+pub use starter::Starter;
 pub use support::Support;
 
 /// The README's example is run as a test.

@@ -1,4 +1,6 @@
-//! Learning across piles: small tasks drawn from labelled material, and how well sorting does on them.
+//! Learning across piles: what past piles teach, small tasks drawn from labelled material, and how well sorting does on
+//! them.
 
 pub mod episode;
 pub mod rehearse;
+pub mod statistics;

@@ -1,16 +1,23 @@
 //! The pile: every item's place in the space, and the pile's own centre.
 
+use std::sync::Arc;
+
 use crate::{
     arithmetic::dot,
     error::{Error, Result},
     space::{Centre, Space},
+    starter::Starter,
 };
 
 /// Items by number, in order of arrival; a number is never used again.
 #[derive(Debug, Clone)]
 pub struct Pile {
     space: Space,
+    starter: Option<Arc<Starter>>,
+    /// What past piles had in the middle, whitened like the places.
+    past: Option<Vec<f32>>,
     places: Vec<f32>,
+    squares: Vec<f32>,
     present: Vec<bool>,
     sum: Vec<f64>,
 }
@@ -18,7 +25,30 @@ pub struct Pile {
 impl Pile {
     /// An empty pile.
     pub fn new(space: Space) -> Self {
-        Self { space, places: Vec::new(), present: Vec::new(), sum: vec![0.0; space.dimension()] }
+        Self {
+            space,
+            starter: None,
+            past: None,
+            places: Vec::new(),
+            squares: Vec::new(),
+            present: Vec::new(),
+            sum: vec![0.0; space.dimension()],
+        }
+    }
+
+    /// An empty pile whose items are placed by what past piles taught. Refuses a starter of another space.
+    pub fn with_starter(space: Space, starter: Arc<Starter>) -> Result<Self> {
+        if starter.space() != space {
+            return Err(Error::StarterUnreadable("it was made for embeddings of another form".into()));
+        }
+        let mut past = starter.mean().to_vec();
+        starter.whitening().apply(&mut past);
+        Ok(Self { starter: Some(starter), past: Some(past), ..Self::new(space) })
+    }
+
+    /// What past piles taught, if anything.
+    pub fn starter(&self) -> Option<&Arc<Starter>> {
+        self.starter.as_ref()
     }
 
     /// The space that items are placed in.
@@ -36,9 +66,13 @@ impl Pile {
         self.present.is_empty()
     }
 
-    /// Adds an item by its embedding and gives its number. Cost O(d).
+    /// Adds an item by its embedding and gives its number. Cost O(d), and O(r d) with a starter of r directions.
     pub fn add(&mut self, embedding: &[f32]) -> Result<usize> {
-        let place = self.space.place(embedding)?;
+        let mut place = self.space.place(embedding)?;
+        if let Some(starter) = &self.starter {
+            starter.whitening().apply(&mut place);
+        }
+        self.squares.push(dot(&place, &place));
         self.sum.iter_mut().zip(&place).for_each(|(sum, &x)| *sum += f64::from(x));
         self.places.extend_from_slice(&place);
         self.present.push(true);
@@ -71,7 +105,7 @@ impl Pile {
         (0..self.len()).filter(|&item| self.present[item])
     }
 
-    /// The item's place: d numbers of unit length.
+    /// The item's place: d numbers, of unit length without a starter.
     pub fn place(&self, item: usize) -> &[f32] {
         let d = self.space.dimension();
         &self.places[item * d..(item + 1) * d]
@@ -79,7 +113,13 @@ impl Pile {
 
     /// The centre of the items in the pile.
     pub fn centre(&self) -> Centre {
-        Centre::of_sum(&self.sum, self.present.iter().filter(|&&present| present).count())
+        Centre::of_sum(&self.sum, self.present.iter().filter(|&&present| present).count(), self.past.as_deref())
+    }
+
+    /// An item's inner product with the centre and inverse distance from it. Cost O(d).
+    pub(crate) fn seen_from(&self, centre: &Centre, item: usize) -> (f32, f32) {
+        let product = centre.product(self.place(item));
+        (product, centre.inverse_distance(self.squares[item], product))
     }
 
     /// Inner product of two items' places. Cost O(d).

@@ -1,5 +1,7 @@
 //! The façade: from embeddings and answers to verdicts and the next question.
 
+use std::sync::Arc;
+
 use ndarray::Array2;
 use serde::{Deserialize, Serialize};
 
@@ -13,6 +15,7 @@ use crate::{
     pile::Pile,
     prior::Prior,
     space::{CENTRE_CAUTION, Centre, Space},
+    starter::Starter,
     support::Support,
 };
 
@@ -60,6 +63,9 @@ impl Verdict {
 struct State {
     version: u32,
     settings: Settings,
+    /// The identity of the starter.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    starter: Option<String>,
     ledger: Ledger,
 }
 
@@ -116,6 +122,20 @@ impl Sorter {
             learnt: None,
             settings,
         }
+    }
+
+    /// A sorter that starts from what past piles taught. Refuses a starter of another encoder.
+    pub fn with_starter(settings: Settings, starter: Arc<Starter>) -> Result<Self> {
+        if starter.encoder() != settings.encoder {
+            return Err(Error::OtherEncoder { expected: settings.encoder, found: starter.encoder().to_owned() });
+        }
+        let pile = Pile::with_starter(settings.space, starter)?;
+        Ok(Self { pile, ..Self::new(settings) })
+    }
+
+    /// What past piles taught, if anything.
+    pub fn starter(&self) -> Option<&Arc<Starter>> {
+        self.pile.starter()
     }
 
     /// What the sorter was made for.
@@ -316,7 +336,7 @@ impl Sorter {
         let mut probabilities = Array2::zeros((self.pile.len(), categories));
         for item in self.pile.items() {
             let place = self.pile.place(item);
-            let factor = centre.inverse_distance(centre.product(place));
+            let (_, factor) = self.pile.seen_from(centre, item);
             let logits = ndarray::Array1::from_shape_fn(categories, |c| {
                 f64::from((dot(row(&weights, c), place) - offsets[c]) * factor) + head.bias()[c]
             });
@@ -342,14 +362,19 @@ impl Sorter {
 
     /// Settings, trays, answers and the log as JSON; embeddings are kept by whoever keeps the items.
     pub fn state(&self) -> String {
-        let state = State { version: STATE_VERSION, settings: self.settings.clone(), ledger: self.ledger.clone() };
+        let state = State {
+            version: STATE_VERSION,
+            settings: self.settings.clone(),
+            starter: self.starter().map(|starter| starter.identity()),
+            ledger: self.ledger.clone(),
+        };
         serde_json::to_string(&state).expect("plain data")
     }
 
     /// The sorter that was saved, given the embeddings of all its items in order (items × d).
     ///
     /// More embeddings than the state knows items are taken as items that arrived since.
-    pub fn restore(state: &str, embeddings: &[f32]) -> Result<Self> {
+    pub fn restore(state: &str, embeddings: &[f32], starter: Option<Arc<Starter>>) -> Result<Self> {
         #[derive(Deserialize)]
         struct Version {
             version: u32,
@@ -359,7 +384,14 @@ impl Sorter {
         if version > STATE_VERSION {
             return Err(Error::StateNewer { found: version, known: STATE_VERSION });
         }
-        let State { settings, ledger, .. } = serde_json::from_str(state).map_err(unreadable)?;
+        let State { settings, ledger, starter: needed, .. } = serde_json::from_str(state).map_err(unreadable)?;
+        if needed != starter.as_ref().map(|starter| starter.identity()) {
+            let reason = match needed {
+                Some(identity) => format!("it needs the starter {identity}"),
+                None => "it was made without a starter".into(),
+            };
+            return Err(Error::StateUnreadable(reason));
+        }
         let space = Space::new(settings.space.dimension(), settings.space.non_negative())?;
         let d = space.dimension();
         if !ledger.is_consistent() {
@@ -372,7 +404,10 @@ impl Sorter {
                 ledger.items()
             )));
         }
-        let mut sorter = Self::new(settings);
+        let mut sorter = match starter {
+            Some(starter) => Self::with_starter(settings, starter)?,
+            None => Self::new(settings),
+        };
         for embedding in embeddings.chunks_exact(d) {
             sorter.pile.add(embedding)?;
         }

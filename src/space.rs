@@ -85,9 +85,13 @@ pub struct Centre {
 }
 
 impl Centre {
-    /// The centre of `count` places with this sum, drawn toward the origin while they are few.
-    pub(crate) fn of_sum(sum: &[f64], count: usize) -> Self {
-        let mean: Vec<f32> = sum.iter().map(|&x| (x / (count as f64 + CENTRE_CAUTION)) as f32).collect();
+    /// The centre of `count` places with this sum, drawn while they are few toward what past piles had in the middle, or
+    /// toward the origin.
+    pub(crate) fn of_sum(sum: &[f64], count: usize, past: Option<&[f32]>) -> Self {
+        let weight = 1.0 / (count as f64 + CENTRE_CAUTION);
+        let past = |j: usize| past.map_or(0.0, |past| f64::from(past[j]));
+        let mean: Vec<f32> =
+            sum.iter().enumerate().map(|(j, &x)| ((x + CENTRE_CAUTION * past(j)) * weight) as f32).collect();
         let square = dot(&mean, &mean);
         Self { mean, square }
     }
@@ -101,7 +105,7 @@ impl Centre {
             sum.iter_mut().zip(place).for_each(|(sum, &x)| *sum += f64::from(x));
             count += 1;
         }
-        Self::of_sum(&sum, count)
+        Self::of_sum(&sum, count, None)
     }
 
     /// The centre itself, d numbers.
@@ -114,10 +118,10 @@ impl Centre {
         dot(&self.mean, place)
     }
 
-    /// One over the distance between a place of unit length and the centre, given their inner product; 0 for a place in
-    /// the centre, which has no direction from there.
-    pub(crate) fn inverse_distance(&self, product: f32) -> f32 {
-        let distance = (1.0 - 2.0 * product + self.square).max(0.0).sqrt();
+    /// One over the distance between a place and the centre, given the place's square and their inner product; 0 for a
+    /// place in the centre, which has no direction from there.
+    pub(crate) fn inverse_distance(&self, square: f32, product: f32) -> f32 {
+        let distance = (square - 2.0 * product + self.square).max(0.0).sqrt();
         if distance < NO_DIRECTION { 0.0 } else { 1.0 / distance }
     }
 
@@ -129,7 +133,7 @@ impl Centre {
 
     /// The direction from here to a place: unit length, or zeros for a place in the centre. Cost O(d).
     pub fn view(&self, place: &[f32]) -> Vec<f32> {
-        let factor = self.inverse_distance(self.product(place));
+        let factor = self.inverse_distance(dot(place, place), self.product(place));
         place.iter().zip(&self.mean).map(|(&x, &m)| (x - m) * factor).collect()
     }
 }
@@ -182,11 +186,11 @@ mod tests {
     fn seen_from_the_centre_items_have_unit_length() {
         let places = [[1.0_f32, 0.0], [0.6, 0.8], [0.8, 0.6]];
         let sum: Vec<f64> = (0..2).map(|j| places.iter().map(|p| f64::from(p[j])).sum()).collect();
-        let centre = Centre::of_sum(&sum, 3);
+        let centre = Centre::of_sum(&sum, 3, None);
         for place in places {
             assert!((length(&centre.view(&place)) - 1.0).abs() < 1e-5);
         }
-        let seen = |p: &[f32]| (centre.product(p), centre.inverse_distance(centre.product(p)));
+        let seen = |p: &[f32]| (centre.product(p), centre.inverse_distance(dot(p, p), centre.product(p)));
         let direct = dot(&centre.view(&places[0]), &centre.view(&places[1]));
         let folded = centre.cosine(dot(&places[0], &places[1]), seen(&places[0]), seen(&places[1]));
         assert!((direct - folded).abs() < 1e-5);

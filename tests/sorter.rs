@@ -139,7 +139,7 @@ fn what_is_saved_comes_back_with_its_log() {
     sorter.remove_item(3).unwrap();
     let state = sorter.state();
     let mut embeddings: Vec<f32> = items.iter().flat_map(|(item, _)| item.clone()).collect();
-    let mut back = Sorter::restore(&state, &embeddings).unwrap();
+    let mut back = Sorter::restore(&state, &embeddings, None).unwrap();
     assert_eq!(back.ledger(), sorter.ledger());
     assert_eq!(back.settings(), sorter.settings());
     let (a, b) = (sorter.verdicts().to_vec(), back.verdicts().to_vec());
@@ -150,7 +150,7 @@ fn what_is_saved_comes_back_with_its_log() {
 
     // An item that arrived after the state was saved is kept.
     embeddings.extend(&items[0].0);
-    assert_eq!(Sorter::restore(&state, &embeddings).unwrap().items(), 61);
+    assert_eq!(Sorter::restore(&state, &embeddings, None).unwrap().items(), 61);
 }
 
 #[test]
@@ -160,7 +160,7 @@ fn states_that_do_not_fit_are_refused_by_name() {
     answer(&mut sorter, &items, 4);
     let state = sorter.state();
     let embeddings: Vec<f32> = items.iter().flat_map(|(item, _)| item.clone()).collect();
-    let code = |state: &str, embeddings: &[f32]| Sorter::restore(state, embeddings).unwrap_err().code();
+    let code = |state: &str, embeddings: &[f32]| Sorter::restore(state, embeddings, None).unwrap_err().code();
     assert_eq!(code("{", &embeddings), "state-unreadable");
     assert_eq!(code(&state[..state.len() / 2], &embeddings), "state-unreadable");
     assert_eq!(code(&state, &embeddings[DIMENSION..]), "state-unreadable");

@@ -304,6 +304,6 @@ impl Sorter {
     /// Embeddings beyond those that the state knows are items that arrived since. Throws "state-unreadable",
     /// "state-newer" and what `addItem` throws.
     pub fn restore(state: &str, embeddings: &[f32]) -> Result<Sorter, JsValue> {
-        sorter::Sorter::restore(state, embeddings).map(Self).or_throw()
+        sorter::Sorter::restore(state, embeddings, None).map(Self).or_throw()
     }
 }

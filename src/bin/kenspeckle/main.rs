@@ -6,6 +6,7 @@
 mod console;
 mod embed;
 mod labelled;
+mod learn;
 mod output;
 mod photos;
 mod plot;
@@ -44,6 +45,7 @@ enum Command {
     Sort(sort::Sort),
     Embed(embed::Embed),
     Rehearse(rehearse::Rehearse),
+    Learn(learn::Learn),
 }
 
 fn main() -> ExitCode {
@@ -53,6 +55,7 @@ fn main() -> ExitCode {
         Command::Sort(sort) => sort.run(),
         Command::Embed(embed) => embed.run(),
         Command::Rehearse(rehearse) => rehearse.run(),
+        Command::Learn(learn) => learn.run(),
     };
     match done {
         Ok(0) => ExitCode::SUCCESS,

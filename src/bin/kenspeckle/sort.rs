@@ -2,12 +2,13 @@
 
 use std::{
     collections::{BTreeMap, HashMap},
-    path::PathBuf,
+    path::{Path, PathBuf},
+    sync::Arc,
 };
 
 use clap::Args;
 use kenspeckle::{
-    LearnerKind, Settings, Sorter, Space,
+    LearnerKind, Settings, Sorter, Space, Starter,
     encoder::{Encoder, PhotoEncoder},
 };
 use serde::Serialize;
@@ -43,6 +44,9 @@ pub struct Sort {
     /// compared by their square roots, which suits what comes after a rectifier).
     #[arg(long)]
     signed: bool,
+    /// A starter from past piles of the same kind (`kenspeckle learn` makes it): fewer examples are needed with one.
+    #[arg(long, value_name = "FILE.starter")]
+    starter: Option<PathBuf>,
     /// Write the table to this file instead of showing it.
     #[arg(long, value_name = "FILE.csv")]
     out: Option<PathBuf>,
@@ -96,7 +100,13 @@ impl Sort {
             learner: self.learner,
             seed: self.seed,
         };
-        let mut sorter = Sorter::new(settings);
+        let mut sorter = match &self.starter {
+            Some(path) => read_starter(path).and_then(|starter| {
+                let other = |error| Failure::because(format!("{}: {error}", path.display()));
+                Sorter::with_starter(settings, Arc::new(starter)).map_err(other)
+            })?,
+            None => Sorter::new(settings),
+        };
         let pile = add_pile(&mut sorter, &mut material);
         let trays = add_examples(&mut sorter, &mut material)?;
         if pile.is_empty() {
@@ -213,6 +223,13 @@ impl Sort {
         }
         Ok(())
     }
+}
+
+/// Reads a starter file.
+pub fn read_starter(path: &Path) -> Result<Starter, Failure> {
+    let named = |reason: String| Failure::because(format!("{}: {reason}", path.display()));
+    let file = std::fs::read(path).map_err(|error| named(format!("it can't be read ({error})")))?;
+    Starter::read(&file).map_err(|error| named(error.to_string()))
 }
 
 /// Says which photos of the pile are the same file; they are sorted all the same.

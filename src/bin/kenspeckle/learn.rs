@@ -1,0 +1,128 @@
+//! `kenspeckle learn`: past piles in, a starter out.
+
+use std::{collections::BTreeMap, fs, path::PathBuf};
+
+use clap::Args;
+use kenspeckle::{
+    Space, Starter,
+    encoder::{Encoder, PhotoEncoder},
+    meta::statistics::Statistics,
+    starter::LEAST_CATEGORIES,
+};
+
+use crate::{
+    console::{self, Failure},
+    labelled::{self, Example},
+    output, vectors,
+};
+
+/// Learn from piles already sorted, so that the next one of the same kind needs fewer examples.
+///
+/// Writes a starter: one file of about 300 KB that `sort --starter` takes. It holds none of the items and no names, but it
+/// describes the past material on the whole, so think before you give it to others.
+#[derive(Args)]
+pub struct Learn {
+    /// Past piles: folders that hold one folder of photos for each category; .npy files of vectors, each with --labels; or
+    /// files that `learn --partial` wrote.
+    #[arg(required = true)]
+    past: Vec<PathBuf>,
+    /// For each past pile in an .npy file, in the same order: a file with one category a line.
+    #[arg(long, value_name = "FILE.csv")]
+    labels: Vec<PathBuf>,
+    /// The starter file to write.
+    #[arg(long, value_name = "FILE.starter")]
+    out: PathBuf,
+    /// Refuse to write a starter of fewer categories: it could tell what they were.
+    #[arg(long, default_value_t = LEAST_CATEGORIES, value_name = "COUNT")]
+    min_categories: usize,
+    /// Write the sums over these piles instead, to be merged by another `learn` later.
+    #[arg(long)]
+    partial: bool,
+}
+
+impl Learn {
+    /// Runs the command and tells how many items could not be read.
+    pub fn run(self) -> Result<usize, Failure> {
+        let mut labels = self.labels.iter();
+        let mut gathered: Option<Statistics> = None;
+        let mut troubles = 0;
+        for past in &self.past {
+            let (statistics, unread) = if past.is_dir() {
+                photos(past)?
+            } else if vectors::is_npy(past) {
+                let labels = labels.next().ok_or_else(|| {
+                    Failure::because(format!("{}: vectors need --labels FILE.csv, one category a line", past.display()))
+                })?;
+                let array = vectors::read(past)?;
+                let space = Space::new(array.ncols(), array.iter().all(|&x| x >= 0.0)).map_err(Failure::because)?;
+                gather("vectors", space, labelled::vectors(&array, past, labels)?)?
+            } else {
+                let named = |reason: String| Failure::because(format!("{}: {reason}", past.display()));
+                let file = fs::read(past).map_err(|error| named(format!("it can't be read ({error})")))?;
+                (Statistics::read(&file).map_err(|error| named(error.to_string()))?, 0)
+            };
+            troubles += unread;
+            match &mut gathered {
+                None => gathered = Some(statistics),
+                Some(gathered) => gathered
+                    .merge(&statistics)
+                    .map_err(|error| Failure::because(format!("{}: {error}", past.display())))?,
+            }
+            console::go_on()?;
+        }
+        if labels.next().is_some() {
+            return Err(Failure::because("there are more --labels than .npy files; give one for each"));
+        }
+        let Some(gathered) = gathered else { return Err(Failure::because("there is no past pile to learn from")) };
+        let (categories, items) = (gathered.categories(), gathered.items());
+        let file = if self.partial {
+            gathered.write()
+        } else {
+            let starter = Starter::learn(&gathered).map_err(Failure::because)?;
+            starter.write(self.min_categories).map_err(Failure::because)?
+        };
+        console::go_on()?;
+        output::write_whole(&self.out, |out| std::io::Write::write_all(out, &file).map_err(|error| error.to_string()))?;
+        let what = if self.partial { "the sums" } else { "the starter" };
+        console::say(&format!(
+            "learned from {items} items in {categories} categories; {what} ({} KB) in {}",
+            file.len().div_ceil(1000),
+            self.out.display()
+        ));
+        Ok(troubles)
+    }
+}
+
+fn photos(folder: &std::path::Path) -> Result<(Statistics, usize), Failure> {
+    let (photos, troubles) = labelled::photos(folder, "past pile")?;
+    troubles.iter().for_each(|trouble| console::say(trouble));
+    let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
+    let space = Space::new(encoder.dimension(), encoder.non_negative()).map_err(Failure::because)?;
+    let (examples, disputed) = labelled::without_disputed(photos);
+    let (statistics, unusable) = gather(encoder.identity(), space, examples)?;
+    Ok((statistics, troubles.len() + disputed + unusable))
+}
+
+/// The sums over these examples, and how many could not be used.
+fn gather(encoder: &str, space: Space, examples: Vec<Example>) -> Result<(Statistics, usize), Failure> {
+    let mut categories: BTreeMap<String, Vec<Vec<f32>>> = BTreeMap::new();
+    let mut unusable = 0;
+    for Example { item, category } in examples {
+        match space.place(&item.embedding) {
+            Ok(_) => categories.entry(category).or_default().push(item.embedding),
+            Err(error) => {
+                console::say(&format!("item {}: {error}", item.name));
+                unusable += 1;
+            }
+        }
+    }
+    let bar = console::progress(categories.len(), "learning");
+    let mut statistics = Statistics::new(encoder, space);
+    for items in categories.values() {
+        console::go_on()?;
+        statistics.add_category(items.iter().map(Vec::as_slice)).map_err(Failure::because)?;
+        bar.inc(1);
+    }
+    bar.finish_and_clear();
+    Ok((statistics, unusable))
+}
