@@ -1,8 +1,8 @@
 //! How well each learner sorts a file of episodes.
 //!
-//! `cargo bench --features cli --bench episodes -- VECTORS.npy EPISODES.jsonl [--non-negative]` prints one JSON object: under
-//! `one by one` the learner alone, which sees each query by itself, and under `in the pile` the [`Sorter`], whose pile is the
-//! episode's examples and queries; in each, for every learner its accuracy (0…1) and log loss (nats) in every episode, and the
+//! `cargo bench --features cli --bench episodes -- VECTORS.npy EPISODES.jsonl [--non-negative] [--starter=FILE]` prints one
+//! JSON object: under `one by one` the learner alone, which sees each query by itself, and under `in the pile` the [`Sorter`], whose pile is the
+//! episode's examples and queries, and under `in the pile, with a starter` the same with the starter of that file; in each, for every learner its accuracy (0…1) and log loss (nats) in every episode, and the
 //! median time in milliseconds to learn one episode and sort its queries. `pkg-scripts/bench` draws the episodes and makes the
 //! table.
 
@@ -11,10 +11,11 @@ use std::{
     error::Error,
     fs::File,
     io::{BufRead, BufReader},
+    sync::Arc,
     time::Instant,
 };
 
-use kenspeckle::{LearnerKind, Prior, Settings, Sorter, Space, Support};
+use kenspeckle::{LearnerKind, Prior, Settings, Sorter, Space, Starter, Support};
 use ndarray::{Array2, Axis};
 use serde::{Deserialize, Serialize};
 
@@ -47,7 +48,7 @@ fn main() -> Outcome<()> {
     // Cargo adds `--bench`.
     let (flags, paths): (Vec<_>, Vec<_>) = std::env::args().skip(1).partition(|argument| argument.starts_with("--"));
     let [vectors, episodes] = paths.as_slice() else {
-        return Err("usage: episodes VECTORS.npy EPISODES.jsonl [--non-negative]".into());
+        return Err("usage: episodes VECTORS.npy EPISODES.jsonl [--non-negative] [--starter=FILE]".into());
     };
     let vectors: Array2<f32> = ndarray_npy::read_npy(vectors)?;
     let space = Space::new(vectors.ncols(), flags.iter().any(|flag| flag == "--non-negative"))?;
@@ -61,10 +62,22 @@ fn main() -> Outcome<()> {
     let header: Header = serde_json::from_str(&lines.next().ok_or("the file of episodes is empty")??)?;
     let episodes = lines.map(|line| Ok(serde_json::from_str(&line?)?)).collect::<Outcome<Vec<Episode>>>()?;
 
+    let starter = match flags.iter().find_map(|flag| flag.strip_prefix("--starter=")) {
+        Some(file) => Some(Arc::new(Starter::read(&std::fs::read(file)?)?)),
+        None => None,
+    };
     let mut results: BTreeMap<&str, BTreeMap<&str, Measured>> = BTreeMap::new();
     for kind in LearnerKind::ALL {
         let alone = measure(&episodes, |episode| one_by_one(kind, &places, episode, header.way))?;
-        let together = measure(&episodes, |episode| in_the_pile(kind, space, &vectors, episode, header.way))?;
+        let settings = Settings { encoder: "benchmark".into(), space, learner: kind, seed: 1 };
+        let plain = Sorter::new(settings.clone());
+        let together = measure(&episodes, |episode| in_the_pile(plain.clone(), &vectors, episode, header.way))?;
+        if let Some(starter) = &starter {
+            let settings = Settings { encoder: starter.encoder().into(), ..settings };
+            let started = Sorter::with_starter(settings, starter.clone())?;
+            let helped = measure(&episodes, |episode| in_the_pile(started.clone(), &vectors, episode, header.way))?;
+            results.entry("in the pile, with a starter").or_default().insert(kind.name(), helped);
+        }
         results.entry("one by one").or_default().insert(kind.name(), alone);
         results.entry("in the pile").or_default().insert(kind.name(), together);
     }
@@ -105,13 +118,11 @@ fn one_by_one(kind: LearnerKind, places: &Array2<f32>, episode: &Episode, way: u
 }
 
 fn in_the_pile(
-    kind: LearnerKind,
-    space: Space,
+    mut sorter: Sorter,
     vectors: &Array2<f32>,
     episode: &Episode,
     way: usize,
 ) -> Outcome<(Vec<Vec<f64>>, f64)> {
-    let mut sorter = Sorter::new(Settings { encoder: "benchmark".into(), space, learner: kind, seed: 1 });
     for &row in episode.support.iter().chain(&episode.query) {
         sorter.add_item(&vectors.row(row).to_vec())?;
     }

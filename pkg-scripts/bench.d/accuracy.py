@@ -1,6 +1,9 @@
 """How well each learner sorts, beside scikit-learn on the same episodes."""
 
+import csv
 import json
+import subprocess
+import time
 
 import numpy as np
 
@@ -13,7 +16,10 @@ CONDITIONS = [("icons-test", 1), ("icons-test", 5), ("stamps", 1), ("stamps", 5)
 TITLES = {"icons-test": "drawn icons", "stamps": "stamps"}
 WAY = 5
 LEARNERS = ["prototype", "ridge", "gradient", "auto"]
-MODES = ["one by one", "in the pile"]
+STARTED = "in the pile, with a starter"
+MODES = ["one by one", "in the pile", STARTED]
+# What the starter learns from: names that no benchmark sorts.
+PAST = "icons-learn"
 # What Auto is compared with: (how Auto sorts, the spaces that scikit-learn is given).
 COMPARISONS = {
     "both one by one": ("one by one", references.ONE_BY_ONE),
@@ -28,10 +34,26 @@ def interval(values):
     return float(values.mean()), float(1.96 * values.std(ddof=1) / len(values) ** 0.5)
 
 
-def measure(name, shot, count, seed, say):
+def starter(say):
+    """The starter from the drawn icons that are not held out."""
+    embed.vectors_of(PAST, say)
+    say(f"learning a starter from {PAST}")
+    vectors, labels = sets.VECTORS / f"{PAST}.npy", sets.DATA / "bench" / f"{PAST}.labels.csv"
+    file = labels.with_name(f"{PAST}.starter")
+    labels.parent.mkdir(parents=True, exist_ok=True)
+    with open(labels, "w", newline="", encoding="utf-8") as out:
+        csv.writer(out).writerows([category] for category in sets.read_categories(PAST))
+    embed.build(say)
+    start = time.perf_counter()
+    subprocess.run([embed.PROGRAM, "learn", vectors, "--labels", labels, "--out", file], check=True, capture_output=True)
+    return file, time.perf_counter() - start
+
+
+def measure(name, shot, count, seed, file, say):
     path, header, _ = episodes.write(name, WAY, shot, count, seed)
     say(f"{name} {WAY}-way {shot}-shot: {count} episodes")
     flags = ["--non-negative"] if sets.ALL[name].non_negative else []
+    flags.append(f"--starter={file}")
     vectors = sets.VECTORS / f"{name}.npy"
     ours = json.loads(embed.cargo(["bench", "--features", "cli", "--bench", "episodes", "--", str(vectors), str(path), *flags]))
     theirs = references.run(path, list(references.SPACES), say=say)
@@ -45,6 +67,9 @@ def measure(name, shot, count, seed, say):
         others |= {f"{method}; {space}": measured for space, methods in theirs.items() for method, measured in methods.items()}
         # A method may have had only the first episodes.
         summary["auto_minus"][mode] = {name: interval(100 * (auto[: len(one["accuracy"])] - one["accuracy"])) for name, one in others.items()}
+    summary["starter_minus_none"] = {
+        name: interval(100 * (np.array(ours[STARTED][name]["accuracy"]) - ours["in the pile"][name]["accuracy"])) for name in LEARNERS
+    }
     for comparison, (mode, spaces) in COMPARISONS.items():
         rivals = [f"{method}; {space}" for space in spaces for method in theirs[space]]
         # Chosen in hindsight, which favours scikit-learn.
@@ -86,7 +111,7 @@ def table(summaries):
     text += "Percent right, ± half the 95 % interval of the mean over episodes. Both sides sort the same episodes "
     text += f"(shrunk LDA, which takes long, the first {references.FIRST_EPISODES['shrunk LDA']}).\n"
     text += "One by one: no item knows of the others. In the pile: the sorter as it is used; its pile is the episode's items,\n"
-    text += "as many of each category. Pile-centred: scikit-learn given items seen from the mean of that pile.\n\n"
+    text += "as many of each category. With a starter: the same, after `kenspeckle learn` on drawn icons of other names. Pile-centred: scikit-learn given items seen from the mean of that pile.\n\n"
     text += rows(lambda n: f"{n['accuracy']:.1f} ± {n['accuracy_half_interval']:.1f}" if n else "–")
     text += "\n## Auto minus the others, on the same episodes\n\n"
     text += "Points, ± half the 95 % interval of the paired difference. The best of scikit-learn is chosen for each column in hindsight.\n\n" + head
@@ -98,6 +123,10 @@ def table(summaries):
     for comparison, (mode, _) in COMPARISONS.items():
         best = [(s["auto_minus"][mode][s["best"][comparison]], s["best"][comparison]) for s in summaries]
         text += row([f"**best of scikit-learn**, {comparison}", *(f"**{difference(pair)}** ({name})" for pair, name in best)])
+    text += "\n## What a starter from other drawn icons adds, in the pile\n\n"
+    text += "Points, ± half the 95 % interval of the paired difference.\n\n" + head
+    for name in LEARNERS:
+        text += row([f"Kenspeckle {name}", *(difference(s["starter_minus_none"][name]) for s in summaries)])
     text += "\n## Log loss of the probabilities (nats, lower is better)\n\n"
     text += rows(lambda n: f"{n['log_loss']:.3f} ± {n['log_loss_half_interval']:.3f}" if n and "log_loss" in n else "–")
     text += "\n## Time to learn one episode and sort its queries (median, ms)\n\n"
@@ -108,6 +137,9 @@ def run(count, seed, say):
     """Measures every condition: (numbers, Markdown)."""
     for name in dict.fromkeys(name for name, _ in CONDITIONS):
         embed.vectors_of(name, say)
-    summaries = [measure(name, shot, count, seed, say) for name, shot in CONDITIONS]
+    file, seconds = starter(say)
+    summaries = [measure(name, shot, count, seed, file, say) for name, shot in CONDITIONS]
     versions = f"scikit-learn {references.sklearn.__version__}, numpy {np.__version__}"
-    return {"libraries": versions, "conditions": summaries}, table(summaries) + f"\nReference: {versions}.\n"
+    learned = {"set": PAST, "bytes": file.stat().st_size, "seconds": seconds}
+    text = table(summaries) + f"\nThe starter has {learned['bytes']:,} bytes and took {seconds:.1f} s to learn from the vectors of {PAST}.\n"
+    return {"libraries": versions, "starter": learned, "conditions": summaries}, text + f"\nReference: {versions}.\n"
