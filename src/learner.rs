@@ -18,9 +18,12 @@ pub use auto::Auto;
 pub use calibrate::{calibrate, log_loss};
 pub use gradient::Gradient;
 pub use prototype::Prototype;
-pub use ridge::{DUAL_LIMIT, Ridge};
+pub use ridge::Ridge;
 
 use crate::{head::Head, prior::Prior, support::Support};
+
+/// Up to this many examples, or two of each category, every one is judged by leaving it out.
+pub const JUDGED_LIMIT: usize = 200;
 
 /// Learns a head from examples.
 pub trait Learner {
@@ -73,6 +76,17 @@ impl LeftOut {
         self.logits *= factor;
         self
     }
+
+    /// The same for the examples with these numbers among `examples`; the others are unknown.
+    fn placed(&self, members: &[usize], examples: usize) -> Self {
+        let mut placed = Self::unknown(examples, self.logits.ncols());
+        for (position, &example) in members.iter().enumerate() {
+            if let Some(logits) = self.get(position) {
+                placed.set(example, &logits.to_owned());
+            }
+        }
+        placed
+    }
 }
 
 /// Which learner to use.
@@ -106,14 +120,78 @@ impl LearnerKind {
 
     /// Learns with this kind of learner and calibrates the result: the head's probabilities are meant to be taken at
     /// their word.
+    ///
+    /// Beyond [`JUDGED_LIMIT`] examples a spread-out part of about that size decides on everything that leave-one-out
+    /// decides, and the head is then fitted to all of them; only the gradient learner keeps to the part.
     pub fn learn(self, support: &Support, prior: &Prior) -> Learned {
+        let limit = JUDGED_LIMIT.max(2 * support.categories());
+        if support.len() <= limit {
+            return self.judge(support, prior).0;
+        }
+        let (part, members) = support.spread(limit);
+        let (judged, recipes) = self.judge(&part, prior);
+        let heads: Vec<Head> = recipes.into_iter().map(|recipe| recipe.fit(prior, &part, support)).collect();
+        let head = Head::mixed(heads.iter().map(|head| (head, 1.0))).expect("every kind has a recipe");
+        Learned { head, left_out: judged.left_out.placed(&members, support.len()) }
+    }
+
+    fn judge(self, support: &Support, prior: &Prior) -> (Learned, Vec<Recipe>) {
+        let (learned, recipe) = match self {
+            Self::Auto => return Auto { prior }.judge(support),
+            Self::Prototype => Recipe::prototype(prior, support),
+            Self::Ridge => Recipe::ridge(prior, support),
+            Self::Gradient => Recipe::gradient(prior, support),
+        };
+        (learned, vec![recipe])
+    }
+}
+
+/// What leave-one-out decided about a learner: enough to fit it to more examples without judging again.
+#[derive(Debug, Clone)]
+enum Recipe {
+    Prototype { factor: f64 },
+    Ridge { strength: f64, factor: f64 },
+    Gradient { head: Head },
+}
+
+impl Recipe {
+    fn prototype(prior: &Prior, support: &Support) -> (Learned, Self) {
+        let learned = prior.prototype().learn(support);
+        let (learned, factor) = calibrate(learned, support, prior.prototype_temperature(support));
+        (learned, Self::Prototype { factor })
+    }
+
+    fn ridge(prior: &Prior, support: &Support) -> (Learned, Self) {
+        let (learned, strength) = prior.ridge().learn_with_strength(support);
+        let (learned, factor) = calibrate(learned, support, prior.ridge_temperature(support, strength));
+        (learned, Self::Ridge { strength, factor })
+    }
+
+    fn gradient(prior: &Prior, support: &Support) -> (Learned, Self) {
+        let (learned, _) = calibrate(prior.gradient().learn(support), support, 1.0);
+        let head = learned.head.clone();
+        (learned, Self::Gradient { head })
+    }
+
+    /// The same with logits multiplied by `by`.
+    fn scaled(self, by: f64) -> Self {
         match self {
-            Self::Auto => Auto { prior }.learn(support),
-            Self::Prototype => {
-                calibrate(prior.prototype().learn(support), support, prior.prototype_temperature(support))
+            Self::Prototype { factor } => Self::Prototype { factor: factor * by },
+            Self::Ridge { strength, factor } => Self::Ridge { strength, factor: factor * by },
+            Self::Gradient { head } => Self::Gradient { head: head.scaled(by) },
+        }
+    }
+
+    /// Fits to all examples what was decided on a part of them.
+    fn fit(self, prior: &Prior, part: &Support, support: &Support) -> Head {
+        match self {
+            Self::Prototype { factor } => {
+                // Distances shrink as prototypes become means of more examples.
+                let growth = prior.prototype_temperature(support) / prior.prototype_temperature(part);
+                prior.prototype().fit(support).scaled(factor * growth)
             }
-            Self::Ridge => prior.ridge().calibrated(support),
-            Self::Gradient => calibrate(prior.gradient().learn(support), support, 1.0),
+            Self::Ridge { strength, factor } => Ridge::fit(support, strength).scaled(factor),
+            Self::Gradient { head } => head,
         }
     }
 }

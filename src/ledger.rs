@@ -182,8 +182,12 @@ impl Ledger {
         for &item in items {
             self.present(item)?;
         }
-        let changes = items.iter().map(|&item| Change::Answered { item, from: self.answers[item], to }).collect();
-        self.record(Action::Answer, changes);
+        let change = |&item: &usize| Change::Answered { item, from: self.answers[item], to };
+        let moved = |item: &&usize| self.answers[**item] != to;
+        let changes: Vec<Change> = items.iter().filter(moved).map(change).collect();
+        if !changes.is_empty() {
+            self.record(Action::Answer, changes);
+        }
         Ok(())
     }
 

@@ -114,9 +114,36 @@ impl Support {
         coefficients
     }
 
+    /// Every category's mean, C × d. Cost O(n d).
+    pub fn means(&self) -> Array2<f64> {
+        let mut means = Array2::zeros((self.categories(), self.dimension()));
+        for (example, &label) in self.labels.iter().enumerate() {
+            let share = 1.0 / self.counts[label] as f64;
+            means.row_mut(label).iter_mut().zip(self.embedding(example)).for_each(|(m, &x)| *m += share * f64::from(x));
+        }
+        means
+    }
+
     /// Examples a category, on average (≥ 1).
     pub fn shot(&self) -> f64 {
         self.len() as f64 / self.categories() as f64
+    }
+
+    /// At most about `size` examples (two of every category that has them, whatever the size), spread evenly over the
+    /// categories and over each category's order; and their numbers here.
+    pub fn spread(&self, size: usize) -> (Self, Vec<usize>) {
+        let quota = (size / self.categories()).max(2);
+        let mut own = vec![Vec::new(); self.categories()];
+        self.labels.iter().enumerate().for_each(|(example, &label)| own[label].push(example));
+        let mut members = Vec::new();
+        for own in own {
+            let take = quota.min(own.len());
+            members.extend((0..take).map(|k| own[k * own.len() / take]));
+        }
+        let labels = members.iter().map(|&i| self.labels[i]).collect();
+        let rows = self.embeddings.select(ndarray::Axis(0), &members);
+        let part = Self::new(rows, labels, self.categories()).expect("part of a support set with every category in it");
+        (part, members)
     }
 
     /// The support set without one example, or `None` where its category would be left empty.

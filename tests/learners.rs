@@ -122,18 +122,41 @@ fn degenerate_examples_give_finite_answers() {
     }
 }
 
-/// With many examples the fit moves from n × n to d × d; both are the same minimum.
-#[test]
-fn ridge_in_either_form_is_the_same_fit() {
-    let n = kenspeckle::learner::DUAL_LIMIT + 40;
-    let rows = Array2::from_shape_fn((n, 6), |(i, j)| {
+fn many(n: usize, dimension: usize) -> Support {
+    let rows = Array2::from_shape_fn((n, dimension), |(i, j)| {
         (((i * 31 + j * 17) % 101) as f32 / 50.0 - 1.0) + (i % 3 == j) as u8 as f32
     });
-    let labels: Vec<usize> = (0..n).map(|i| i % 3).collect();
-    let support = Support::new(rows.clone(), labels, 3).unwrap();
+    Support::new(rows, (0..n).map(|i| i % 3).collect(), 3).unwrap()
+}
+
+/// In n × n or in d × d, with leave-one-out or without: the same minimum.
+#[test]
+fn ridge_in_every_form_is_the_same_fit() {
+    for (n, dimension) in [(30, 6), (30, 29), (30, 30), (30, 45)] {
+        let support = many(n, dimension);
+        for strength in [0.03, 0.3, 3.0] {
+            let judged = Ridge::learn_at(&support, strength).head.logits(support.embeddings());
+            let alone = Ridge::fit(&support, strength).logits(support.embeddings());
+            assert!((&judged - &alone).iter().all(|x| x.abs() < 1e-4), "{n} × {dimension} at {strength}");
+        }
+    }
+}
+
+/// Where a part of the examples decides for all, the result must be as good as where all decide.
+#[test]
+fn many_examples_are_learned_from_as_few_are() {
     let prior = Prior::default();
-    let (large, strength) = Ridge { prior: &prior }.learn_with_strength(&support);
-    let dual = Ridge::learn_at(&support, strength);
-    let (a, b) = (large.head.logits(rows.view()), dual.head.logits(rows.view()));
-    assert!((&a - &b).iter().all(|x| x.abs() < 1e-4));
+    let (limit, queries) = (kenspeckle::learner::JUDGED_LIMIT, many(90, 12));
+    for kind in LearnerKind::ALL {
+        let right = |n: usize| {
+            let probabilities = kind.learn(&many(n, 12), &prior).head.probabilities(queries.embeddings());
+            let best = |row: ndarray::ArrayView1<f64>| kenspeckle::arithmetic::arg_max(row.iter()).unwrap();
+            (0..90).filter(|&i| best(probabilities.row(i)) == queries.labels()[i]).count()
+        };
+        let (below, above) = (right(limit - limit % 3), right(3 * limit));
+        assert!(above + 3 >= below, "{kind:?}: {above} right with many examples, {below} with fewer");
+    }
+    let learned = LearnerKind::Auto.learn(&many(3 * limit, 12), &prior);
+    let known = (0..3 * limit).filter(|&i| learned.left_out.get(i).is_some()).count();
+    assert!((limit - 3..=limit).contains(&known), "{known} examples judged");
 }

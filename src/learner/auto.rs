@@ -6,7 +6,7 @@
 //!
 //! Cost: the sum of the members' and O(66 n C) exponentials.
 
-use super::{Learned, Learner, LeftOut, calibrate, log_loss};
+use super::{Learned, LeftOut, Recipe, calibrate, log_loss};
 use crate::{head::Head, prior::Prior, support::Support};
 
 /// Shares are multiples of one in this many.
@@ -19,19 +19,17 @@ pub struct Auto<'a> {
     pub prior: &'a Prior,
 }
 
-impl Learner for Auto<'_> {
-    /// Learned and calibrated.
-    fn learn(&self, support: &Support) -> Learned {
-        let prior = self.prior;
-        let members = [
-            calibrate(prior.prototype().learn(support), support, prior.prototype_temperature(support)),
-            prior.ridge().calibrated(support),
-            calibrate(prior.gradient().learn(support), support, 1.0),
-        ];
+impl Auto<'_> {
+    /// Learned and calibrated, with what it takes to fit the same mix to other examples.
+    pub(super) fn judge(&self, support: &Support) -> (Learned, Vec<Recipe>) {
+        let judged = [Recipe::prototype, Recipe::ridge, Recipe::gradient].map(|judge| judge(self.prior, support));
+        let recipes = judged.each_ref().map(|(_, recipe)| recipe.clone());
+        let members = judged.map(|(learned, _)| learned);
         let shares = self.shares(&members, support);
         let head = Head::mixed(members.iter().map(|m| &m.head).zip(shares)).expect("there are members");
-        let left_out = mix(&members, &shares);
-        calibrate(Learned { head, left_out }, support, 1.0)
+        let (learned, factor) = calibrate(Learned { head, left_out: mix(&members, &shares) }, support, 1.0);
+        let recipes = recipes.into_iter().zip(shares).map(|(recipe, share)| recipe.scaled(share * factor)).collect();
+        (learned, recipes)
     }
 }
 

@@ -25,10 +25,10 @@ pub fn log_loss(left_out: &LeftOut, support: &Support, factor: f64) -> (f64, usi
     if known == 0 { (0.0, 0) } else { (sum / weight_sum * known as f64, known) }
 }
 
-/// Scales a learned head to the temperature that fits its leave-one-out logits, starting from `guess`.
-pub fn calibrate(learned: Learned, support: &Support, guess: f64) -> Learned {
+/// Scales a learned head to the temperature that fits its leave-one-out logits, starting from `guess`; and the factor.
+pub fn calibrate(learned: Learned, support: &Support, guess: f64) -> (Learned, f64) {
     let factor = temperature(&learned.left_out, support, guess);
-    Learned { head: learned.head.scaled(factor), left_out: learned.left_out.scaled(factor) }
+    (Learned { head: learned.head.scaled(factor), left_out: learned.left_out.scaled(factor) }, factor)
 }
 
 /// The factor itself, between `guess`/20 and 20 · `guess`.

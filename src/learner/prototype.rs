@@ -9,7 +9,7 @@
 //!
 //! Snell, Swersky, Zemel 2017 (arXiv:1703.05175).
 
-use ndarray::{Array1, Array2};
+use ndarray::{Array1, Array2, Axis};
 
 use super::{Learned, Learner, LeftOut};
 use crate::{arithmetic, head::Head, support::Support};
@@ -25,18 +25,6 @@ impl Prototype {
     fn trust(&self, count: usize) -> f64 {
         let count = count as f64;
         count / (count + self.shrinkage)
-    }
-
-    /// n × C coefficients whose combination of the examples gives the prototypes.
-    pub(crate) fn coefficients(&self, support: &Support) -> Array2<f64> {
-        let means = support.mean_coefficients();
-        let common = means.mean_axis(ndarray::Axis(1)).expect("a support set has categories");
-        let mut coefficients = means;
-        for (c, mut column) in coefficients.axis_iter_mut(ndarray::Axis(1)).enumerate() {
-            let trust = self.trust(support.counts()[c]);
-            column.zip_mut_with(&common, |x, &m| *x = m + trust * (*x - m));
-        }
-        coefficients
     }
 }
 
@@ -68,25 +56,26 @@ impl Products {
 
 /// Squared distances of examples from their category's mean, summed, and how many of them are free.
 #[derive(Clone, Copy)]
-pub(super) struct Scatter {
+struct Scatter {
     sum: f64,
     freedom: usize,
 }
 
 impl Scatter {
-    /// The scatter of the whole support set. Cost O(n²) once the inner products are known.
-    pub(super) fn of(support: &Support) -> Self {
-        let gram = support.gram();
-        let mut within = gram.diag().sum();
-        for (i, &label) in support.labels().iter().enumerate() {
-            let own: f64 = (0..support.len()).filter(|&j| support.labels()[j] == label).map(|j| gram[[i, j]]).sum();
-            within -= own / support.counts()[label] as f64;
-        }
-        Self { sum: within.max(0.0), freedom: support.len() - support.categories() }
+    /// The scatter of the whole support set around its category means (C × d). Cost O(n d).
+    fn around(means: &Array2<f64>, support: &Support) -> Self {
+        let sum = support
+            .labels()
+            .iter()
+            .enumerate()
+            .flat_map(|(i, &label)| support.embedding(i).iter().zip(means.row(label).to_vec()))
+            .map(|(&x, mean)| (f64::from(x) - mean).powi(2))
+            .sum();
+        Self { sum, freedom: support.len() - support.categories() }
     }
 
     /// s²; 0 where every category has one example, and then it would make no difference.
-    pub(super) fn variance(self) -> f64 {
+    fn variance(self) -> f64 {
         if self.freedom == 0 { 0.0 } else { self.sum / self.freedom as f64 }
     }
 
@@ -99,17 +88,27 @@ impl Scatter {
 
 impl Learner for Prototype {
     fn learn(&self, support: &Support) -> Learned {
-        let prototypes = support.combine(&self.coefficients(support));
-        let mut bias = prototypes.map_axis(ndarray::Axis(1), |p| -p.iter().map(|&x| f64::from(x).powi(2)).sum::<f64>());
-        let variance = Scatter::of(support).variance();
-        for (c, bias) in bias.iter_mut().enumerate() {
-            *bias += self.trust(support.counts()[c]).powi(2) * variance / support.counts()[c] as f64;
-        }
-        Learned { head: Head::new(prototypes.mapv(|x| 2.0 * x), bias), left_out: self.leave_one_out(support) }
+        Learned { head: self.fit(support), left_out: self.leave_one_out(support) }
     }
 }
 
 impl Prototype {
+    /// The head alone. Cost O(n d).
+    pub fn fit(&self, support: &Support) -> Head {
+        let means = support.means();
+        let common = means.mean_axis(Axis(0)).expect("a support set has categories");
+        let mut bias = Array1::zeros(support.categories());
+        let variance = Scatter::around(&means, support).variance();
+        let prototypes = Array2::from_shape_fn(means.dim(), |(c, j)| {
+            common[j] + self.trust(support.counts()[c]) * (means[[c, j]] - common[j])
+        });
+        for (c, bias) in bias.iter_mut().enumerate() {
+            let square: f64 = prototypes.row(c).iter().map(|x| x * x).sum();
+            *bias = self.trust(support.counts()[c]).powi(2) * variance / support.counts()[c] as f64 - square;
+        }
+        Head::new(prototypes.mapv(|x| (2.0 * x) as f32), bias)
+    }
+
     /// The logits of every example by the prototypes of the others, in closed form.
     fn leave_one_out(&self, support: &Support) -> LeftOut {
         let (n, categories) = (support.len(), support.categories());
@@ -117,8 +116,8 @@ impl Prototype {
         let means = support.mean_coefficients();
         let with_means = arithmetic::times(gram, &means);
         let between = arithmetic::times(&means.t().to_owned(), &with_means);
-        let common = between.mean_axis(ndarray::Axis(1)).expect("a support set has categories");
-        let scatter = Scatter::of(support);
+        let common = between.mean_axis(Axis(1)).expect("a support set has categories");
+        let scatter = Scatter::around(&support.means(), support);
         let mut left_out = LeftOut::unknown(n, categories);
         for i in 0..n {
             let label = support.labels()[i];

@@ -13,14 +13,14 @@
 //! example left out also lowers n_c for the others of its category; a correction of rank n_c makes the closed form exactly
 //! the refit. λ is chosen among six by leave-one-out log loss, from the prior's own guess downhill.
 //!
-//! Use it from about two examples a category. Cost O(n² d + n³) for n examples up to [`DUAL_LIMIT`]; beyond, λ and the
-//! temperature come from a spread-out subset of that size and the fit is done in d × d: O(n d² + d³).
+//! Use it from about two examples a category. Learning with leave-one-out costs O(n² d + n³) a strength, the head alone
+//! O(n² d + n³/3) or, with more examples than dimensions, O(n d² + d³/3).
 //!
 //! R2-D2: Bertinetto et al. 2019 (arXiv:1805.08136).
 
 use ndarray::{Array1, Array2, Axis};
 
-use super::{Learned, Learner, LeftOut, calibrate, calibrate::temperature, log_loss};
+use super::{Learned, Learner, LeftOut, calibrate::temperature, log_loss};
 use crate::{
     arithmetic::{self, Cholesky},
     head::Head,
@@ -33,9 +33,6 @@ const STRENGTHS: [f64; 6] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0];
 
 /// How sure the prior's strength is: the standard deviation of its logarithm.
 const STRENGTH_SPREAD: f64 = 1.5;
-
-/// The largest support set that is solved in n × n.
-pub const DUAL_LIMIT: usize = 500;
 
 /// The ridge learner.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -59,31 +56,22 @@ impl Learner for Ridge<'_> {
 }
 
 impl Ridge<'_> {
-    /// Learns and scales the result so that its probabilities fit.
-    pub(crate) fn calibrated(&self, support: &Support) -> Learned {
-        let (learned, strength) = self.learn_with_strength(support);
-        calibrate(learned, support, self.prior.ridge_temperature(support, strength))
-    }
-
     /// Learns, and says which strength was chosen.
     pub fn learn_with_strength(&self, support: &Support) -> (Learned, f64) {
-        if support.len() > DUAL_LIMIT {
-            return self.learn_large(support);
-        }
         let (solution, strength) = self.choose(support);
-        (
-            Learned {
-                head: Head::new(support.combine(&solution.coefficients), solution.bias),
-                left_out: solution.left_out,
-            },
-            strength,
-        )
+        let head = Head::new(support.combine(&solution.coefficients), solution.bias);
+        (Learned { head, left_out: solution.left_out }, strength)
     }
 
-    /// Learns at a given strength λ > 0, with the exact leave-one-out logits (at most [`DUAL_LIMIT`] examples).
+    /// Learns at a given strength λ > 0, with the exact leave-one-out logits.
     pub fn learn_at(support: &Support, strength: f64) -> Learned {
         let solution = solve(support, strength);
         Learned { head: Head::new(support.combine(&solution.coefficients), solution.bias), left_out: solution.left_out }
+    }
+
+    /// The head alone at a given strength λ > 0: in n × n or in d × d, whichever is smaller.
+    pub fn fit(support: &Support, strength: f64) -> Head {
+        if support.len() <= support.dimension() { fit_dual(support, strength) } else { fit_primal(support, strength) }
     }
 
     fn choose(&self, support: &Support) -> (Solution, f64) {
@@ -113,19 +101,6 @@ impl Ridge<'_> {
         }
         (best.2, best.3)
     }
-
-    /// The strength from a subset, the fit from everything.
-    fn learn_large(&self, support: &Support) -> (Learned, f64) {
-        let (subset, members) = spread_subset(support, DUAL_LIMIT.max(2 * support.categories()));
-        let (solution, strength) = self.choose(&subset);
-        let mut left_out = LeftOut::unknown(support.len(), support.categories());
-        for (position, &example) in members.iter().enumerate() {
-            if let Some(logits) = solution.left_out.get(position) {
-                left_out.set(example, &logits.to_owned());
-            }
-        }
-        (Learned { head: fit_primal(support, strength), left_out }, strength)
-    }
 }
 
 fn targets(support: &Support) -> Array2<f64> {
@@ -140,11 +115,7 @@ fn targets(support: &Support) -> Array2<f64> {
 fn solve(support: &Support, strength: f64) -> Solution {
     let penalty = strength / support.shot();
     let n = support.len();
-    let mut matrix = support.gram().clone();
-    for (i, &label) in support.labels().iter().enumerate() {
-        matrix[[i, i]] += penalty * support.counts()[label] as f64;
-    }
-    let mut inverse = positive_definite(matrix).solve(&Array2::eye(n));
+    let mut inverse = positive_definite(penalised(support, penalty)).solve(&Array2::eye(n));
     let sums = inverse.sum_axis(Axis(1));
     let total = sums.sum();
     for i in 0..n {
@@ -198,6 +169,29 @@ fn leave_one_out(
     left_out
 }
 
+/// The same minimum without leave-one-out: one factorisation and C + 1 solves.
+fn fit_dual(support: &Support, strength: f64) -> Head {
+    let n = support.len();
+    let factor = positive_definite(penalised(support, strength / support.shot()));
+    let targets = targets(support);
+    let mut coefficients = factor.solve(&targets);
+    let sums = factor.solve(&Array2::ones((n, 1))).column(0).to_owned();
+    let bias = sums.dot(&targets) / sums.sum();
+    for (c, mut column) in coefficients.axis_iter_mut(Axis(1)).enumerate() {
+        column.scaled_add(-bias[c], &sums);
+    }
+    Head::new(support.combine(&coefficients), bias)
+}
+
+/// K + μ N.
+fn penalised(support: &Support, penalty: f64) -> Array2<f64> {
+    let mut matrix = support.gram().clone();
+    for (i, &label) in support.labels().iter().enumerate() {
+        matrix[[i, i]] += penalty * support.counts()[label] as f64;
+    }
+    matrix
+}
+
 /// The same minimum by the normal equations in d × d, for many examples.
 fn fit_primal(support: &Support, strength: f64) -> Head {
     let penalty = strength / support.shot();
@@ -226,20 +220,4 @@ fn fit_primal(support: &Support, strength: f64) -> Head {
     let weights = positive_definite(scatter).solve(&moments);
     let bias = -mean.dot(&weights);
     Head::new(weights.t().mapv(|w| w as f32), bias)
-}
-
-/// At most about `size` examples, spread evenly over the categories and over each category's order.
-fn spread_subset(support: &Support, size: usize) -> (Support, Vec<usize>) {
-    let quota = (size / support.categories()).max(2);
-    let mut members = Vec::new();
-    for c in 0..support.categories() {
-        let own: Vec<usize> = (0..support.len()).filter(|&i| support.labels()[i] == c).collect();
-        let take = quota.min(own.len());
-        members.extend((0..take).map(|k| own[k * own.len() / take]));
-    }
-    let labels = members.iter().map(|&i| support.labels()[i]).collect();
-    let rows = support.embeddings().select(Axis(0), &members);
-    let subset =
-        Support::new(rows, labels, support.categories()).expect("part of a support set with every category in it");
-    (subset, members)
 }
