@@ -11,14 +11,13 @@
 //! | [`learner`] | nearest prototype, ridge, a few gradient steps, and the mix of them |
 //! | [`head`] | what is learned: one logit a category |
 //! | [`prior`] | what is known before the first example |
-//! | [`meta`] | learning from past piles |
 //! | [`starter`] | what past piles taught, as one file |
 //! | [`whitening`] | how past categories scattered, taken out of the space |
 //! | [`pile`] | the items and their centre |
 //! | [`ask`] | which item's answer helps most |
 //! | [`ledger`] | trays and answers, with undo and redo |
 //! | [`sorter`] | the façade |
-//! | [`meta`] | small tasks drawn from labelled material, and rehearsing on them |
+//! | [`meta`] | sums over past piles, small tasks drawn from labelled material, and rehearsing on them |
 //!
 //! The same input gives the same bits natively and in WebAssembly: sums run in one fixed order ([`arithmetic`]).
 
