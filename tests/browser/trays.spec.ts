@@ -65,3 +65,70 @@ test('an item can be zoomed, taken out and brought back', async ({ page, site })
   await page.keyboard.press('u');
   await expect(page.getByText('12 photos', { exact: true })).toBeVisible();
 });
+
+test('keys answer for the item in the frame, whatever was clicked or dragged before', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  const answeredIn = (tray: string) => bench.shelf(tray).getByRole('button', { name: /your answer/ });
+  const tile = (item: string) => page.locator('ken-shelves').getByRole('button', { name: item });
+  const mine = await answeredIn('First').getAttribute('title');
+  const clicked = mine?.split(',')[0] ?? '';
+
+  await tile(clicked).click();
+  await expect(bench.picture).toHaveAttribute('alt', clicked);
+  await page.keyboard.press('2');
+  await bench.nextAfter(clicked);
+  const second = await bench.inHand();
+  await page.keyboard.press('1');
+  await bench.nextAfter(second);
+  await expect(tile(clicked)).toHaveAttribute('title', `${clicked}, Second, your answer`);
+  await expect(tile(second)).toHaveAttribute('title', `${second}, First, your answer`);
+
+  await tile(clicked).dragTo(bench.shelf('First'));
+  await expect(tile(clicked)).toHaveAttribute('title', `${clicked}, First, your answer`);
+  for (const [key, shelf] of [['2', 'Second'], ['n', 'Set aside']] as const) {
+    const item = await bench.inHand();
+    expect(item).not.toBe(clicked);
+    await page.keyboard.press(key);
+    await bench.nextAfter(item);
+    await expect(tile(item)).toHaveAttribute('title', new RegExp(`^${item}, ${shelf}, `));
+  }
+  const skipped = await bench.inHand();
+  await page.keyboard.press('c');
+  await bench.nextAfter(skipped);
+  const removed = await bench.inHand();
+  await page.keyboard.press('Delete');
+  await bench.nextAfter(removed);
+  await expect(tile(removed)).toHaveCount(0);
+  await expect(tile(clicked)).toHaveAttribute('title', `${clicked}, First, your answer`);
+
+  // Brought to a tile by keys, they mean that tile, once.
+  await page.keyboard.press('ArrowRight');
+  await tile(clicked).focus();
+  await page.keyboard.press('2');
+  await expect(tile(clicked)).toHaveAttribute('title', `${clicked}, Second, your answer`);
+  const last = await bench.inHand();
+  await page.keyboard.press('1');
+  await bench.nextAfter(last);
+  await expect(tile(clicked)).toHaveAttribute('title', `${clicked}, Second, your answer`);
+});
+
+test('a key that is held down acts once', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  const { keyboard } = page;
+  const item = await bench.inHand();
+  // Playwright sends the second and every further one as a repetition.
+  for (let times = 0; times < 5; times++) await keyboard.down('n');
+  await keyboard.up('n');
+  await bench.nextAfter(item);
+  await expect(bench.shelf('Set aside').getByRole('button', { name: /set aside by you/ })).toHaveCount(1);
+  for (const key of ['c', 'Delete', 'u', '1', 'Enter']) {
+    const before = await bench.inHand();
+    for (let times = 0; times < 5; times++) await keyboard.down(key);
+    await keyboard.up(key);
+    await bench.nextAfter(before);
+    await page.waitForTimeout(200);
+  }
+  // Delete was undone; what is left: two trays' answers, one by number, one by the guess.
+  await expect(page.getByText('12 photos', { exact: true })).toBeVisible();
+  await expect(page.locator('ken-shelves').getByRole('button', { name: /your answer/ })).toHaveCount(4);
+});

@@ -18,7 +18,7 @@ import { shared } from './styles';
 import './welcome';
 import { words } from './words';
 
-type Opened = { panel: 'help' | 'start-over' | 'zoom' | 'camera' } | { panel: 'tray'; tray: number; error?: string };
+type Opened = { panel: 'help' | 'start-over' | 'camera' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
 
 const SINGLE_KEYS = 'single-keys';
 /** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
@@ -153,48 +153,58 @@ export class Bench extends LitElement {
     const command = commandOf(event, this.singleKeys);
     if (!command) return;
     event.preventDefault();
-    const focused = this.#shelves?.focusedItem;
+    // A key that is held down would answer for items nobody has looked at.
+    if (event.repeat) return;
+    const keyed = this.#shelves?.keyedItem;
+    const item = keyed ?? desk.hand;
     switch (command.do) {
       case 'tray': {
         const tray = desk.snapshot.trays[command.place]?.tray;
-        if (tray === undefined || event.repeat) return;
-        if (focused === undefined) return void desk.answer(tray);
-        this.#shelves?.holdPlace();
-        return void desk.answer(tray, focused);
+        if (tray === undefined) return;
+        if (keyed !== undefined) this.#toHand();
+        return void desk.answer(tray, item);
       }
       case 'guess':
-        if (desk.guess !== undefined && !event.repeat) void desk.answer(desk.guess);
+        if (desk.guess !== undefined) void desk.answer(desk.guess);
         return;
       case 'find':
         return this.#question?.find();
       case 'none':
-        if (focused !== undefined) this.#shelves?.holdPlace();
-        return void desk.none(focused ?? desk.hand);
+        if (keyed !== undefined) this.#toHand();
+        return void desk.none(item);
       case 'skip':
-        return void desk.skip();
+        if (keyed !== undefined) this.#toHand();
+        return void desk.skip(item);
       case 'undo':
         return void desk.undo();
       case 'redo':
         return void desk.redo();
       case 'zoom':
-        return void this.#zoom();
+        return void this.#zoom(item);
       case 'back':
         return desk.backToQuestion();
       case 'remove':
-        if (focused === undefined) return;
-        this.#shelves?.holdPlace();
-        return void desk.removeItem(focused);
+        if (keyed !== undefined) this.#shelves?.holdPlace();
+        return void desk.removeItem(item);
+      case 'shelves':
+        return this.#shelves?.resume();
       case 'help':
         return this.#openPanel({ panel: 'help' });
     }
   }
 
-  async #zoom(): Promise<void> {
+  /** Keys act on the item in hand again. */
+  #toHand(): void {
+    this.#shelves?.release();
+    this.#question?.settle();
+  }
+
+  async #zoom(item = this.desk?.hand): Promise<void> {
     const { desk } = this;
-    if (desk?.hand === undefined) return;
-    const original = await desk.client.original(desk.hand);
-    this.#zoomed = original ? URL.createObjectURL(original) : undefined;
-    this.#openPanel({ panel: 'zoom' });
+    if (!desk || item === undefined) return;
+    const picture = (await desk.client.original(item)) ?? desk.items[item]?.thumbnail;
+    this.#zoomed = picture && URL.createObjectURL(picture);
+    this.#openPanel({ panel: 'zoom', item });
   }
 
   #openPanel(opened: Opened): void {
@@ -215,6 +225,8 @@ export class Bench extends LitElement {
     if (this.#zoomed) URL.revokeObjectURL(this.#zoomed);
     this.#zoomed = undefined;
     this.#returnTo?.focus();
+    // The browser gives the focus back to a tile; after a click that is not where keys should act.
+    if (this.#shelves?.matches(':focus-within') && this.#shelves.keyedItem === undefined) this.#toHand();
   }
 
   async #changeTray(change: Promise<string | undefined> | undefined): Promise<void> {
@@ -241,7 +253,10 @@ export class Bench extends LitElement {
     on<{ sources: Source[] }>('pictures', ({ sources }) => void this.#add({ sources, problems: [] }));
     on<{ tray: number }>('answer', ({ tray }) => void this.desk?.answer(tray));
     on<{ name: string }>('answer-new', ({ name }) => void this.desk?.answerNew(name));
-    on<{ item: number; tray: number }>('place', ({ item, tray }) => void (tray < 0 ? this.desk?.none(item) : this.desk?.answer(tray, item)));
+    on<{ item: number; tray: number }>('place', ({ item, tray }) => {
+      this.#toHand();
+      void (tray < 0 ? this.desk?.none(item) : this.desk?.answer(tray, item));
+    });
     on('none', () => void this.desk?.none());
     on('skip', () => void this.desk?.skip());
     on('withdraw', () => void this.desk?.withdraw());
@@ -272,6 +287,7 @@ export class Bench extends LitElement {
 
   #take(item: number): void {
     this.desk?.take(item);
+    this.#toHand();
     const calm = matchMedia('(prefers-reduced-motion: reduce)').matches;
     this.renderRoot.querySelector('.hand')?.scrollIntoView({ block: 'nearest', behavior: calm ? 'auto' : 'smooth' });
   }
@@ -386,7 +402,7 @@ export class Bench extends LitElement {
     if (!opened || !desk) return nothing;
     switch (opened.panel) {
       case 'zoom':
-        return html`<ken-zoom class="panel" .picture=${this.#zoomed ?? this.#pictureOf.url} .name=${desk.handItem?.name ?? ''}></ken-zoom>`;
+        return html`<ken-zoom class="panel" .picture=${this.#zoomed} .name=${desk.items[opened.item]?.name ?? ''}></ken-zoom>`;
       case 'start-over': {
         const loss = words.startOverLoss(desk.view?.tally.items ?? 0, desk.snapshot?.trays.length ?? 0, desk.answers);
         return html`<ken-start-over class="panel" loss=${loss}></ken-start-over>`;

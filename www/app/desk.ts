@@ -147,8 +147,8 @@ export class Desk {
     if (item !== undefined) await this.#act({ do: 'none', item }, item, words.placedAside);
   }
 
-  async skip(): Promise<void> {
-    if (this.hand !== undefined) await this.#act({ do: 'skip', item: this.hand }, this.hand, words.placedSkip);
+  async skip(item = this.hand): Promise<void> {
+    if (item !== undefined) await this.#act({ do: 'skip', item }, item, words.placedSkip);
   }
 
   async withdraw(): Promise<void> {
@@ -157,7 +157,8 @@ export class Desk {
     await this.#act({ do: 'withdraw', item }, undefined, words.withdrawn);
   }
 
-  async removeItem(item: number): Promise<void> {
+  async removeItem(item = this.hand): Promise<void> {
+    if (item === undefined) return;
     await this.#act({ do: 'remove-item', item }, item, words.takenOut(this.items[item]?.name ?? ''));
   }
 

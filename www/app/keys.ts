@@ -1,6 +1,6 @@
 export type Command =
   | { do: 'tray'; place: number }
-  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' };
+  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' };
 
 const single: Record<string, Command> = {
   enter: { do: 'guess' },
@@ -14,6 +14,8 @@ const single: Record<string, Command> = {
   delete: { do: 'remove' },
   backspace: { do: 'remove' },
   '?': { do: 'help' },
+  arrowleft: { do: 'shelves' },
+  arrowright: { do: 'shelves' },
 };
 
 /** Fields and lists have keys of their own. */

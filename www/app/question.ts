@@ -57,10 +57,24 @@ export class Question extends LitElement {
     this.#field?.select();
   }
 
-  /** Leaves the field, so that keys act again. */
+  #hadFocus = false;
+
+  /** Leaves the field and takes the focus, so that keys act on the item in hand. */
   settle(): void {
     this.text = '';
-    this.renderRoot.querySelector<HTMLElement>('h2')?.focus({ preventScroll: true });
+    const heading = this.renderRoot.querySelector<HTMLElement>('h2');
+    if (!heading) return;
+    const { top, bottom } = heading.getBoundingClientRect();
+    heading.focus({ preventScroll: top >= 0 && bottom <= innerHeight });
+  }
+
+  /** Where the page is too short for everything, the next item would else stay above what was just answered. */
+  #show(): void {
+    const mat = this.renderRoot.querySelector('.mat');
+    if (!mat) return;
+    const { top, bottom, height } = mat.getBoundingClientRect();
+    const visible = Math.min(bottom, innerHeight) - Math.max(top, 0);
+    if (visible < Math.min(height, innerHeight) * 0.6) this.renderRoot.querySelector('section')?.scrollIntoView({ block: 'start' });
   }
 
   get #field(): HTMLInputElement | null {
@@ -68,12 +82,17 @@ export class Question extends LitElement {
   }
 
   override willUpdate(changed: PropertyValues<this>): void {
-    if (this.#isNext(changed)) this.text = '';
+    if (!this.#isNext(changed)) return;
+    this.text = '';
+    this.#hadFocus = (this.renderRoot as ShadowRoot).activeElement !== null;
   }
 
   /** The next question takes the keys: what was focused belonged to the last one. */
   override updated(changed: PropertyValues<this>): void {
-    if (this.#isNext(changed) && (this.renderRoot as ShadowRoot).activeElement) this.settle();
+    if (!this.#isNext(changed)) return;
+    if (this.#hadFocus) this.settle();
+    // Not for the first item: nothing has been answered yet.
+    if (changed.get('item')) this.#show();
   }
 
   #isNext(changed: PropertyValues<this>): boolean {
@@ -107,7 +126,7 @@ export class Question extends LitElement {
     if (event.key === 'Escape') {
       this.settle();
     } else if (event.key === 'Enter' && !event.isComposing) {
-      this.#choose(options[this.active]);
+      if (!event.repeat) this.#choose(options[this.active]);
     } else if (event.key === 'ArrowDown' && options.length > 0) {
       this.active = (this.active + 1) % options.length;
     } else if (event.key === 'ArrowUp' && options.length > 0) {

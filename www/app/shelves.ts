@@ -53,6 +53,9 @@ export class Shelves extends LitElement {
 
   readonly tiles = new Tiles();
   #focused: number | undefined;
+  /** Whether the focus came to the tile by keys; only then do keys act on it. */
+  #keyed = false;
+  #pointing = false;
   readonly #resize = new ResizeObserver(() => this.#measure());
 
   constructor() {
@@ -65,15 +68,44 @@ export class Shelves extends LitElement {
   override connectedCallback(): void {
     super.connectedCallback();
     this.#resize.observe(this);
+    window.addEventListener('pointerdown', this.#onPointer, true);
+    window.addEventListener('keydown', this.#onAnyKey, true);
   }
 
   override disconnectedCallback(): void {
     super.disconnectedCallback();
     this.#resize.disconnect();
+    window.removeEventListener('pointerdown', this.#onPointer, true);
+    window.removeEventListener('keydown', this.#onAnyKey, true);
   }
 
-  /** The item under the keyboard's focus. */
-  get focusedItem(): number | undefined {
+  readonly #onPointer = (): void => {
+    this.#pointing = true;
+    this.#keyed = false;
+  };
+
+  readonly #onAnyKey = (): void => {
+    this.#pointing = false;
+  };
+
+  /** The item that keys act on instead of the one in hand: the tile the focus was brought to by keys. */
+  get keyedItem(): number | undefined {
+    return this.#keyed ? this.#focusedItem : undefined;
+  }
+
+  /** From now on keys act on the item in hand, until an arrow or Tab leads to a tile again. */
+  release(): void {
+    this.#keyed = false;
+  }
+
+  /** Leads the focus back to the tile it was on last. */
+  resume(): void {
+    const last = this.renderRoot.querySelector<HTMLElement>(`[data-item='${this.#focused}']`);
+    const tile = last ?? this.renderRoot.querySelector<HTMLElement>('[data-item]');
+    if (tile) this.#focus(tile);
+  }
+
+  get #focusedItem(): number | undefined {
     const active = (this.renderRoot as ShadowRoot).activeElement;
     return active instanceof HTMLElement && active.dataset['item'] !== undefined ? Number(active.dataset['item']) : undefined;
   }
@@ -194,7 +226,7 @@ export class Shelves extends LitElement {
 
   override updated(changed: PropertyValues<this>): void {
     if (this.width === 0) this.#measure();
-    const had = this.focusedItem;
+    const had = this.keyedItem;
     const { snapshot } = this;
     if (!snapshot) return;
     this.tiles.update(this.items, snapshot, this.hand, changed.has('movedItems') ? this.movedItems : undefined);
@@ -212,7 +244,7 @@ export class Shelves extends LitElement {
       for (const item of stops) shown.add(item);
     }
     this.tiles.sweep(shown);
-    if (had !== undefined && this.focusedItem === undefined) {
+    if (had !== undefined && this.#focusedItem === undefined) {
       const element = this.renderRoot.querySelector<HTMLElement>(`[data-item='${had}']`);
       if (element) this.#focus(element);
     }
@@ -225,6 +257,7 @@ export class Shelves extends LitElement {
   #onFocus(event: FocusEvent): void {
     const tile = (event.target as HTMLElement).closest<HTMLElement>('[data-item]');
     if (!tile) return;
+    this.#keyed = !this.#pointing;
     this.#focused = Number(tile.dataset['item']);
     for (const other of tile.closest('.shelf')?.querySelectorAll<HTMLElement>('[data-item]') ?? []) {
       other.tabIndex = other === tile ? 0 : -1;
@@ -239,6 +272,8 @@ export class Shelves extends LitElement {
   #onKey(event: KeyboardEvent): void {
     const tile = (event.target as HTMLElement).closest<HTMLElement>('[data-item]');
     if (!tile || event.ctrlKey || event.metaKey || event.altKey) return;
+    // A tile that was only pointed at is not what Enter means: that is the guess for the item in hand.
+    if (event.key === 'Enter' && !this.#keyed) return;
     if (event.key === 'Enter' || event.key === ' ') {
       tell(this, 'take', { item: Number(tile.dataset['item']) });
     } else {
