@@ -79,15 +79,19 @@ impl Pile {
         Ok(self.len() - 1)
     }
 
-    /// Takes an item out of the pile or puts it back.
-    pub(crate) fn set_present(&mut self, item: usize, present: bool) {
-        if self.present[item] != present {
-            self.present[item] = present;
-            let sign = if present { 1.0 } else { -1.0 };
-            let d = self.space.dimension();
-            let place = &self.places[item * d..(item + 1) * d];
-            self.sum.iter_mut().zip(place).for_each(|(sum, &x)| *sum += sign * f64::from(x));
+    /// Takes the items out of the pile that are `removed` and puts the others back. Cost O(n d) if anything changes: the
+    /// sum is taken anew, so that an item that went and came back leaves no trace in it.
+    pub(crate) fn set_removed(&mut self, removed: impl Fn(usize) -> bool) {
+        let present: Vec<bool> = (0..self.len()).map(|item| !removed(item)).collect();
+        if present == self.present {
+            return;
         }
+        self.present = present;
+        let mut sum = vec![0.0; self.space.dimension()];
+        for item in self.items() {
+            sum.iter_mut().zip(self.place(item)).for_each(|(sum, &x)| *sum += f64::from(x));
+        }
+        self.sum = sum;
     }
 
     /// Whether the item is in the pile.

@@ -63,11 +63,12 @@ impl Prior {
 
     /// The shares of prototype, ridge and gradient in the mix before there is evidence; they add up to 1.
     ///
-    /// Seen from the centre of a pile, nearest prototypes are best at one example a category; otherwise ridge is.
+    /// Seen from the centre of an even pile, nearest prototypes are best at one example a category; seen from that of an
+    /// uneven one, which lies aside, or with more examples, ridge is.
     pub(crate) fn preference(&self, support: &Support) -> [f64; 3] {
         let shot = support.shot();
         let gradient = 0.1 * (1.0 - 1.0 / shot);
-        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.9 * self.centre_known / (shot * shot);
+        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.5 * self.centre_known / (shot * shot);
         [prototype, 1.0 - prototype - gradient, gradient]
     }
 

@@ -172,7 +172,7 @@ impl Sorter {
     /// Takes an item out of the pile.
     pub fn remove_item(&mut self, item: usize) -> Result<()> {
         self.change(|ledger| ledger.remove_item(item))?;
-        self.pile.set_present(item, false);
+        self.follow_ledger();
         Ok(())
     }
 
@@ -242,9 +242,7 @@ impl Sorter {
     }
 
     fn follow_ledger(&mut self) {
-        for item in 0..self.pile.len() {
-            self.pile.set_present(item, !self.ledger.is_removed(item));
-        }
+        self.pile.set_removed(|item| self.ledger.is_removed(item));
         self.learnt = None;
     }
 

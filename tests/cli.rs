@@ -302,3 +302,58 @@ fn help_tells_a_newcomer_how_to_start() {
         assert!(help.contains(part), "{help}");
     }
 }
+
+#[cfg(unix)]
+#[test]
+fn links_are_followed_and_never_replaced() {
+    use std::os::unix::fs::symlink;
+    let folder = photos();
+    let root = folder.path();
+    fs::create_dir(root.join("linked")).unwrap();
+    symlink(root.join("pile/rings-3.jpg"), root.join("linked/one.jpg")).unwrap();
+    symlink(root.join("pile/box"), root.join("linked/more")).unwrap();
+    symlink(root.join("linked"), root.join("linked/more/back")).unwrap();
+    symlink(root.join("gone.jpg"), root.join("linked/nowhere.jpg")).unwrap();
+    fs::write(root.join("target.csv"), "old").unwrap();
+    symlink(root.join("target.csv"), root.join("out.csv")).unwrap();
+    let output = kenspeckle(root, &["sort", "linked", "--examples", "examples", "--out", "out.csv"]);
+    let said = said(&output);
+    assert_eq!(output.status.code(), Some(3), "{said}");
+    assert_eq!(lines_with(&said, &["nowhere.jpg", "can't be read"]).len(), 1, "{said}");
+    let items: Vec<String> = table(&fs::read_to_string(root.join("target.csv")).unwrap()).into_keys().collect();
+    let more = ["more/rings-6.jpg", "more/rings-7.jpg", "more/stripes-6.jpg", "more/stripes-7.jpg"];
+    assert_eq!(items, [&more[..], &["one.jpg"]].concat());
+    assert!(fs::symlink_metadata(root.join("out.csv")).unwrap().is_symlink());
+}
+
+#[cfg(unix)]
+#[test]
+fn what_is_no_ordinary_file_is_written_to_and_stays() {
+    use std::os::unix::fs::FileTypeExt;
+    let folder = vectors();
+    let root = folder.path();
+    assert!(Command::new("mkfifo").arg(root.join("pipe")).status().unwrap().success());
+    let reader = std::thread::spawn({
+        let pipe = root.join("pipe");
+        move || fs::read_to_string(pipe).unwrap()
+    });
+    let output = kenspeckle(root, &[&SORT_VECTORS[..], &["--out", "pipe"]].concat());
+    assert!(output.status.success(), "{}", said(&output));
+    assert_eq!(table(&reader.join().unwrap()).len(), 3);
+    assert!(fs::metadata(root.join("pipe")).unwrap().file_type().is_fifo());
+}
+
+#[test]
+fn labels_are_one_a_line() {
+    let folder = vectors();
+    let labels = folder.path().join("labels.csv");
+    fs::write(&labels, "\u{feff}flat\r\n\"tall, thin\"\r\n").unwrap();
+    assert!(kenspeckle(folder.path(), &SORT_VECTORS).status.success());
+    for (text, line) in [("flat\n\ntall\n", "line 2"), ("\nflat\n", "line 1")] {
+        fs::write(&labels, text).unwrap();
+        let output = kenspeckle(folder.path(), &SORT_VECTORS);
+        assert_eq!(lines_with(&said(&output), &["labels.csv", line, "no category"]).len(), 1, "{}", said(&output));
+    }
+    fs::write(&labels, [0xff, 0xfe, b'f', 0]).unwrap();
+    assert_eq!(lines_with(&said(&kenspeckle(folder.path(), &SORT_VECTORS)), &["labels.csv", "UTF-8"]).len(), 1);
+}

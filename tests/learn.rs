@@ -153,3 +153,21 @@ fn what_cannot_be_learned_from_is_refused_by_name() {
     assert!(!root.join("x.starter").exists());
     done(root, &["learn", "few.npy", "--labels", "few.csv", "--out", "few.starter", "--min-categories", "2"]);
 }
+
+#[test]
+fn a_rehearsal_shows_what_the_starter_is_worth() {
+    let folder = past();
+    let root = folder.path();
+    write_pile(root, "new", 8, 20, 30);
+    done(
+        root,
+        &["learn", "first.npy", "second.npy", "--labels", "first.csv", "--labels", "second.csv", "--out", "s.starter"],
+    );
+    let rehearse = ["rehearse", "new.npy", "--labels", "new.csv", "--starter", "s.starter", "--shots", "1"];
+    let text = done(root, &[&rehearse[..], &["--learner", "auto", "--episodes", "60"]].concat());
+    let share = |name: &str| -> f64 {
+        let line = text.lines().find(|line| line.trim_start().starts_with(name)).unwrap();
+        line.trim_start()[name.len()..].split_whitespace().next().unwrap().parse().unwrap()
+    };
+    assert!(share("auto + starter") > share("auto ") + 5.0, "{text}");
+}

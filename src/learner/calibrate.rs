@@ -11,12 +11,14 @@ use crate::{arithmetic, prior::TEMPERATURE_SPREAD, support::Support};
 ///
 /// Each category weighs the same, however many examples it has, so that probabilities fit an even pile.
 pub fn log_loss(left_out: &LeftOut, support: &Support, factor: f64) -> (f64, usize) {
+    let mut judged = vec![0_usize; support.categories()];
+    left_out.iter().for_each(|(example, _)| judged[support.labels()[example]] += 1);
     let mut sum = 0.0;
     let mut weight_sum = 0.0;
     let mut known = 0;
     for (example, logits) in left_out.iter() {
         let label = support.labels()[example];
-        let weight = 1.0 / support.counts()[label] as f64;
+        let weight = 1.0 / judged[label] as f64;
         let scaled = logits.mapv(|x| x * factor);
         sum += weight * (arithmetic::log_sum_exp(scaled.view()) - scaled[label]);
         weight_sum += weight;

@@ -1,6 +1,7 @@
 //! Photos in folders: which files there are, and their embeddings.
 
 use std::{
+    collections::HashSet,
     fs,
     path::{Path, PathBuf},
     sync::atomic::{AtomicUsize, Ordering},
@@ -27,22 +28,34 @@ pub struct Photo {
     pub fingerprint: String,
 }
 
-/// Every file below the folder, as paths within it, in order of name. Hidden files and what links point to are left out.
+/// Every file below the folder, as paths within it, in order of name; links are followed, hidden files left out.
 pub fn files_below(folder: &Path) -> Result<Vec<PathBuf>, Failure> {
+    if folder.is_file() {
+        return Err(Failure::because(format!("{}: this is a file; name the folder it is in", folder.display())));
+    }
     let mut found = Vec::new();
+    let mut seen: HashSet<PathBuf> = fs::canonicalize(folder).into_iter().collect();
     let mut open = vec![(PathBuf::new(), 0)];
     while let Some((part, depth)) = open.pop() {
         let here = folder.join(&part);
         let unreadable = |error| Failure::because(format!("{}: can't list this folder ({error})", here.display()));
         for entry in fs::read_dir(&here).map_err(unreadable)? {
             let entry = entry.map_err(unreadable)?;
-            let kind = entry.file_type().map_err(unreadable)?;
             if entry.file_name().to_string_lossy().starts_with('.') {
                 continue;
             }
             let part = part.join(entry.file_name());
-            if kind.is_dir() && depth < DEPTH_LIMIT {
-                open.push((part, depth + 1));
+            // A link that leads nowhere is listed too: reading it says what is wrong with it.
+            let Ok(kind) = fs::metadata(folder.join(&part)) else {
+                found.push(part);
+                continue;
+            };
+            if kind.is_dir() {
+                // A link can lead back to where it came from.
+                let first = fs::canonicalize(folder.join(&part)).is_ok_and(|real| seen.insert(real));
+                if first && depth < DEPTH_LIMIT {
+                    open.push((part, depth + 1));
+                }
             } else if kind.is_file() {
                 found.push(part);
             }

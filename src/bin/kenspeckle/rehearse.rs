@@ -4,7 +4,10 @@ use std::{
     collections::BTreeMap,
     num::NonZeroUsize,
     path::PathBuf,
-    sync::atomic::{AtomicU64, Ordering},
+    sync::{
+        Arc,
+        atomic::{AtomicU64, Ordering},
+    },
     thread,
 };
 
@@ -23,6 +26,7 @@ use crate::{
     labelled::{self, Example},
     output, plot,
     report::Report,
+    sort::read_starter,
     vectors,
 };
 
@@ -64,6 +68,10 @@ pub struct Rehearse {
     /// Only this learner; give it several times for several [default: all].
     #[arg(long, value_name = "auto|prototype|ridge|gradient")]
     learner: Vec<LearnerKind>,
+    /// Rehearse with this starter too (`kenspeckle learn` makes it), beside sorting without one. Take other piles for the
+    /// starter than for the rehearsal: on what it was learned from it looks better than it is.
+    #[arg(long, value_name = "FILE.starter")]
+    starter: Option<PathBuf>,
     /// Seed of everything that is drawn: the same seed gives the same result.
     #[arg(long, default_value_t = 1)]
     seed: u64,
@@ -103,6 +111,27 @@ struct Material {
 }
 
 impl Rehearse {
+    /// Every chosen learner without a starter and, if there is one, with it.
+    fn contenders(&self, material: &Material) -> Result<Vec<Contender>, Failure> {
+        let chosen = |kind: &LearnerKind| self.learner.is_empty() || self.learner.contains(kind);
+        let settings =
+            |learner| Settings { encoder: material.encoder.clone(), space: material.space, learner, seed: self.seed };
+        let kinds: Vec<LearnerKind> = LearnerKind::ALL.into_iter().filter(chosen).collect();
+        let mut contenders: Vec<Contender> = kinds
+            .iter()
+            .map(|&kind| Contender { name: kind.name().to_owned(), sorter: Sorter::new(settings(kind)) })
+            .collect();
+        if let Some(path) = &self.starter {
+            let starter = Arc::new(read_starter(path)?);
+            for kind in kinds {
+                let sorter = Sorter::with_starter(settings(kind), starter.clone())
+                    .map_err(|error| Failure::because(format!("{}: {error}", path.display())))?;
+                contenders.push(Contender { name: format!("{} + starter", kind.name()), sorter });
+            }
+        }
+        Ok(contenders)
+    }
+
     /// Runs the command and tells how many items could not be read.
     pub fn run(self) -> Result<usize, Failure> {
         let material = if vectors::is_npy(&self.labelled) { self.read_vectors()? } else { self.read_photos()? };
@@ -111,19 +140,7 @@ impl Rehearse {
         let design = self.design(&material, &sizes)?;
         say_left_out(&material, &sizes, &design);
 
-        let contenders: Vec<Contender> = LearnerKind::ALL
-            .into_iter()
-            .filter(|kind| self.learner.is_empty() || self.learner.contains(kind))
-            .map(|learner| Contender {
-                name: learner.name().to_owned(),
-                sorter: Sorter::new(Settings {
-                    encoder: material.encoder.clone(),
-                    space: material.space,
-                    learner,
-                    seed: self.seed,
-                }),
-            })
-            .collect();
+        let contenders = self.contenders(&material)?;
         let rehearsal =
             Rehearsal::new(&material.embeddings, labelled, &design, &contenders).map_err(Failure::because)?;
         let played = self.play(&rehearsal)?;
@@ -153,8 +170,7 @@ impl Rehearse {
             })?;
         }
         let text = if self.json { report.json() } else { report.text() };
-        std::io::Write::write_all(&mut std::io::stdout().lock(), text.as_bytes())
-            .map_err(|error| Failure::because(format!("the result can't be shown ({error})")))?;
+        output::show(text.as_bytes()).map_err(Failure::because)?;
         if let Some(path) = &self.plot {
             console::say(&format!("the picture is in {}", path.display()));
         }

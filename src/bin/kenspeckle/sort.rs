@@ -207,8 +207,10 @@ impl Sort {
         };
         match &self.out {
             Some(path) => output::write_whole(path, |file| put(file))?,
-            None => put(&mut std::io::stdout().lock())
-                .map_err(|reason| Failure::because(format!("the result can't be shown ({reason})")))?,
+            None => {
+                let mut text = Vec::new();
+                put(&mut text).and_then(|()| output::show(&text)).map_err(Failure::because)?;
+            }
         }
         let unsure = items.iter().filter(|item| item.probability < 0.5).count();
         let shares: Vec<String> = counts.iter().map(|(tray, count)| format!("{tray} {count}")).collect();

@@ -24,7 +24,7 @@ pub fn read(path: &Path) -> Result<Array2<f32>, Failure> {
     let trouble = |reason: String| Failure::because(format!("{}: {reason}", path.display()));
     let bytes = fs::read(path).map_err(|error| trouble(format!("it can't be read ({error})")))?;
     let header = Header::of(&bytes).ok_or_else(|| {
-        trouble("it is not an .npy file of numbers; write it with numpy.save, as float32 or float64".into())
+        trouble("it is not an .npy file of float32 or float64 numbers (little-endian); write it with numpy.save after .astype('float32')".into())
     })?;
     let [items, dimension] = header.shape[..] else {
         return Err(trouble(format!(
@@ -98,19 +98,18 @@ pub fn write(array: &Array2<f32>, file: &File) -> Result<(), String> {
     array.write_npy(std::io::BufWriter::new(file)).map_err(|error| error.to_string())
 }
 
-/// Reads one category a line, in the order of the examples. An empty line is an example without a category.
+/// Reads one category a line, in the order of the examples; quotes as in RFC 4180, if there are any.
 pub fn read_labels(path: &Path) -> Result<Vec<String>, Failure> {
     let trouble = |reason: String| Failure::because(format!("{}: {reason}", path.display()));
-    let mut rows = csv::ReaderBuilder::new()
-        .has_headers(false)
-        .flexible(true)
-        .from_path(path)
-        .map_err(|error| trouble(format!("it can't be read ({error})")))?;
+    let bytes = fs::read(path).map_err(|error| trouble(format!("it can't be read ({error})")))?;
+    let text = String::from_utf8(bytes).map_err(|_| trouble("it is not UTF-8 text; save it as UTF-8".into()))?;
     let mut labels = Vec::new();
-    for (line, row) in rows.records().enumerate() {
-        let row =
-            row.map_err(|error| trouble(format!("line {} can't be read ({error}); save it as UTF-8", line + 1)))?;
-        let label = row.get(0).unwrap_or("").trim().to_owned();
+    for (line, row) in text.trim_start_matches('\u{feff}').lines().enumerate() {
+        let mut reader = csv::ReaderBuilder::new().has_headers(false).flexible(true).from_reader(row.as_bytes());
+        let label = match reader.records().next() {
+            Some(Ok(record)) => record.get(0).unwrap_or("").trim().to_owned(),
+            _ => String::new(),
+        };
         if label.is_empty() {
             return Err(trouble(format!("line {} names no category; write one category a line", line + 1)));
         }
