@@ -50,12 +50,15 @@ struct Point {
 /// The picture as an SVG file.
 pub fn draw(report: &Report) -> String {
     let shots = report.design.shots();
-    let lines: Vec<Vec<Point>> = (0..report.contenders.len())
-        .map(|contender| {
+    let shown = shown(report.contenders.len());
+    let lines: Vec<Vec<Point>> = shown
+        .iter()
+        .enumerate()
+        .map(|(position, &contender)| {
             let point = |(at, &shot): (usize, &usize)| {
                 let found = report.summary.accuracy(contender, at);
                 let (mean, half) = (100.0 * found.mean, 100.0 * found.half_width);
-                let x = across(shot, &shots, contender, report.contenders.len());
+                let x = across(shot, &shots, position, shown.len());
                 Point { x, mean, low: (mean - half).max(0.0), high: (mean + half).min(100.0) }
             };
             shots.iter().enumerate().map(point).collect()
@@ -82,11 +85,16 @@ pub fn draw(report: &Report) -> String {
     );
     axes(&mut svg, &scale, &shots);
     let heights = apart(lines.iter().map(|line| line.last().map_or(BOTTOM, |point| scale.down(point.mean))).collect());
-    for (contender, line) in lines.iter().enumerate().rev() {
-        let label = Label { name: report.contenders[contender], height: heights[contender] };
-        contender_line(&mut svg, &scale, contender, line, &label);
+    for (position, line) in lines.iter().enumerate().rev() {
+        let label = Label { name: report.contenders[shown[position]], height: heights[position] };
+        contender_line(&mut svg, &scale, position, line, &label);
     }
     svg + "</svg>\n"
+}
+
+/// Which contenders are drawn: all that can be told apart, else the first without and with a starter.
+fn shown(contenders: usize) -> Vec<usize> {
+    if contenders <= 4 { (0..contenders).collect() } else { vec![0, contenders / 2] }
 }
 
 /// Where a number of examples stands: by its logarithm, since going from one to two is worth more than from nine to ten.
