@@ -41,6 +41,12 @@ export const appStyles = css`
     gap: 8px;
     white-space: nowrap;
   }
+  .about {
+    min-width: 44px;
+    min-height: 44px;
+    padding-inline: 0;
+    font-weight: 700;
+  }
   .wide {
     white-space: pre;
   }
@@ -90,9 +96,11 @@ export const appStyles = css`
   }
   ken-question {
     flex: 0 1 auto;
-    min-height: 0;
+    /* Below this nothing gives way any more, and the whole part scrolls. */
+    min-height: 21rem;
   }
   .said {
+    flex: none;
     min-height: 1.5em;
     margin-top: 0.6rem;
     color: var(--ink-soft);
@@ -178,7 +186,7 @@ export const appStyles = css`
     nav {
       gap: 6px;
     }
-    nav button {
+    nav button:not(.about) {
       padding-inline: 0.65rem;
       font-size: 0.94rem;
     }
@@ -190,6 +198,9 @@ export const appStyles = css`
       position: static;
       max-height: none;
       overflow: visible;
+    }
+    ken-question {
+      min-height: 0;
     }
     ken-reading {
       margin-inline: 12px;

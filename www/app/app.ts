@@ -334,15 +334,20 @@ export class Bench extends LitElement {
     const { desk } = this;
     return html`<header class=${bench ? 'working' : ''}>
       ${bench ? html`<h1 class="brand">${brand}</h1>` : html`<p class="brand">${brand}</p>`}
-      ${bench && desk
-        ? html`<ken-band .tally=${desk.view?.tally}></ken-band>
-            <nav aria-label="Pile">
-              <button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
-              <button ?disabled=${!desk.snapshot?.canRedo} @click=${() => void desk.redo()}>${words.redo}</button>
-              <button popovertarget="ways">${words.add[0]}<span class="wide">${words.add[1]}</span></button>
-              <button class="strong" @click=${() => this.#takeResult()}><span class="wide">${words.result[0]}</span><span class="narrow">${words.result[1]}</span></button>
-            </nav>
-            <div id="ways" popover class="ways">
+      ${bench && desk ? html`<ken-band .tally=${desk.view?.tally}></ken-band>` : html`<span></span>`}
+      <nav aria-label="Pile">
+        ${desk && (bench || desk.snapshot?.canUndo || desk.snapshot?.canRedo)
+          ? html`<button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
+              <button ?disabled=${!desk.snapshot?.canRedo} @click=${() => void desk.redo()}>${words.redo}</button>`
+          : nothing}
+        ${bench
+          ? html`<button popovertarget="ways">${words.add[0]}<span class="wide">${words.add[1]}</span></button>
+              <button class="strong" @click=${() => this.#takeResult()}><span class="wide">${words.result[0]}</span><span class="narrow">${words.result[1]}</span></button>`
+          : nothing}
+        <button class="about" aria-label=${words.help} title=${words.help} @click=${() => this.#openPanel({ panel: 'help' })}>?</button>
+      </nav>
+      ${bench
+        ? html`<div id="ways" popover class="ways">
               <button class="plain" @click=${() => this.#choose(false)}>${words.chooseFiles}</button>
               <button class="plain" @click=${() => this.#choose(true)}>${words.chooseFolder}</button>
               ${hasCamera()

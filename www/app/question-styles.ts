@@ -12,6 +12,9 @@ export const questionStyles = css`
     gap: 0.7rem;
     min-height: 0;
   }
+  section > * {
+    flex: none;
+  }
   header {
     display: flex;
     align-items: baseline;
@@ -38,14 +41,14 @@ export const questionStyles = css`
   .mat {
     position: relative;
     display: flex;
-    flex: 1 1 auto;
-    height: clamp(190px, 40vh, 460px);
-    min-height: 170px;
+    flex: 1 1 clamp(190px, 40vh, 460px);
+    min-height: clamp(100px, 20vh, 170px);
     padding: 8px;
     border-radius: 14px;
     background: var(--bright);
   }
   img {
+    min-height: 0;
     width: 100%;
     height: 100%;
     object-fit: contain;
@@ -64,6 +67,13 @@ export const questionStyles = css`
     grid-template-columns: repeat(auto-fill, minmax(min(165px, 100%), 1fr));
     gap: 8px;
     list-style: none;
+    /* The trays are what gives way when there is not room for all. The margin is for the ring of the focus. */
+    flex: 0 1 auto;
+    min-height: 60px;
+    margin: -6px;
+    padding: 6px;
+    overflow: hidden auto;
+    scrollbar-width: thin;
   }
   .choice {
     position: relative;
@@ -90,6 +100,10 @@ export const questionStyles = css`
     min-width: 0;
     overflow-wrap: anywhere;
     hyphens: auto;
+    display: -webkit-box;
+    -webkit-box-orient: vertical;
+    -webkit-line-clamp: 2;
+    overflow: hidden;
     line-height: 1.2;
     font-size: 0.97rem;
     font-weight: 600;
@@ -125,8 +139,20 @@ export const questionStyles = css`
   }
   @media (pointer: coarse), (max-width: 820px) {
     .mat {
-      height: clamp(190px, 33vh, 460px);
+      flex-basis: clamp(190px, 33vh, 460px);
     }
+  }
+  @media (max-width: 820px) {
+    .rows {
+      max-height: max(180px, 36vh);
+    }
+  }
+  @media (min-width: 821px) and (max-height: 680px) {
+    section {
+      gap: 0.45rem;
+    }
+  }
+  @media (pointer: coarse) {
     .choice kbd,
     .no-key {
       display: none;
@@ -146,6 +172,8 @@ export const questionStyles = css`
     visibility: hidden;
   }
   #found {
+    flex: 0 1 auto;
+    min-height: 100px;
     max-height: 15rem;
     overflow: auto;
     display: grid;

@@ -89,10 +89,22 @@ export class Question extends LitElement {
 
   /** The next question takes the keys: what was focused belonged to the last one. */
   override updated(changed: PropertyValues<this>): void {
+    if (changed.has('guess') || this.#isNext(changed)) this.#showGuess();
     if (!this.#isNext(changed)) return;
     if (this.#hadFocus) this.settle();
     // Not for the first item: nothing has been answered yet.
     if (changed.get('item')) this.#show();
+  }
+
+  /** The guess is never hidden by the scrolling of the trays. */
+  #showGuess(): void {
+    const rows = this.renderRoot.querySelector('.rows');
+    const guess = rows?.querySelector('.guessed');
+    if (!rows || !guess) return;
+    const frame = rows.getBoundingClientRect();
+    const { top, bottom } = guess.getBoundingClientRect();
+    if (top < frame.top) rows.scrollTop += top - frame.top - 6;
+    else if (bottom > frame.bottom) rows.scrollTop += bottom - frame.bottom + 6;
   }
 
   #isNext(changed: PropertyValues<this>): boolean {
@@ -241,6 +253,7 @@ export class Question extends LitElement {
           return html`<li>
             <button
               class="choice ${guessed ? 'guessed' : ''} ${tray === this.given ? 'given' : ''}"
+              title=${name}
               ${fraction(share ?? 0)}
               @click=${() => tell(this, 'answer', { tray })}
               @dragover=${this.#onDragOver}

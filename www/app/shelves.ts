@@ -201,7 +201,7 @@ export class Shelves extends LitElement {
       </div>
       <div class="plate">
         ${key && isTray ? html`<kbd class="hint" aria-hidden="true">${key}</kbd>` : nothing}
-        <h3>${name}</h3>
+        <h3 title=${name}>${name}</h3>
         <span class="soft total">${count(total)}${shelf.note ? html`, ${shelf.note}` : nothing}</span>
         ${shelf.front.length > 0 ? html`<span class="unsure">${count(shelf.front.length)} ${words.unsure}</span>` : nothing}
         <span class="space"></span>
@@ -397,6 +397,10 @@ export class Shelves extends LitElement {
         line-height: 1.2;
         min-width: 0;
         overflow-wrap: anywhere;
+        display: -webkit-box;
+        -webkit-box-orient: vertical;
+        -webkit-line-clamp: 2;
+        overflow: hidden;
       }
       .total {
         font-variant-numeric: tabular-nums;

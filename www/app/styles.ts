@@ -100,7 +100,7 @@ export const shared = css`
     line-height: 1.45;
     text-align: center;
   }
-  @media (pointer: coarse), (max-width: 820px) {
+  @media (pointer: coarse) {
     kbd.hint {
       display: none;
     }

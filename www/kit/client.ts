@@ -5,12 +5,13 @@ import type { ReadPhoto } from './encode-worker';
 import { type Arrival, Intake, type Progress, type Source } from './intake';
 import { EncodePool } from './pool';
 import type { Saved } from './saver';
-import type { Action, Ranked, Snapshot, SortApi } from './sort-worker';
+import { type Action, type Ranked, type Snapshot, type SortApi, Status } from './sort-worker';
 
 export { KenspeckleError, codeOf, messageOf } from './error';
 export type { Duplicate, Progress, Refused, Source } from './intake';
 export type { Saved } from './saver';
-export { type Action, type Ranked, type Snapshot, Status, type Tray, type Verdicts } from './sort-worker';
+export { Status };
+export type { Action, Ranked, Snapshot, Tray, Verdicts } from './sort-worker';
 
 /** An item of the pile, by its number. */
 export interface Item {
@@ -46,6 +47,8 @@ export class PileClient extends EventTarget {
   readonly #pool: EncodePool;
   readonly #intake: Intake;
   #items: Item[] = [];
+  /** By item number. */
+  #fingerprints: string[] = [];
   #snapshot: Snapshot | undefined;
   /** Why the browser keeps nothing, if so. */
   #notKept: string | undefined;
@@ -155,6 +158,7 @@ export class PileClient extends EventTarget {
     this.#intake.forget();
     this.#originals.clear();
     this.#items = [];
+    this.#fingerprints = [];
     this.#changed(undefined);
   }
 
@@ -171,8 +175,9 @@ export class PileClient extends EventTarget {
     const { items, snapshot, notKept } = await this.#sort.open(module, name, report);
     this.#notKept = notKept;
     this.#items = items;
-    for (const item of items) this.#intake.know(item.fingerprint, item.name);
+    this.#fingerprints = items.map(({ fingerprint }) => fingerprint);
     this.#snapshot = snapshot;
+    if (snapshot) this.#know(snapshot);
   }
 
   async #arrive({ source, blob, read }: Arrival): Promise<void> {
@@ -182,12 +187,25 @@ export class PileClient extends EventTarget {
     const item = { name, fingerprint, width, height, embedding, pictures: { thumbnail, original: blob } };
     const { first, snapshot } = await this.#sort.add([item], this.#pool.facts);
     this.#items.push({ number: first, name, width, height, thumbnail });
+    this.#fingerprints.push(fingerprint);
     this.#originals.set(first, blob);
     this.#changed(snapshot);
   }
 
+  /** What was taken out of the pile may come in again. */
+  #know({ verdicts }: Snapshot): void {
+    this.#intake.forget();
+    for (const { number, name } of this.#items) {
+      const fingerprint = this.#fingerprints[number];
+      if (fingerprint !== undefined && verdicts.status[number] !== Status.removed) this.#intake.know(fingerprint, name);
+    }
+  }
+
   #changed(snapshot: Snapshot | undefined): void {
+    const before = this.#snapshot?.verdicts.status;
     this.#snapshot = snapshot;
+    const differs = (status: number, item: number) => (status === Status.removed) !== (before?.[item] === Status.removed);
+    if (snapshot?.verdicts.status.some(differs)) this.#know(snapshot);
     this.#emit('change', snapshot);
   }
 
