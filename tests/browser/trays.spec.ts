@@ -132,3 +132,78 @@ test('a key that is held down acts once', async ({ page, site }) => {
   await expect(page.getByText('12 photos', { exact: true })).toBeVisible();
   await expect(page.locator('ken-shelves').getByRole('button', { name: /your answer/ })).toHaveCount(4);
 });
+
+test('a photo taken out can be added again, and taken out it stays after a reload', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  const first = join(demoFolder, demo[0]?.file ?? '');
+  const tile = page.locator('ken-shelves').getByRole('button', { name: demo[0]?.file ?? '' }).first();
+  await tile.focus();
+  await page.keyboard.press('Delete');
+  await expect(page.getByText('11 photos', { exact: true })).toBeVisible();
+  await page.keyboard.press('u');
+  await expect(page.getByText('12 photos', { exact: true })).toBeVisible();
+  await bench.choose([first]);
+  await expect(page.getByText('1 file was in the pile already')).toBeVisible();
+  await page.getByRole('button', { name: 'Dismiss' }).click();
+
+  await tile.focus();
+  await page.keyboard.press('Delete');
+  await expect(page.getByText('11 photos', { exact: true })).toBeVisible();
+  await page.reload();
+  await expect(page.getByText('11 photos', { exact: true })).toBeVisible();
+  await bench.choose([first]);
+  await expect(page.getByText('12 photos', { exact: true })).toBeVisible();
+});
+
+test('the last photo taken out can be brought back', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  for (let left = 12; left > 2; left--) {
+    const item = await bench.inHand();
+    await page.keyboard.press('Delete');
+    await bench.nextAfter(item);
+  }
+  // The two answered ones are never in question.
+  await expect(page.getByText('Nothing left to ask')).toBeVisible();
+  await bench.shelf('First').getByRole('button', { name: /your answer/ }).focus();
+  await page.keyboard.press('Delete');
+  await expect(page.getByText('1 photo', { exact: true })).toBeVisible();
+  await bench.shelf('Second').getByRole('button', { name: /your answer/ }).focus();
+  await page.keyboard.press('Delete');
+  await expect(page.getByRole('button', { name: 'Try the demo pile' })).toBeVisible();
+  await page.getByRole('button', { name: 'Undo' }).click();
+  await expect(page.getByText('1 photo', { exact: true })).toBeVisible();
+});
+
+for (const viewport of [{ width: 1280, height: 800 }, { width: 1280, height: 600 }, { width: 390, height: 844 }]) {
+  test(`with 19 trays everything stays within reach: ${viewport.width} × ${viewport.height}`, async ({ page, site }, info) => {
+    const bench = new Bench(page, site);
+    const { keyboard } = page;
+    await bench.choose(demo.slice(12, 24).map(({ file }) => join(demoFolder, file)));
+    await expect(page.getByText('24 photos', { exact: true })).toBeVisible();
+    await page.setViewportSize(viewport);
+    const names = ['A name as long as names can be, '.padEnd(120, 'and longer, '), ...Array.from({ length: 16 }, (_, n) => `Tray number ${n + 3}`)];
+    for (const name of names) {
+      const item = await bench.inHand();
+      await keyboard.press('t');
+      await keyboard.type(name.trim());
+      await keyboard.press('Enter');
+      await bench.nextAfter(item);
+    }
+    await expect(page.locator('ken-question .rows button')).toHaveCount(19);
+    await page.screenshot({ path: info.outputPath('trays.png') });
+    const boxOf = async (selector: string) => (await page.locator(selector).first().boundingBox()) ?? { x: 0, y: -1, width: 0, height: 0 };
+    const field = await boxOf('ken-question .field');
+    const ways = await boxOf('ken-question .ways');
+    const said = await boxOf('.said');
+    const rows = await boxOf('ken-question .rows');
+    expect(rows.y + rows.height, 'trays above the field').toBeLessThanOrEqual(field.y + 6);
+    expect(field.y + field.height, 'field above the buttons').toBeLessThanOrEqual(ways.y);
+    expect(ways.y + ways.height, 'buttons above what is said').toBeLessThanOrEqual(said.y);
+    if (viewport.width > 820) expect(said.y + said.height).toBeLessThanOrEqual(viewport.height);
+    await expect(page.getByRole('button', { name: 'Help' })).toBeInViewport();
+    const last = await bench.inHand();
+    await page.getByRole('button', { name: 'Tray number 18' }).first().click();
+    await bench.nextAfter(last);
+    await expect(bench.picture).toBeInViewport({ ratio: 0.5 });
+  });
+}

@@ -136,6 +136,7 @@ export const questionStyles = css`
   }
   .no-key {
     width: 1.6em;
+    font-size: 0.82em;
   }
   @media (pointer: coarse), (max-width: 820px) {
     .mat {
