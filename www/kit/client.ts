@@ -30,6 +30,9 @@ export interface ClientOptions {
   thumbnailSide?: number;
 }
 
+/** How often the pile is sorted anew while photos arrive, in milliseconds: sorting it for each would take quadratic time. */
+const SORT_EVERY = 250;
+
 interface ClientEvents {
   /** The pile changed: `client.snapshot` and `client.items` are new. */
   change: CustomEvent<Snapshot | undefined>;
@@ -50,6 +53,10 @@ export class PileClient extends EventTarget {
   /** By item number. */
   #fingerprints: string[] = [];
   #snapshot: Snapshot | undefined;
+  #sortedAt = -Infinity;
+  /** Set while items have arrived that the pile was not sorted with. */
+  #sortSoon: ReturnType<typeof setTimeout> | undefined;
+  #sorting: Promise<void> = Promise.resolve();
   /** Why the browser keeps nothing, if so. */
   #notKept: string | undefined;
   /** Originals of this visit: files on disk, so they cost no memory. */
@@ -64,6 +71,7 @@ export class PileClient extends EventTarget {
       pool,
       thumbnailSide,
       (arrival) => this.#arrive(arrival),
+      () => this.#sortArrived(),
       (progress) => this.#emit('progress', progress),
     );
   }
@@ -185,11 +193,31 @@ export class PileClient extends EventTarget {
     const { embedding, width, height, fingerprint } = read satisfies ReadPhoto;
     const thumbnail = new Blob([read.thumbnail], { type: 'image/jpeg' });
     const item = { name, fingerprint, width, height, embedding, pictures: { thumbnail, original: blob } };
-    const { first, snapshot } = await this.#sort.add([item], this.#pool.facts);
+    const due = performance.now() - this.#sortedAt >= SORT_EVERY;
+    const { first, snapshot } = await this.#sort.add([item], this.#pool.facts, due);
     this.#items.push({ number: first, name, width, height, thumbnail });
     this.#fingerprints.push(fingerprint);
     this.#originals.set(first, blob);
-    this.#changed(snapshot);
+    if (snapshot) {
+      this.#sorted();
+      this.#changed(snapshot);
+    } else {
+      // The next photo may take its time.
+      this.#sortSoon ??= setTimeout(() => void this.#sortArrived().catch(() => undefined), SORT_EVERY);
+    }
+  }
+
+  #sorted(): void {
+    clearTimeout(this.#sortSoon);
+    this.#sortSoon = undefined;
+    this.#sortedAt = performance.now();
+  }
+
+  async #sortArrived(): Promise<void> {
+    if (this.#sortSoon === undefined) return this.#sorting;
+    this.#sorted();
+    this.#sorting = this.#sort.sort().then((snapshot) => this.#changed(snapshot));
+    await this.#sorting;
   }
 
   /** What was taken out of the pile may come in again. */

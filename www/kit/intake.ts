@@ -53,6 +53,8 @@ export class Intake {
   readonly #pool: EncodePool;
   readonly #thumbnailSide: number;
   readonly #deliver: (arrival: Arrival) => Promise<void>;
+  /** Called when nothing is left to read for now, before that is reported. */
+  readonly #pause: () => Promise<void>;
   readonly #onProgress: (progress: Progress) => void;
   /** Names by fingerprint of all that the pile holds. */
   readonly #known = new Map<string, string>();
@@ -71,11 +73,13 @@ export class Intake {
     pool: EncodePool,
     thumbnailSide: number,
     deliver: (arrival: Arrival) => Promise<void>,
+    pause: () => Promise<void>,
     onProgress: (progress: Progress) => void,
   ) {
     this.#pool = pool;
     this.#thumbnailSide = thumbnailSide;
     this.#deliver = deliver;
+    this.#pause = pause;
     this.#onProgress = onProgress;
   }
 
@@ -135,6 +139,7 @@ export class Intake {
     const window: Promise<Outcome>[] = [];
     const unread: Source[] = [];
     let fatal: unknown;
+    let delivered = false;
     this.#report();
     for (;;) {
       while (!this.#stopped && window.length < 2 * this.#pool.size) {
@@ -144,10 +149,17 @@ export class Intake {
       }
       this.#inHand = window.length;
       const next = window.shift();
-      if (!next) break;
+      if (!next) {
+        if (!delivered) break;
+        delivered = false;
+        await this.#pause().catch((error: unknown) => (fatal ??= error));
+        // More may have been queued meanwhile.
+        continue;
+      }
       const outcome = await next;
       if (outcome.fatal === undefined) {
         await this.#settle(outcome);
+        delivered = true;
       } else {
         fatal ??= outcome.fatal;
         this.#stopped = true;

@@ -28,9 +28,10 @@ export class Saver {
     this.#report = report;
   }
 
-  save(additions: readonly Addition[], state: StoredState): void {
+  /** Without a state, only the additions are written: the state that lies in the store stays good for the items before them. */
+  save(additions: readonly Addition[], state: StoredState | undefined): void {
     this.#additions.push(...additions);
-    this.#state = state;
+    this.#state = state ?? this.#state;
     this.#running ??= this.#run().finally(() => (this.#running = undefined));
   }
 
@@ -49,7 +50,7 @@ export class Saver {
   }
 
   async #run(): Promise<void> {
-    while (this.#state !== undefined) {
+    while (this.#state !== undefined || this.#additions.length > 0) {
       const additions = this.#additions;
       const state = this.#state;
       this.#additions = [];
@@ -65,7 +66,7 @@ export class Saver {
     }
   }
 
-  async #write(additions: readonly Addition[], state: StoredState): Promise<void> {
+  async #write(additions: readonly Addition[], state: StoredState | undefined): Promise<void> {
     if (this.#keepOriginals) {
       try {
         await this.#store.write(additions, state);

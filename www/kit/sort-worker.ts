@@ -171,8 +171,12 @@ const api = {
     return { items: opened, snapshot: snapshot(), notKept: undefined };
   },
 
-  /** Adds items in order, and starts the pile with the first. Resolves to the first one's number. */
-  add(items: NewItem[], encoder: EncoderFacts): { first: number; snapshot: Snapshot } {
+  /**
+   * Adds items in order, and starts the pile with the first. Resolves to the first one's number. The items are stored at
+   * once; only with `sort` is the pile sorted anew and the sorter's state stored as well. A state that knows fewer items
+   * than the store holds takes up the others as new ones.
+   */
+  add(items: NewItem[], encoder: EncoderFacts, sort: boolean): { first: number; snapshot: Snapshot | undefined } {
     facts ??= encoder;
     if (facts.identity !== encoder.identity) {
       throw new KenspeckleError(
@@ -180,13 +184,21 @@ const api = {
         'This pile was read by another version of the encoder, so nothing can be added. Take the result, then start over.',
       );
     }
+    const isFirst = sorter === undefined;
     sorter ??= new Sorter({ encoder: facts.identity, dimension: facts.dimension, nonNegative: facts.nonNegative });
     const to = sorter;
     const additions = items.map(({ pictures, ...item }): Addition => {
       return { item: { ...item, number: to.addItem(item.embedding) }, pictures };
     });
-    save(additions);
-    return { first: additions[0]?.item.number ?? 0, snapshot: snapshot() };
+    if (sort || isFirst) save(additions);
+    else saver?.save(additions, undefined);
+    return { first: additions[0]?.item.number ?? 0, snapshot: sort || isFirst ? snapshot() : undefined };
+  },
+
+  /** Sorts the pile with all that was added, and stores the sorter's state. */
+  sort(): Snapshot {
+    save([]);
+    return snapshot();
   },
 
   /** Makes a change. Resolves to what the pile is after it, and for undo and redo to the kind of the change. */

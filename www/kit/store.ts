@@ -78,8 +78,8 @@ export class Store {
     return this.#database.get('originals', number);
   }
 
-  /** Adds items and replaces the state: all of it or nothing. */
-  async write(additions: readonly Addition[], state: StoredState): Promise<void> {
+  /** Adds items and replaces the state, if there is a new one: all of it or nothing. */
+  async write(additions: readonly Addition[], state: StoredState | undefined): Promise<void> {
     const transaction = this.#database.transaction(['items', 'thumbnails', 'originals', 'state'], 'readwrite');
     const requests: Promise<unknown>[] = [];
     for (const { item, pictures } of additions) {
@@ -87,7 +87,7 @@ export class Store {
       requests.push(transaction.objectStore('thumbnails').put(pictures.thumbnail, item.number));
       if (pictures.original) requests.push(transaction.objectStore('originals').put(pictures.original, item.number));
     }
-    requests.push(transaction.objectStore('state').put(state, 'pile'));
+    if (state) requests.push(transaction.objectStore('state').put(state, 'pile'));
     await Promise.all([...requests, transaction.done]);
   }
 
