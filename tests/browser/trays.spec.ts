@@ -207,3 +207,17 @@ for (const viewport of [{ width: 1280, height: 800 }, { width: 1280, height: 600
     await expect(bench.picture).toBeInViewport({ ratio: 0.5 });
   });
 }
+
+test('at 200 % zoom the next item comes into view after an answer', async ({ page, site }) => {
+  await page.setViewportSize({ width: 640, height: 400 });
+  const bench = new Bench(page, site);
+  await expect(page.locator('ken-question kbd.hint').first()).toBeVisible();
+  for (const act of [() => page.getByRole('button', { name: /^None of these/ }).click(), () => page.keyboard.press('1')]) {
+    await page.evaluate(() => scrollTo(0, document.documentElement.scrollHeight));
+    await expect(bench.picture).not.toBeInViewport({ ratio: 0.5 });
+    const item = await bench.inHand();
+    await act();
+    await bench.nextAfter(item);
+    await expect(bench.picture).toBeInViewport({ ratio: 0.5 });
+  }
+});
