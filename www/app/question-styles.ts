@@ -119,6 +119,9 @@ export const questionStyles = css`
     border: 2px solid var(--bright);
     background: var(--bright-soft);
   }
+  .choice.guessed .label {
+    -webkit-line-clamp: 3;
+  }
   .choice.guessed .figure {
     color: inherit;
     font-weight: 600;
@@ -144,8 +147,11 @@ export const questionStyles = css`
     }
   }
   @media (max-width: 820px) {
+    .mat {
+      flex-basis: clamp(180px, 27vh, 460px);
+    }
     .rows {
-      max-height: max(180px, 36vh);
+      max-height: max(180px, 29vh);
     }
   }
   @media (min-width: 821px) and (max-height: 680px) {
