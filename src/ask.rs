@@ -2,7 +2,7 @@
 //!
 //! Facility location: ask about the item that most improves how well every item is represented by one that was asked
 //! about, Σ_i max over asked k of s(i, k)₊, with s the cosine seen from the pile's centre (Wei, Iyer, Bilmes 2015,
-//! proceedings.mlr.press/v37/wei15). Once there are about two answers a tray, similarities are cubed, which asks for
+//! proceedings.mlr.press/v37/wei15). Once there are three answers for two trays, similarities are cubed, which asks for
 //! finer cover, and an item's gain is weighted by how unsure the sorter is of it.
 //!
 //! Items beyond [`ANCHORS`] are represented by a seeded sample of that size. A question costs O(n · anchors); an item's
@@ -78,7 +78,7 @@ impl Asker {
             .filter(|&(_, &anchor)| pile.contains(anchor))
             .map(|(column, &anchor)| (column, seen(anchor)))
             .collect();
-        let fine = situation.answered.len() >= 2 * situation.trays.max(2);
+        let fine = 2 * situation.answered.len() >= 3 * situation.trays.max(2);
         let similarity = |item: usize, own: (f32, f32), (column, anchor): (usize, (f32, f32))| {
             let cosine = f64::from(centre.cosine(self.products[item][column], own, anchor)).max(0.0);
             if fine { cosine * cosine * cosine } else { cosine }
