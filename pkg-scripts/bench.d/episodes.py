@@ -59,8 +59,9 @@ def fingerprint(path):
     return hashlib.sha256(path.read_bytes()).hexdigest()[:16]
 
 
-def main():
-    parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
+def write_as_asked(description):
+    """Draws the episodes that the command line asks for: (the set's name, path, header)."""
+    parser = argparse.ArgumentParser(description=description.splitlines()[0])
     parser.add_argument("set")
     parser.add_argument("--way", type=int, default=5)
     parser.add_argument("--shot", type=int, default=1)
@@ -68,6 +69,11 @@ def main():
     parser.add_argument("--seed", type=int, default=1)
     arguments = parser.parse_args()
     path, header, _ = write(arguments.set, arguments.way, arguments.shot, arguments.episodes, arguments.seed)
+    return arguments.set, path, header
+
+
+def main():
+    _, path, header = write_as_asked(__doc__)
     print(path.relative_to(sets.ROOT), json.dumps(header))
 
 

@@ -5,7 +5,6 @@ of never-negative ones, and seen from the mean of the episode's examples and que
 can't know. So a table shows how much is the space and how much the learner.
 """
 
-import argparse
 import hashlib
 import json
 import os
@@ -106,15 +105,8 @@ def run(path, spaces, methods=None, say=lambda text: None):
 
 
 def main():
-    parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
-    parser.add_argument("set")
-    parser.add_argument("--way", type=int, default=5)
-    parser.add_argument("--shot", type=int, default=1)
-    parser.add_argument("--episodes", type=int, default=300)
-    parser.add_argument("--seed", type=int, default=1)
-    arguments = parser.parse_args()
-    path, header, _ = episodes.write(arguments.set, arguments.way, arguments.shot, arguments.episodes, arguments.seed)
-    spaces = SPACES if sets.ALL[arguments.set].non_negative else ["unit length"]
+    name, path, header = episodes.write_as_asked(__doc__)
+    spaces = SPACES if sets.ALL[name].non_negative else ["unit length"]
     for space, methods in run(path, spaces, say=lambda text: print(text, file=sys.stderr)).items():
         for method, measured in methods.items():
             accuracy = np.array(measured["accuracy"]) * 100
