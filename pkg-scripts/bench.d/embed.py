@@ -1,9 +1,18 @@
-"""Gives every picture of a set its embedding with the program, so that numbers are those of the encoder that ships."""
+"""Gives every item of a set its vector: pictures with the program, so that numbers are those of the encoder that ships; texts with
+the published encoder (embed_text.py).
 
+    python embed.py SET…
+"""
+
+import argparse
 import csv
 import hashlib
 import subprocess
+import sys
 
+import numpy as np
+
+import embed_text
 import fetch
 import sets
 
@@ -34,11 +43,33 @@ def encoder_identity():
 
 def vectors_of(name, say):
     """Makes sure that the vectors of a set are there and of today's encoder."""
-    file = sets.VECTORS / f"{name}.npy"
-    if not sets.ALL[name].pictures:
-        if not file.exists() and fetch.fetch([name]):
-            raise sets.Unmeasured(f"the set {name} can't be had")
+    kind = sets.ALL[name].kind
+    {"pictures": vectors_of_pictures, "texts": vectors_of_texts, "table": vectors_of_table}[kind](name, say)
+
+
+def vectors_of_table(name, say):
+    """A table is vectors already."""
+    if not (sets.VECTORS / f"{name}.npy").exists() and fetch.fetch([name]):
+        raise sets.Unmeasured(f"the set {name} can't be had")
+
+
+def vectors_of_texts(name, say):
+    if fetch.fetch([name]):
+        raise sets.Unmeasured(f"the set {name} can't be had")
+    file, stamp = sets.VECTORS / f"{name}.npy", sets.VECTORS / f"{name}.encoder"
+    identity = hashlib.sha256((sets.SETS / f"{name}.csv").read_bytes() + embed_text.identity().encode()).hexdigest()
+    if file.exists() and stamp.exists() and stamp.read_text() == identity:
         return
+    items = sets.read_texts(name)
+    say(f"{name}: {len(items)} texts get their vectors")
+    sets.VECTORS.mkdir(parents=True, exist_ok=True)
+    np.save(file, embed_text.embed([text for _, _, text in items], say))
+    sets.write_items(file.with_suffix(".csv"), [(category, item) for category, item, _ in items])
+    stamp.write_text(identity)
+
+
+def vectors_of_pictures(name, say):
+    file = sets.VECTORS / f"{name}.npy"
     stamp = sets.VECTORS / f"{name}.encoder"
     identity = encoder_identity()
     if file.exists() and stamp.exists() and stamp.read_text() == identity:
@@ -57,3 +88,14 @@ def vectors_of(name, say):
     sets.write_items(file.with_suffix(".csv"), [item.split("/", 1) for item in items])
     names.unlink()
     stamp.write_text(identity)
+
+
+def main():
+    parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
+    parser.add_argument("sets", nargs="+", choices=list(sets.ALL), metavar="SET")
+    for name in parser.parse_args().sets:
+        vectors_of(name, lambda text: print(text, file=sys.stderr, flush=True))
+
+
+if __name__ == "__main__":
+    main()

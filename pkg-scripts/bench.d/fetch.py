@@ -6,7 +6,6 @@ A set that can't be had is skipped with one line that says why. What is there al
 import argparse
 import json
 import shutil
-import subprocess
 import sys
 import tempfile
 from pathlib import Path
@@ -14,6 +13,8 @@ from pathlib import Path
 import numpy as np
 
 import sets
+import texts
+from clients import Skip, install_node_packages, run
 
 HERE = Path(__file__).resolve().parent
 # Exact versions, since pictures and names decide the numbers.
@@ -31,40 +32,6 @@ ICON_PACKAGES = {
 }
 STAMPS_PACKAGE = "tuxpaint-stamps-default"
 LEAST_STAMPS = 10
-
-
-class Skip(Exception):
-    """A source can't be had on this machine."""
-
-
-def run(command, **options):
-    """Runs a client; its own words become the reason when it fails or isn't there."""
-    try:
-        return subprocess.run(command, check=True, capture_output=True, text=True, **options).stdout
-    except FileNotFoundError:
-        raise Skip(f"the program `{command[0]}` is not on this machine") from None
-    except subprocess.CalledProcessError as error:
-        lines = (error.stderr or error.stdout).strip().splitlines() or [f"exit code {error.returncode}"]
-        # Clients surround their reason with codes and paths of logs: the first real sentence is it.
-        sentence = next((line for line in lines if len(line.split()) > 5), lines[-1])
-        raise Skip(f"`{' '.join(command[:2])}` failed: {sentence}") from None
-
-
-def installed_version(package):
-    description = sets.NODE / "node_modules" / package / "package.json"
-    return json.loads(description.read_text())["version"] if description.exists() else None
-
-
-def install_node_packages(packages):
-    """Installs npm packages, {name: exact version}, into data/node."""
-    missing = [f"{name}@{version}" for name, version in packages.items() if installed_version(name) != version]
-    if not missing:
-        return
-    sets.NODE.mkdir(parents=True, exist_ok=True)
-    description = sets.NODE / "package.json"
-    if not description.exists():
-        description.write_text('{ "private": true, "description": "npm packages of the benchmark" }\n')
-    run(["npm", "install", "--no-audit", "--no-fund", "--save-exact", *missing], cwd=sets.NODE)
 
 
 def icons():
@@ -135,7 +102,7 @@ def tables():
 
 def fetch(names):
     """Fetches the sets named; the names of those that had to be skipped are returned."""
-    ways = {"icons-test": icons, "icons-learn": icons, "stamps": stamps, **tables()}
+    ways = {"icons-test": icons, "icons-learn": icons, "stamps": stamps, **tables(), **texts.WAYS}
     skipped, done = [], set()
     for name in names:
         if ways[name] in done:

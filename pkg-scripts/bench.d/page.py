@@ -8,8 +8,8 @@ import numpy as np
 from PIL import Image
 from skimage import data as sample_pictures
 
+import clients
 import embed
-import fetch
 import sets
 
 PACKAGES = {"playwright-core": "1.65.1", "onnxruntime-web": "1.30.0"}
@@ -35,7 +35,7 @@ def pile():
 def prepare(say):
     """Writes what the page's measurements read into FOLDER."""
     embed.vectors_of("stamps", say)
-    fetch.install_node_packages(PACKAGES)
+    clients.install_node_packages(PACKAGES)
     FOLDER.mkdir(parents=True, exist_ok=True)
     network = FOLDER / "photo-f32.onnx"
     if not network.exists():
