@@ -99,6 +99,9 @@ pub enum Error {
         /// Items in all.
         items: usize,
     },
+    /// The person stopped the work.
+    #[error("stopped before it was done; nothing has changed")]
+    Stopped,
     /// A starter of few categories would tell too much of them.
     #[error(
         "a starter of {found} categories may tell what they were; it is only shared from {least} on: add past piles, \
@@ -165,6 +168,7 @@ impl Error {
             Error::StatisticsUnreadable(_) => "statistics-unreadable",
             Error::StarterNewer { .. } => "starter-newer",
             Error::TooLittleToLearn { .. } => "too-little-to-learn",
+            Error::Stopped => "stopped",
             Error::TooFewToShare { .. } => "too-few-to-share",
             Error::TrayNameEmpty => "tray-name-empty",
             Error::TrayNameTaken(_) => "tray-name-taken",

@@ -16,7 +16,8 @@ use serde::{Deserialize, Serialize};
 
 pub use auto::Auto;
 pub use calibrate::{calibrate, log_loss};
-pub use gradient::Gradient;
+pub use gradient::{Descent, Gradient, Groups, Step};
+pub(crate) use gradient::{Start, errors, kernels};
 pub use prototype::Prototype;
 pub use ridge::Ridge;
 
@@ -157,13 +158,13 @@ enum Recipe {
 impl Recipe {
     fn prototype(prior: &Prior, support: &Support) -> (Learned, Self) {
         let learned = prior.prototype().learn(support);
-        let (learned, factor) = calibrate(learned, support, prior.prototype_temperature(support));
+        let (learned, factor) = calibrate(learned, support, prior.prototype_factor(support));
         (learned, Self::Prototype { factor })
     }
 
     fn ridge(prior: &Prior, support: &Support) -> (Learned, Self) {
         let (learned, strength) = prior.ridge().learn_with_strength(support);
-        let (learned, factor) = calibrate(learned, support, prior.ridge_temperature(support, strength));
+        let (learned, factor) = calibrate(learned, support, prior.ridge_factor(support, strength));
         (learned, Self::Ridge { strength, factor })
     }
 
@@ -187,7 +188,7 @@ impl Recipe {
         match self {
             Self::Prototype { factor } => {
                 // Distances shrink as prototypes become means of more examples.
-                let growth = prior.prototype_temperature(support) / prior.prototype_temperature(part);
+                let growth = prior.prototype_factor(support) / prior.prototype_factor(part);
                 prior.prototype().fit(support).scaled(factor * growth)
             }
             Self::Ridge { strength, factor } => Ridge::fit(support, strength).scaled(factor),

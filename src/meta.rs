@@ -4,3 +4,5 @@
 pub mod episode;
 pub mod rehearse;
 pub mod statistics;
+pub mod train;
+mod unroll;

@@ -129,8 +129,9 @@ impl Sorter {
         if starter.encoder() != settings.encoder {
             return Err(Error::OtherEncoder { expected: settings.encoder, found: starter.encoder().to_owned() });
         }
+        let prior = starter.prior();
         let pile = Pile::with_starter(settings.space, starter)?;
-        Ok(Self { pile, ..Self::new(settings) })
+        Ok(Self { prior, pile, ..Self::new(settings) })
     }
 
     /// What past piles taught, if anything.

@@ -1,7 +1,7 @@
 //! The starter: what past piles taught, as one portable file.
 //!
-//! A ZIP archive of `starter.json` (format version, encoder, space, how many categories and items it was learned from)
-//! and NPY arrays: `mean.npy` (d, float32: the mean of the category means), `directions.npy` (r × d, int8: each row a
+//! A ZIP archive of `starter.json` (format version, encoder, space, how many categories and items it was learned from, and
+//! the lessons about learning: temperatures, strengths, shares and step sizes) and NPY arrays: `mean.npy` (d, float32: the mean of the category means), `directions.npy` (r × d, int8: each row a
 //! direction times 127 over its largest entry) and `damping.npy` (r, float32: 0 to 1). It holds no example and no category
 //! name. What it can still reveal: what the past material looked like on the whole, and in which ways items of one
 //! category differed; from few categories that may describe a single one, so [`Starter::write`] refuses below a limit.
@@ -12,13 +12,17 @@ use serde::{Deserialize, Serialize};
 use crate::{
     archive::{self, Archive},
     error::{Error, Result},
-    meta::statistics::Statistics,
+    meta::{
+        statistics::{Statistics, Sums},
+        train::{LEAST_CATEGORIES as LEAST_TO_LEARN, Lessons, train},
+    },
     npy,
+    prior::Prior,
     space::Space,
     whitening::{MOST_DIRECTIONS, Whitening},
 };
 
-const VERSION: u32 = 1;
+const VERSION: u32 = 2;
 
 /// Below this many categories a starter is not shared unless asked otherwise.
 pub const LEAST_CATEGORIES: usize = 8;
@@ -34,36 +38,71 @@ pub struct Starter {
     whitening: Whitening,
 }
 
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 struct About {
     version: u32,
     encoder: String,
     space: Space,
     categories: usize,
     items: usize,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    lessons: Option<Lessons>,
 }
 
 impl Starter {
-    /// Learns from the sums of past categories. Cost O(d³).
+    /// Learns from past piles. Cost O(d³).
     ///
-    /// Refuses fewer than two categories, and categories with a single item each only.
+    /// Refuses fewer than two categories, and categories with a single item each only. From fewer than
+    /// [`train::LEAST_CATEGORIES`](crate::meta::train::LEAST_CATEGORIES) with two items only the space is learned
+    /// ([`Starter::lessons`]).
     pub fn learn(statistics: &Statistics) -> Result<Self> {
+        Self::learn_watched(statistics, &mut |_| true)
+    }
+
+    /// The same, telling `watch` the share of the work done, 0 to 1; where it answers false, the work stops with
+    /// [`Error::Stopped`].
+    pub fn learn_watched(statistics: &Statistics, watch: &mut dyn FnMut(f64) -> bool) -> Result<Self> {
         let (categories, items) = (statistics.categories(), statistics.items());
         if categories < 2 || statistics.freedom() == 0 {
             return Err(Error::TooLittleToLearn { categories, items });
         }
+        let mut go_on = |share: f64| if watch(share) { Ok(()) } else { Err(Error::Stopped) };
+        let whole = statistics.whole();
+        let whitening = learned(&whole);
+        go_on(0.2)?;
+        // Fewer can't give a lesson, and then their halves needn't be whitened.
+        let lessons = if statistics.sample().len() < LEAST_TO_LEARN {
+            None
+        } else {
+            let halves = statistics.halves().each_ref().map(|half| {
+                let whitening = learned(half);
+                let mut past = half.mean().mapv(|x| x as f32).to_vec();
+                whitening.apply(&mut past);
+                (whitening, past)
+            });
+            go_on(0.6)?;
+            let spaces = halves.each_ref().map(|(whitening, past)| (whitening, past.as_slice()));
+            train(statistics, spaces, &mut |share| watch(0.6 + 0.4 * share))?
+        };
         let about = About {
             version: VERSION,
             encoder: statistics.encoder().to_owned(),
             space: statistics.space(),
             categories,
             items,
+            lessons,
         };
-        let learned = Whitening::learn(statistics, MOST_DIRECTIONS);
-        // What a file can hold is what is used from the start, so that saving changes nothing.
-        let (directions, damping) = learned.parts();
-        let whitening = Whitening::new(unpacked(&packed(directions)), damping.to_vec());
-        Ok(Self { about, mean: statistics.mean().mapv(|x| x as f32).to_vec(), whitening })
+        Ok(Self { about, mean: whole.mean().mapv(|x| x as f32).to_vec(), whitening })
+    }
+
+    /// What past piles taught about learning, beside the space; `None` where they were too few.
+    pub fn lessons(&self) -> Option<&Lessons> {
+        self.about.lessons.as_ref()
+    }
+
+    /// What is known before the first example of the next pile.
+    pub fn prior(&self) -> Prior {
+        self.lessons().map_or_else(Prior::default, |lessons| lessons.prior(self.whitening.parts().0))
     }
 
     /// The encoder it belongs to.
@@ -80,8 +119,10 @@ impl Starter {
     pub fn identity(&self) -> String {
         let (directions, damping) = self.whitening.parts();
         let numbers = self.mean.iter().chain(damping).chain(directions);
+        let lessons = serde_json::to_vec(&self.about.lessons).expect("plain data");
         let hash = numbers
             .flat_map(|x| x.to_bits().to_le_bytes())
+            .chain(lessons)
             .fold(0xcbf2_9ce4_8422_2325_u64, |hash, byte| (hash ^ u64::from(byte)).wrapping_mul(0x0100_0000_01b3));
         format!("{hash:016x}")
     }
@@ -144,6 +185,9 @@ impl Starter {
             return Err(Error::StarterNewer { found: version, known: VERSION });
         }
         let about: About = serde_json::from_slice(&json).map_err(damaged)?;
+        if !about.lessons.as_ref().is_none_or(Lessons::is_sound) {
+            return Err(unreadable("its lessons hold numbers that can't be".into()));
+        }
         let space = Space::new(about.space.dimension(), about.space.non_negative())?;
         let d = space.dimension();
         let wrong = |name: &str| unreadable(format!("{name} has another form than it should"));
@@ -165,6 +209,13 @@ impl Starter {
         }
         Ok(Self { about, mean, whitening: Whitening::new(unpacked(&directions), damping) })
     }
+}
+
+/// The whitening of these sums as a file can hold it: what is used from the start, so that saving changes nothing.
+fn learned(sums: &Sums) -> Whitening {
+    let learned = Whitening::learn(sums, MOST_DIRECTIONS);
+    let (directions, damping) = learned.parts();
+    Whitening::new(unpacked(&packed(directions)), damping.to_vec())
 }
 
 /// Each row in whole numbers from −127 to 127.

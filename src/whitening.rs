@@ -9,7 +9,7 @@
 use nalgebra::{DMatrix, SymmetricEigen};
 use ndarray::{Array2, ArrayView1};
 
-use crate::{arithmetic::dot, meta::statistics::Statistics};
+use crate::{arithmetic::dot, meta::statistics::Sums};
 
 /// How strongly variances are drawn toward their mean.
 const SHRINKAGE: f64 = 1.0;
@@ -36,8 +36,8 @@ impl Whitening {
     /// Learned from past categories; at most `rank` directions. Cost O(d³).
     ///
     /// The covariance of few items has few directions, and is trusted no further than they reach.
-    pub fn learn(statistics: &Statistics, rank: usize) -> Self {
-        let covariance = statistics.covariance();
+    pub fn learn(sums: &Sums, rank: usize) -> Self {
+        let covariance = sums.covariance();
         let d = covariance.nrows();
         let matrix = DMatrix::from_fn(d, d, |i, j| covariance[[i, j]]);
         let SymmetricEigen { eigenvectors, eigenvalues } = SymmetricEigen::new(matrix);
@@ -45,7 +45,7 @@ impl Whitening {
         order.sort_by(|&a, &b| eigenvalues[b].total_cmp(&eigenvalues[a]).then(a.cmp(&b)));
         let variance = |place: usize| eigenvalues[order[place]].max(0.0);
         let typical = SHRINKAGE * (0..d).map(variance).sum::<f64>() / d as f64;
-        let rank = rank.min(MOST_DIRECTIONS).min(statistics.freedom()).min(d - 1);
+        let rank = rank.min(MOST_DIRECTIONS).min(sums.freedom()).min(d - 1);
         if rank == 0 || typical <= 0.0 {
             return Self::new(Array2::zeros((0, d)), Vec::new());
         }

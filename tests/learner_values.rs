@@ -3,7 +3,8 @@
 
 use kenspeckle::{
     Prior, Support,
-    learner::{Gradient, Learner, Prototype, Ridge},
+    learner::{Descent, Gradient, Learner, Prototype, Ridge},
+    prior::{ByShot, usual_prototype_factor},
 };
 use ndarray::Array2;
 use serde::Deserialize;
@@ -98,14 +99,13 @@ fn ridge_fits_as_scikit_learns_ridge() {
 #[test]
 fn gradient_steps_as_numpy_takes_them() {
     let values = values();
-    let prior = Prior {
-        steps: values.steps,
-        step_size: values.step_size,
-        start_temperature: Some(values.temperature),
-        ..Prior::default()
-    };
     for task in &values.tasks {
         let support = task.support();
+        let prior = Prior {
+            descent: Descent::even(values.steps, values.step_size),
+            prototype_temperature: ByShot::even(values.temperature / usual_prototype_factor(support.shot())),
+            ..Prior::default()
+        };
         let head = Gradient { prior: &prior }.learn(&support).head;
         assert_close(&task.name, &head.logits(rows(&task.queries).view()), &task.gradient, 1e-4);
 

@@ -26,10 +26,11 @@ fn space() -> Space {
 fn statistics(categories: usize, each: usize, seed: u64) -> Statistics {
     let mut rng = ChaCha8Rng::seed_from_u64(seed);
     let mut statistics = Statistics::new("test", space());
-    for centre in centres(categories, &mut rng) {
-        let items: Vec<Vec<f32>> = (0..each).map(|_| item(&centre, &mut rng)).collect();
-        statistics.add_category(items.iter().map(Vec::as_slice)).unwrap();
-    }
+    let pile: Vec<Vec<Vec<f32>>> = centres(categories, &mut rng)
+        .iter()
+        .map(|centre| (0..each).map(|_| item(centre, &mut rng)).collect())
+        .collect();
+    statistics.add_pile(pile.iter().map(|items| items.iter().map(Vec::as_slice))).unwrap();
     statistics
 }
 
@@ -80,11 +81,10 @@ fn a_starter_of_1280_dimensions_is_small() {
     let mut rng = ChaCha8Rng::seed_from_u64(3);
     let space = Space::new(1280, true).unwrap();
     let mut statistics = Statistics::new("photos", space);
-    for _ in 0..40 {
-        let items: Vec<Vec<f32>> =
-            (0..9).map(|_| (0..1280).map(|_| rng.random_range(0.0_f32..1.0)).collect()).collect();
-        statistics.add_category(items.iter().map(Vec::as_slice)).unwrap();
-    }
+    let mut items =
+        || -> Vec<Vec<f32>> { (0..9).map(|_| (0..1280).map(|_| rng.random_range(0.0_f32..1.0)).collect()).collect() };
+    let pile: Vec<Vec<Vec<f32>>> = (0..40).map(|_| items()).collect();
+    statistics.add_pile(pile.iter().map(|items| items.iter().map(Vec::as_slice))).unwrap();
     let starter = Starter::learn(&statistics).unwrap();
     assert_eq!(starter.whitening().rank(), 256);
     let size = starter.write(8).unwrap().len();

@@ -9,9 +9,9 @@
 use super::{Learned, LeftOut, Recipe, calibrate, log_loss};
 use crate::{head::Head, prior::Prior, support::Support};
 
-/// Up to this n² C the gradient learner takes part: its steps cost some hundred times as much, and at 20 ways it was not
-/// ahead of ridge.
-const GRADIENT_LIMIT: usize = 3_000_000;
+/// Up to this n³ C the gradient learner takes part: judging it costs some ten times as much, and with that many examples
+/// ridge is not behind.
+const GRADIENT_LIMIT: usize = 5_000_000;
 
 /// Shares are multiples of one in this many.
 const GRAIN: usize = 10;
@@ -28,7 +28,7 @@ impl Auto<'_> {
     pub(super) fn judge(&self, support: &Support) -> (Learned, Vec<Recipe>) {
         type Judge = fn(&Prior, &Support) -> (Learned, Recipe);
         let mut judges: Vec<Judge> = vec![Recipe::prototype, Recipe::ridge];
-        if support.len() * support.len() * support.categories() <= GRADIENT_LIMIT {
+        if support.len().pow(3) * support.categories() <= GRADIENT_LIMIT {
             judges.push(Recipe::gradient);
         }
         let (members, recipes): (Vec<_>, Vec<_>) = judges.into_iter().map(|judge| judge(self.prior, support)).unzip();

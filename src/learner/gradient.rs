@@ -1,148 +1,385 @@
 //! A few gradient steps: a softmax head that starts at the prototypes and descends on the examples.
 //!
-//! Starts at the nearest-prototype head (without shrinkage) with the prior's temperature, then takes T ≤ 20 full-batch steps of size α down
-//! the log loss, in which every category counts the same however uneven the counts. All of it happens in the span of the
-//! examples (W = Aᵀ Z), so a step costs O(n² C) whatever the dimension. Leave-one-out repeats the steps without each
-//! example: exact up to [`EXACT_LIMIT`] examples, beyond that in twelve groups.
+//! Starts at the nearest-prototype head (without shrinkage) with the prior's temperature, then takes T ≤ 20 full-batch
+//! steps down the log loss, in which every category counts the same however uneven the counts. Start and steps come from a
+//! [`Descent`]: weights fall into groups by direction (bands of the directions that a starter damps, and the rest), and
+//! each group has a start scale a_g and a step size α_tg of its own at every step t, the bias one more. With M_g the map onto
+//! group g, the start is the logit −τ Σ_g a_g (z − p_c)ᵀ M_g (z − p_c), and a step is w −= Σ_g α_tg M_g ∂L/∂w.
+//!
+//! All of it happens in the span of the examples: with K_g = Z M_g Zᵀ a step changes the logits by −(Σ_g α_tg K_g + β_t) E,
+//! E the weighted errors (n × C), so it costs O(n² C) whatever the dimension. Leave-one-out repeats the steps without each
+//! example, exactly, in O(n³ C T).
 //!
 //! Use it where examples are plenty enough for prototypes to be crude and too few for a free fit. MAML: Finn et al. 2017
-//! (arXiv:1703.03400); start at the prototypes: Triantafillou et al. 2020 (arXiv:1903.03096).
+//! (arXiv:1703.03400); start at the prototypes: Triantafillou et al. 2020 (arXiv:1903.03096); learned step sizes: Li et al.
+//! 2017 (arXiv:1707.09835), one for each step: Antoniou et al. 2019 (arXiv:1810.09502).
 
-use ndarray::{Array1, Array2, Axis};
+use std::sync::Arc;
+
+use ndarray::{Array1, Array2, ArrayView2, Axis};
+use serde::{Deserialize, Serialize};
 
 use super::{Learned, Learner, LeftOut};
 use crate::{arithmetic, head::Head, prior::Prior, support::Support};
 
-/// Up to this many examples, leave-one-out is exact.
-pub const EXACT_LIMIT: usize = 48;
+/// The most steps.
+pub const MOST_STEPS: usize = 20;
 
-/// In how many groups examples are left out beyond that.
-const GROUPS: usize = 12;
+/// How many columns of logits are worked on at a time while examples are left out: they stay in the cache.
+const BLOCK: usize = 128;
+
+/// Directions in the space by group: the first so many, the next, and so on; what none of them holds is the rest.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Groups {
+    /// r × d, near to orthonormal.
+    directions: Array2<f32>,
+    /// Where each group ends, ascending up to r.
+    ends: Vec<usize>,
+}
+
+impl Groups {
+    /// Groups of these directions (r × d); `ends` ascends up to r.
+    pub(crate) fn new(directions: Array2<f32>, ends: Vec<usize>) -> Self {
+        debug_assert!(ends.is_sorted() && ends.last().copied().unwrap_or(0) == directions.nrows());
+        Self { directions, ends }
+    }
+
+    /// How many groups, the rest not counted.
+    pub fn len(&self) -> usize {
+        self.ends.len()
+    }
+
+    /// Whether there is the rest only.
+    pub fn is_empty(&self) -> bool {
+        self.ends.is_empty()
+    }
+
+    fn ranges(&self) -> impl Iterator<Item = std::ops::Range<usize>> + '_ {
+        let starts = std::iter::once(0).chain(self.ends.iter().copied());
+        starts.zip(&self.ends).map(|(start, &end)| start..end)
+    }
+
+    /// Inner products of rows (n × d) with the directions: n × r. Cost O(n r d).
+    fn coordinates(&self, rows: ArrayView2<f32>) -> Array2<f64> {
+        arithmetic::products(rows, self.directions.view()).mapv(f64::from)
+    }
+}
+
+/// The gradient learner's start and steps.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Descent {
+    groups: Option<Arc<Groups>>,
+    /// a_g for every group and the rest.
+    start: Vec<f64>,
+    steps: Vec<Step>,
+}
+
+/// One step's sizes.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Step {
+    /// For the weights, by group, the rest last.
+    pub weights: Vec<f64>,
+    /// For the bias.
+    pub bias: f64,
+}
+
+impl Descent {
+    /// So many steps (at most [`MOST_STEPS`]) of one size, everything in one group.
+    pub fn even(steps: usize, size: f64) -> Self {
+        let step = Step { weights: vec![size], bias: size };
+        Self { groups: None, start: vec![1.0], steps: vec![step; steps.min(MOST_STEPS)] }
+    }
+
+    /// Start scales and step sizes for these groups and the rest: all lists are one longer than the groups are.
+    pub(crate) fn new(groups: Arc<Groups>, start: Vec<f64>, steps: Vec<Step>) -> Self {
+        debug_assert!(start.len() == groups.len() + 1 && steps.len() <= MOST_STEPS);
+        debug_assert!(steps.iter().all(|step| step.weights.len() == groups.len() + 1));
+        Self { groups: Some(groups), start, steps }
+    }
+
+    /// The same sizes for other directions in as many groups; the usual descent has none and stays as it is.
+    pub(crate) fn with_groups_of(&self, groups: &Arc<Groups>) -> Self {
+        Self { groups: self.groups.as_ref().map(|_| groups.clone()), ..self.clone() }
+    }
+
+    /// The start's scales a_g by group, the rest last.
+    pub fn start(&self) -> &[f64] {
+        &self.start
+    }
+
+    /// The steps in order.
+    pub fn steps(&self) -> &[Step] {
+        &self.steps
+    }
+}
+
+/// K_g between rows, n × n: one for each group and one for the rest.
+pub(crate) fn kernels(groups: Option<&Groups>, rows: ArrayView2<f32>, gram: &Array2<f64>) -> Vec<Array2<f64>> {
+    let mut rest = gram.clone();
+    let mut kernels = Vec::new();
+    if let Some(groups) = groups {
+        let coordinates = groups.coordinates(rows);
+        for range in groups.ranges() {
+            let columns: Vec<usize> = range.collect();
+            let part = coordinates.select(Axis(1), &columns);
+            let kernel = arithmetic::times(&part, &part.t().to_owned());
+            rest -= &kernel;
+            kernels.push(kernel);
+        }
+    }
+    kernels.push(rest);
+    kernels
+}
+
+/// Σ_g factor_g K_g.
+pub(crate) fn combined(kernels: &[Array2<f64>], factors: &[f64]) -> Array2<f64> {
+    let mut sum = &kernels[0] * factors[0];
+    for (kernel, &factor) in kernels.iter().zip(factors).skip(1) {
+        sum.scaled_add(factor, kernel);
+    }
+    sum
+}
+
+/// Squared distances within and between under one kernel: what start logits are made of.
+pub(crate) struct Start {
+    /// x · M p_c for every row, N × C.
+    pub with_means: Array2<f64>,
+    /// p_c · M p_c.
+    pub squares: Array1<f64>,
+    /// Squared distances of examples from their own category's mean, summed; and how many of them are free.
+    scatter: f64,
+    freedom: usize,
+    counts: Vec<usize>,
+}
+
+impl Start {
+    /// `kernel` is N × n: every row's products with the examples, which are the first n rows.
+    pub fn new(kernel: &Array2<f64>, labels: &[usize], counts: &[usize]) -> Self {
+        let means = Array2::from_shape_fn((labels.len(), counts.len()), |(i, c)| {
+            if labels[i] == c { 1.0 / counts[c] as f64 } else { 0.0 }
+        });
+        let with_means = arithmetic::times(kernel, &means);
+        let mut squares = Array1::zeros(counts.len());
+        let mut total = 0.0;
+        for (i, &label) in labels.iter().enumerate() {
+            squares[label] += with_means[[i, label]] / counts[label] as f64;
+            total += kernel[[i, i]];
+        }
+        let between: f64 = counts.iter().zip(&squares).map(|(&count, square)| count as f64 * square).sum();
+        let scatter = (total - between).max(0.0);
+        Self { with_means, squares, scatter, freedom: labels.len() - counts.len(), counts: counts.to_vec() }
+    }
+
+    /// s²: the pooled variance within categories; 0 where every category has one example.
+    fn variance(&self) -> f64 {
+        if self.freedom == 0 { 0.0 } else { self.scatter / self.freedom as f64 }
+    }
+
+    /// Each category's constant: s²/n_c − p_c · M p_c.
+    pub fn constants(&self) -> Array1<f64> {
+        let variance = self.variance();
+        Array1::from_shape_fn(self.counts.len(), |c| variance / self.counts[c] as f64 - self.squares[c])
+    }
+
+    /// −‖x − p_c‖² + s²/n_c for every row, but for what is the same in all categories: N × C.
+    pub fn logits(&self) -> Array2<f64> {
+        &self.with_means * 2.0 + &self.constants()
+    }
+
+    /// The same by the prototypes without example `i`, whose category has others.
+    fn logits_without(&self, kernel: &Array2<f64>, i: usize, label: usize) -> Array2<f64> {
+        let (with, without) = (self.counts[label] as f64, (self.counts[label] - 1) as f64);
+        let own = kernel[[i, i]];
+        let product = self.with_means[[i, label]];
+        let mut moved = self.with_means.clone();
+        for j in 0..moved.nrows() {
+            moved[[j, label]] = (with * moved[[j, label]] - kernel[[j, i]]) / without;
+        }
+        let mut squares = self.squares.clone();
+        squares[label] = (with * with * squares[label] - 2.0 * with * product + own) / (without * without);
+        let distance = own - 2.0 * product + self.squares[label];
+        let mut counts = self.counts.clone();
+        counts[label] -= 1;
+        let scatter = (self.scatter - distance * with / without).max(0.0);
+        Self { with_means: moved, squares, scatter, freedom: self.freedom - 1, counts }.logits()
+    }
+}
+
+/// What each example's loss counts for: every category the same. An example that is left out counts for nothing.
+fn weights(labels: &[usize], counts: &[usize], left_out: Option<usize>) -> Vec<f64> {
+    let out_of = |label: usize| counts[label] - usize::from(left_out.is_some_and(|i| labels[i] == label));
+    let weight = |(i, &label): (usize, &usize)| {
+        if left_out == Some(i) { 0.0 } else { 1.0 / (out_of(label) * counts.len()) as f64 }
+    };
+    labels.iter().enumerate().map(weight).collect()
+}
+
+/// The weighted errors of one softmax head: w_i (softmax(logits_i) − onehot_i), n × C.
+pub(crate) fn errors(logits: &Array2<f64>, labels: &[usize], counts: &[usize]) -> Array2<f64> {
+    let mut errors = logits.clone();
+    let weights = weights(labels, counts, None);
+    for ((mut row, &label), weight) in errors.outer_iter_mut().zip(labels).zip(weights) {
+        into_error(row.as_slice_mut().expect("standard layout"), label, weight);
+    }
+    errors
+}
+
+/// Turns the logits of one example into its weighted error.
+fn into_error(logits: &mut [f64], label: usize, weight: f64) {
+    if weight == 0.0 {
+        logits.fill(0.0);
+        return;
+    }
+    let top = logits.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    logits.iter_mut().for_each(|x| *x = libm::exp(*x - top));
+    let factor = weight / logits.iter().sum::<f64>();
+    logits.iter_mut().for_each(|x| *x *= factor);
+    logits[label] -= weight;
+}
 
 /// The few-step gradient learner.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Gradient<'a> {
-    /// Step size, number of steps and the start's temperature.
+    /// Start, steps and the start's temperature.
     pub prior: &'a Prior,
 }
 
-impl Learner for Gradient<'_> {
-    fn learn(&self, support: &Support) -> Learned {
-        let everything: Vec<usize> = (0..support.len()).collect();
-        let (coefficients, bias) = self.descend(support, &everything);
-        let head = Head::new(support.combine(&coefficients), bias);
-        Learned { head, left_out: self.leave_one_out(support) }
-    }
+/// A support set seen through the descent's kernels.
+struct Landscape<'a> {
+    support: &'a Support,
+    temperature: f64,
+    start_kernel: Array2<f64>,
+    start: Start,
+    /// The different sums Σ_g α_tg K_g + β_t, and which of them each step uses.
+    step_kernels: Vec<Array2<f64>>,
+    order: Vec<usize>,
 }
 
-impl Gradient<'_> {
-    /// A (n × C, rows of left-out examples zero) and the bias after the steps on the `kept` examples.
-    fn descend(&self, support: &Support, kept: &[usize]) -> (Array2<f64>, Array1<f64>) {
-        let (n, categories) = (support.len(), support.categories());
-        let gram = support.gram();
-        let mut counts = vec![0_usize; categories];
-        kept.iter().for_each(|&i| counts[support.labels()[i]] += 1);
-        let weights: Vec<f64> = kept.iter().map(|&i| 1.0 / (counts[support.labels()[i]] * categories) as f64).collect();
-
-        let mut means = Array2::<f64>::zeros((n, categories));
-        for &i in kept {
-            means[[i, support.labels()[i]]] = 1.0 / counts[support.labels()[i]] as f64;
+impl<'a> Landscape<'a> {
+    fn new(prior: &Prior, support: &'a Support) -> Self {
+        let descent = &prior.descent;
+        let kernels = kernels(descent.groups.as_deref(), support.embeddings(), support.gram());
+        let start_kernel = combined(&kernels, &descent.start);
+        let mut distinct: Vec<&Step> = Vec::new();
+        let mut order = Vec::new();
+        for step in &descent.steps {
+            let place = distinct.iter().position(|&known| known == step).unwrap_or_else(|| {
+                distinct.push(step);
+                distinct.len() - 1
+            });
+            order.push(place);
         }
-        let mut products = arithmetic::times(gram, &means);
-        let squares = (&means * &products).sum_axis(Axis(0));
-        let temperature = self.prior.prototype_temperature(support);
-        let mut coefficients = means * (2.0 * temperature);
-        let variance = variance(support, kept, &counts, &squares);
-        let mut bias = Array1::from_shape_fn(categories, |c| temperature * (variance / counts[c] as f64 - squares[c]));
-        products *= 2.0 * temperature;
-
-        for _ in 0..self.prior.steps {
-            let mut step = Array2::<f64>::zeros((n, categories));
-            for (&i, &weight) in kept.iter().zip(&weights) {
-                let mut error = arithmetic::softmax((&products.row(i) + &bias).view());
-                error[support.labels()[i]] -= 1.0;
-                step.row_mut(i).assign(&(error * (-self.prior.step_size * weight)));
-            }
-            bias += &step.sum_axis(Axis(0));
-            products += &arithmetic::times(gram, &step);
-            coefficients += &step;
+        Self {
+            support,
+            temperature: prior.prototype_factor(support),
+            start: Start::new(&start_kernel, support.labels(), support.counts()),
+            start_kernel,
+            step_kernels: distinct.iter().map(|step| combined(&kernels, &step.weights) + step.bias).collect(),
+            order,
         }
-        (coefficients, bias)
     }
 
-    fn leave_one_out(&self, support: &Support) -> LeftOut {
-        let n = support.len();
-        let gram = support.gram();
-        let mut left_out = LeftOut::unknown(n, support.categories());
-        let groups = if n <= EXACT_LIMIT { n } else { GROUPS };
-        for group in 0..groups {
-            let judged: Vec<usize> = group_members(support, group, groups);
-            if judged.is_empty() {
-                continue;
+    /// Descends from these logits (n × C for each variant, side by side) with these weights (by variant, then example).
+    /// `watch` is shown the errors of every step. Cost O(n² C T) a variant.
+    fn descend(&self, logits: &mut Array2<f64>, weights: &[Vec<f64>], mut watch: impl FnMut(&Array2<f64>)) {
+        let categories = self.support.categories();
+        for &kernel in &self.order {
+            let mut errors = logits.clone();
+            for (i, mut row) in errors.outer_iter_mut().enumerate() {
+                let row = row.as_slice_mut().expect("standard layout");
+                for (logits, weights) in row.chunks_exact_mut(categories).zip(weights) {
+                    into_error(logits, self.support.labels()[i], weights[i]);
+                }
             }
-            let kept: Vec<usize> = (0..n).filter(|i| !judged.contains(i)).collect();
-            let (coefficients, bias) = self.descend(support, &kept);
-            for &i in &judged {
-                left_out.set(i, &(gram.row(i).dot(&coefficients) + &bias));
+            *logits -= &arithmetic::times(&self.step_kernels[kernel], &errors);
+            watch(&errors);
+        }
+    }
+
+    fn leave_one_out(&self) -> LeftOut {
+        let (labels, counts) = (self.support.labels(), self.support.counts());
+        let (n, categories) = (self.support.len(), self.support.categories());
+        let mut left_out = LeftOut::unknown(n, categories);
+        let judged: Vec<usize> = (0..n).filter(|&i| counts[labels[i]] > 1).collect();
+        for block in judged.chunks((BLOCK / categories).max(1)) {
+            let mut logits = Array2::zeros((n, block.len() * categories));
+            for (variant, &i) in block.iter().enumerate() {
+                let start = self.start.logits_without(&self.start_kernel, i, labels[i]) * self.temperature;
+                let columns = variant * categories;
+                for ((j, c), &x) in start.indexed_iter() {
+                    logits[[j, columns + c]] = x;
+                }
+            }
+            let weights: Vec<Vec<f64>> = block.iter().map(|&i| weights(labels, counts, Some(i))).collect();
+            self.descend(&mut logits, &weights, |_| ());
+            for (variant, &i) in block.iter().enumerate() {
+                let columns = variant * categories;
+                left_out.set(i, &Array1::from_shape_fn(categories, |c| logits[[i, columns + c]]));
             }
         }
         left_out
     }
 }
 
-/// The pooled variance within categories of the kept examples, given each category's count and squared mean.
-fn variance(support: &Support, kept: &[usize], counts: &[usize], squares: &Array1<f64>) -> f64 {
-    let gram = support.gram();
-    let total: f64 = kept.iter().map(|&i| gram[[i, i]]).sum();
-    let between: f64 = counts.iter().zip(squares).map(|(&count, square)| count as f64 * square).sum();
-    let freedom = kept.len() - counts.len();
-    if freedom == 0 { 0.0 } else { (total - between).max(0.0) / freedom as f64 }
-}
-
-/// The examples of a group, never all of a category: examples are dealt out to the groups category by category.
-fn group_members(support: &Support, group: usize, groups: usize) -> Vec<usize> {
-    let mut seen = vec![0_usize; support.categories()];
-    let mut dealt = 0;
-    let mut members = Vec::new();
-    for (i, &label) in support.labels().iter().enumerate() {
-        let rank = seen[label];
-        seen[label] += 1;
-        dealt += 1;
-        if support.counts()[label] < 2 {
-            continue;
-        }
-        // One by one when there are as many groups as examples; else category by category, each in its own rotation.
-        let place = if groups == support.len() { dealt - 1 } else { rank + label };
-        if place % groups == group {
-            members.push(i);
-        }
+impl Learner for Gradient<'_> {
+    fn learn(&self, support: &Support) -> Learned {
+        let landscape = Landscape::new(self.prior, support);
+        Learned { head: self.descend(&landscape), left_out: landscape.leave_one_out() }
     }
-    members
 }
 
-#[cfg(test)]
-mod tests {
-    use super::*;
+impl Gradient<'_> {
+    /// The head alone. Cost O(n² (d + C T)), and O(n r d) with directions.
+    pub fn fit(&self, support: &Support) -> Head {
+        self.descend(&Landscape::new(self.prior, support))
+    }
 
-    #[test]
-    fn groups_never_take_a_whole_category() {
-        for counts in [[60, 2, 1], [30, 30, 30], [49, 1, 2]] {
-            let labels: Vec<usize> = counts.iter().enumerate().flat_map(|(c, &n)| vec![c; n]).collect();
-            let rows = Array2::from_shape_fn((labels.len(), 3), |(i, j)| ((i * 7 + j * 3) % 11) as f32);
-            let support = Support::new(rows, labels, 3).unwrap();
-            let groups = if support.len() <= EXACT_LIMIT { support.len() } else { GROUPS };
-            let mut judged = vec![0; support.len()];
-            for group in 0..groups {
-                let members = group_members(&support, group, groups);
-                for c in 0..3 {
-                    let taken = members.iter().filter(|&&i| support.labels()[i] == c).count();
-                    assert!(taken < support.counts()[c].max(1) || taken == 0);
+    fn descend(&self, landscape: &Landscape) -> Head {
+        let Descent { groups, start, steps } = &self.prior.descent;
+        let support = landscape.support;
+        let temperature = landscape.temperature;
+        // Coefficients of the examples by group, the rest last: w = Σ_g M_g Zᵀ A_g.
+        let means = support.mean_coefficients();
+        let mut coefficients: Vec<Array2<f64>> = start.iter().map(|a| &means * (2.0 * temperature * a)).collect();
+        let mut bias = landscape.start.constants() * temperature;
+        let mut logits = landscape.start.logits() * temperature;
+        let everyone = [weights(support.labels(), support.counts(), None)];
+        let mut sizes = steps.iter();
+        landscape.descend(&mut logits, &everyone, |errors| {
+            let Some(step) = sizes.next() else { return };
+            bias.scaled_add(-step.bias, &errors.sum_axis(Axis(0)));
+            coefficients.iter_mut().zip(&step.weights).for_each(|(sum, &size)| sum.scaled_add(-size, errors));
+        });
+        let rest = &coefficients[coefficients.len() - 1];
+        let weights = support.combine(rest);
+        let weights = match groups {
+            Some(groups) => self.add_groups(weights, groups, support, &coefficients),
+            None => weights,
+        };
+        Head::new(weights, bias)
+    }
+
+    /// Adds what the groups have beyond the rest: Σ_g M_g Zᵀ (A_g − A_rest).
+    fn add_groups(
+        &self,
+        weights: Array2<f32>,
+        groups: &Groups,
+        support: &Support,
+        coefficients: &[Array2<f64>],
+    ) -> Array2<f32> {
+        let coordinates = groups.coordinates(support.embeddings());
+        let rest = &coefficients[coefficients.len() - 1];
+        let mut weights = weights.mapv(f64::from);
+        for (range, own) in groups.ranges().zip(coefficients) {
+            let beyond = own - rest;
+            for k in range {
+                let direction = groups.directions.row(k);
+                for c in 0..weights.nrows() {
+                    let along: f64 = (0..support.len()).map(|i| beyond[[i, c]] * coordinates[[i, k]]).sum();
+                    weights.row_mut(c).iter_mut().zip(&direction).for_each(|(w, &u)| *w += along * f64::from(u));
                 }
-                members.iter().for_each(|&i| judged[i] += 1);
-            }
-            for (i, &times) in judged.iter().enumerate() {
-                assert_eq!(times, usize::from(support.counts()[support.labels()[i]] > 1));
             }
         }
+        weights.mapv(|w| w as f32)
     }
 }

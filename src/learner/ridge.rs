@@ -75,21 +75,22 @@ impl Ridge<'_> {
     }
 
     fn choose(&self, support: &Support) -> (Solution, f64) {
+        let expected = self.prior.strength(support);
         let judge = |strength: f64| {
             let solution = solve(support, strength);
-            let factor = temperature(&solution.left_out, support, self.prior.ridge_temperature(support, strength));
-            let pull = (libm::log(strength / self.prior.ridge_strength) / STRENGTH_SPREAD).powi(2) / 2.0;
+            let factor = temperature(&solution.left_out, support, self.prior.ridge_factor(support, strength));
+            let pull = (libm::log(strength / expected) / STRENGTH_SPREAD).powi(2) / 2.0;
             let (loss, known) = log_loss(&solution.left_out, support, factor);
             (known, loss + pull, solution, strength)
         };
-        let start = judge(self.prior.ridge_strength);
+        let start = judge(expected);
         if start.0 == 0 {
             return (start.2, start.3);
         }
         // Downhill in both directions from the prior's strength: the loss has one valley in practice, and every strength
         // costs a factorisation.
-        let weaker = STRENGTHS.into_iter().rev().filter(|&strength| strength < self.prior.ridge_strength);
-        let stronger = STRENGTHS.into_iter().filter(|&strength| strength > self.prior.ridge_strength);
+        let weaker = STRENGTHS.into_iter().rev().filter(|&strength| strength < expected);
+        let stronger = STRENGTHS.into_iter().filter(|&strength| strength > expected);
         let mut best = start;
         for direction in [weaker.collect::<Vec<_>>(), stronger.collect()] {
             for next in direction.into_iter().map(judge) {

@@ -6,7 +6,7 @@ use clap::Args;
 use kenspeckle::{
     Space, Starter,
     encoder::{Encoder, PhotoEncoder},
-    meta::statistics::Statistics,
+    meta::{self, statistics::Statistics},
     starter::LEAST_CATEGORIES,
 };
 
@@ -78,7 +78,21 @@ impl Learn {
         let file = if self.partial {
             gathered.write()
         } else {
-            let starter = Starter::learn(&gathered).map_err(Failure::because)?;
+            let bar = console::progress(100, "learning");
+            let starter = Starter::learn_watched(&gathered, &mut |share| {
+                bar.set_position((100.0 * share) as u64);
+                console::go_on().is_ok()
+            });
+            bar.finish_and_clear();
+            console::go_on()?;
+            let starter = starter.map_err(Failure::because)?;
+            if starter.lessons().is_none() {
+                console::say(&format!(
+                    "too little to learn how to learn from: that takes {} categories with two items each in a pile; the starter \
+                     knows how categories scatter, and nothing of steps and temperatures",
+                    meta::train::LEAST_CATEGORIES
+                ));
+            }
             starter.write(self.min_categories).map_err(Failure::because)?
         };
         console::go_on()?;
@@ -116,13 +130,15 @@ fn gather(encoder: &str, space: Space, examples: Vec<Example>) -> Result<(Statis
             }
         }
     }
-    let bar = console::progress(categories.len(), "learning");
+    let bar = console::progress(categories.len(), "gathering");
     let mut statistics = Statistics::new(encoder, space);
-    for items in categories.values() {
-        console::go_on()?;
-        statistics.add_category(items.iter().map(Vec::as_slice)).map_err(Failure::because)?;
-        bar.inc(1);
-    }
+    let pile = categories.values().map(|items| items.iter().map(Vec::as_slice));
+    let outcome = statistics.add_pile_watched(pile, |done| {
+        bar.set_position(done as u64);
+        console::go_on().is_ok()
+    });
     bar.finish_and_clear();
+    console::go_on()?;
+    outcome.map_err(Failure::because)?;
     Ok((statistics, unusable))
 }
