@@ -2,7 +2,8 @@
 //!
 //! A ZIP archive of `starter.json` (format version, encoder, space, how many categories and items it was learned from, and
 //! the lessons about learning: temperatures, strengths, shares and step sizes) and NPY arrays: `mean.npy` (d, float32: the mean of the category means), `directions.npy` (r × d, int8: each row a
-//! direction times 127 over its largest entry) and `damping.npy` (r, float32: 0 to 1). It holds no example and no category
+//! direction times 127 over its largest entry) and `damping.npy` (r, float32: 1 takes a direction out,
+//! 0 leaves it, down to −3 raises it). It holds no example and no category
 //! name. What it can still reveal: what the past material looked like on the whole, and in which ways items of one
 //! category differed; from few categories that may describe a single one, so [`Starter::write`] refuses below a limit.
 
@@ -14,12 +15,12 @@ use crate::{
     error::{Error, Result},
     meta::{
         statistics::{Statistics, Sums},
-        train::{LEAST_CATEGORIES as LEAST_TO_LEARN, Lessons, train},
+        train::{HalfSpace, LEAST_CATEGORIES as LEAST_TO_LEARN, Lessons, Trained, stretched, train},
     },
     npy,
     prior::Prior,
     space::Space,
-    whitening::{MOST_DIRECTIONS, Whitening},
+    whitening::{LEAST_DAMPING, MOST_DIRECTIONS, Whitening},
 };
 
 const VERSION: u32 = 2;
@@ -71,18 +72,19 @@ impl Starter {
         let whitening = learned(&whole);
         go_on(0.2)?;
         // Fewer can't give a lesson, and then their halves needn't be whitened.
-        let lessons = if statistics.sample().len() < LEAST_TO_LEARN {
+        let trained = if statistics.sample().len() < LEAST_TO_LEARN {
             None
         } else {
-            let halves = statistics.halves().each_ref().map(|half| {
-                let whitening = learned(half);
-                let mut past = half.mean().mapv(|x| x as f32).to_vec();
-                whitening.apply(&mut past);
-                (whitening, past)
-            });
+            let halves = statistics
+                .halves()
+                .each_ref()
+                .map(|half| HalfSpace { whitening: learned(half), mean: half.mean().mapv(|x| x as f32).to_vec() });
             go_on(0.6)?;
-            let spaces = halves.each_ref().map(|(whitening, past)| (whitening, past.as_slice()));
-            train(statistics, spaces, &mut |share| watch(0.6 + 0.4 * share))?
+            train(statistics, halves, &mut |share| watch(0.6 + 0.4 * share))?
+        };
+        let (whitening, lessons) = match trained {
+            Some(Trained { stretch, lessons }) => (stretched(&whitening, &stretch), Some(lessons)),
+            None => (whitening, None),
         };
         let about = About {
             version: VERSION,
@@ -196,7 +198,10 @@ impl Starter {
             return Err(wrong("mean.npy"));
         }
         let (shape, damping) = npy::read_f32(&part("damping.npy")?).ok_or_else(|| wrong("damping.npy"))?;
-        if shape.len() != 1 || shape[0] > MOST_DIRECTIONS || !damping.iter().all(|x| (0.0..=1.0).contains(x)) {
+        if shape.len() != 1
+            || shape[0] > MOST_DIRECTIONS
+            || !damping.iter().all(|&x| (LEAST_DAMPING..=1.0).contains(&f64::from(x)))
+        {
             return Err(wrong("damping.npy"));
         }
         let (shape, directions) = npy::read_i8(&part("directions.npy")?).ok_or_else(|| wrong("directions.npy"))?;

@@ -17,17 +17,21 @@ const SHRINKAGE: f64 = 1.0;
 /// The most directions that are damped: a starter of 1280 dimensions stays below 400 KB.
 pub const MOST_DIRECTIONS: usize = 256;
 
+/// A direction is raised to at most this much beyond its own length, as a negative damping.
+pub const LEAST_DAMPING: f64 = -3.0;
+
 /// A linear map of rank ≤ [`MOST_DIRECTIONS`] beside the identity.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Whitening {
     /// r × d, unit length.
     directions: Array2<f32>,
-    /// δ, r numbers from 0 to 1.
+    /// δ, r numbers: 1 takes a direction out, 0 leaves it, below 0 raises it.
     damping: Vec<f32>,
 }
 
 impl Whitening {
-    /// The whitening of these directions (r × d, unit length) by these factors (r, each from 0 to 1).
+    /// The whitening of these directions (r × d, unit length) by these factors (r, each from
+    /// [`LEAST_DAMPING`] to 1).
     pub(crate) fn new(directions: Array2<f32>, damping: Vec<f32>) -> Self {
         debug_assert_eq!(directions.nrows(), damping.len());
         Self { directions: directions.as_standard_layout().into_owned(), damping }

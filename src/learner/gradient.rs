@@ -60,7 +60,7 @@ impl Groups {
     }
 
     /// Inner products of rows (n × d) with the directions: n × r. Cost O(n r d).
-    fn coordinates(&self, rows: ArrayView2<f32>) -> Array2<f64> {
+    pub(crate) fn coordinates(&self, rows: ArrayView2<f32>) -> Array2<f64> {
         arithmetic::products(rows, self.directions.view()).mapv(f64::from)
     }
 }
@@ -113,16 +113,18 @@ impl Descent {
     }
 }
 
-/// K_g between rows, n × n: one for each group and one for the rest.
-pub(crate) fn kernels(groups: Option<&Groups>, rows: ArrayView2<f32>, gram: &Array2<f64>) -> Vec<Array2<f64>> {
-    let mut rest = gram.clone();
+/// K_g between items and examples, N × n, one for each group and one for the rest: of all their products, and for groups
+/// the items' coordinates (N × r), the examples first. Cost O(N n r).
+pub(crate) fn kernels(groups: Option<(&Groups, &Array2<f64>)>, products: &Array2<f64>) -> Vec<Array2<f64>> {
+    let n = products.ncols();
+    let mut rest = products.clone();
     let mut kernels = Vec::new();
-    if let Some(groups) = groups {
-        let coordinates = groups.coordinates(rows);
+    if let Some((groups, coordinates)) = groups {
         for range in groups.ranges() {
             let columns: Vec<usize> = range.collect();
             let part = coordinates.select(Axis(1), &columns);
-            let kernel = arithmetic::times(&part, &part.t().to_owned());
+            let examples = part.select(Axis(0), &(0..n).collect::<Vec<_>>());
+            let kernel = arithmetic::times(&part, &examples.t().to_owned());
             rest -= &kernel;
             kernels.push(kernel);
         }
@@ -258,7 +260,9 @@ struct Landscape<'a> {
 impl<'a> Landscape<'a> {
     fn new(prior: &Prior, support: &'a Support) -> Self {
         let descent = &prior.descent;
-        let kernels = kernels(descent.groups.as_deref(), support.embeddings(), support.gram());
+        let coordinates = descent.groups.as_deref().map(|groups| (groups, groups.coordinates(support.embeddings())));
+        let coordinates = coordinates.as_ref().map(|(groups, coordinates)| (*groups, coordinates));
+        let kernels = kernels(coordinates, support.gram());
         let start_kernel = combined(&kernels, &descent.start);
         let mut distinct: Vec<&Step> = Vec::new();
         let mut order = Vec::new();

@@ -1,7 +1,9 @@
 //! Meta-training: the prior that would have served small tasks from past piles best.
 //!
 //! Tasks are drawn within one past pile, in the space as a starter from the *other* half of the categories would make it, so
-//! that no task is whitened by itself. Learned are, by the log loss of the queries: how far prototypes shrink; by examples
+//! that no task is whitened by itself. Learned are, by the log loss of the queries: how much each group of directions counts
+//! beside what whitening alone would say (where categories differ along the directions in which their items do, whitening
+//! takes too much away); in the space so corrected, how far prototypes shrink; by examples
 //! a category the temperatures, the ridge learner's strength and the shares of the learners in the mix; and the gradient
 //! learner's start and step sizes by group of directions, by exact derivatives through its steps ([`super::unroll`]) with
 //! Adam (Kingma, Ba 2015, arXiv:1412.6980). Each is held near its usual value, the less the more categories there were;
@@ -13,18 +15,18 @@ use ndarray::{Array2, Axis};
 use serde::{Deserialize, Serialize};
 
 use super::{
-    episode::{Design, Episode, Episodes, Labelled},
+    episode::{Design, Episode, Episodes, Labelled, Labelling},
     statistics::{Sampled, Statistics},
     unroll::{Problem, Sizes},
 };
 use crate::{
-    arithmetic::log_sum_exp,
+    arithmetic::{self, dot, log_sum_exp},
     error::{Error, Result},
     learner::{Descent, Gradient, Groups, Prototype, Ridge, Step},
     prior::{ByShot, Prior, SHOTS, usual_prototype_factor},
-    space::Centre,
+    space::{CENTRE_CAUTION, Centre},
     support::Support,
-    whitening::Whitening,
+    whitening::{LEAST_DAMPING, Whitening},
 };
 
 /// Fewer categories teach nothing about how to learn.
@@ -56,6 +58,7 @@ const STRENGTHS: [f64; 7] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0, 10.0];
 const TEMPERATURE_SPREAD: f64 = 0.7;
 const STRENGTH_SPREAD: f64 = 1.5;
 const SIZE_SPREAD: f64 = 1.0;
+const STRETCH_SPREAD: f64 = 1.0;
 
 /// What a share of 1 too much in the mix costs before there is evidence, in nats.
 const PREFERENCE_WEIGHT: f64 = 4.0;
@@ -116,19 +119,28 @@ impl Lessons {
 }
 
 fn groups(directions: &Array2<f32>) -> Groups {
-    let rank = directions.nrows();
+    Groups::new(directions.clone(), group_ends(directions.nrows()))
+}
+
+fn group_ends(rank: usize) -> Vec<usize> {
     let mut ends: Vec<usize> = GROUP_ENDS.iter().map(|&end| end.min(rank)).collect();
     // Directions beyond the last end, if ever there are, belong to the last group.
     *ends.last_mut().expect("there are groups") = rank;
-    Groups::new(directions.clone(), ends)
+    ends
 }
 
-/// Categories of one pile and half, with the space that the other half makes.
+/// Categories of one pile and half, in the space that the other half makes.
 struct Field<'a> {
     places: Vec<Vec<f32>>,
+    /// The places' products with each other and with the whitened mean of the other half.
+    products: Array2<f64>,
+    with_past: Vec<f64>,
+    /// The places' and the mean's coordinates along the directions.
+    coordinates: Array2<f64>,
+    past_coordinates: Array2<f64>,
+    groups: Arc<Groups>,
     episodes: Vec<Episodes>,
     shots: Vec<usize>,
-    whitening: &'a Whitening,
     past: &'a [f32],
 }
 
@@ -137,54 +149,70 @@ struct Task {
     /// Position in [`SHOTS`].
     shot: usize,
     support: Support,
-    rows: Array2<f32>,
+    query_rows: Array2<f32>,
     queries: Vec<usize>,
+    /// Products of all its items with each other, and their coordinates, the examples first.
+    gram: Array2<f64>,
+    coordinates: Array2<f64>,
     /// The other half's directions.
     groups: Arc<Groups>,
 }
 
-/// Learns from the sample; `spaces` are the whitening and the whitened mean of either half. `None` where there is too
-/// little: fewer than [`LEAST_CATEGORIES`] categories with two items. `watch` is told the share done, 0 to 1, and stops the
-/// work with [`Error::Stopped`] by answering false.
+/// One half's whitening and mean.
+pub(crate) struct HalfSpace {
+    pub whitening: Whitening,
+    pub mean: Vec<f32>,
+}
+
+impl HalfSpace {
+    /// The mean, whitened.
+    fn past(&self) -> Vec<f32> {
+        let mut past = self.mean.clone();
+        self.whitening.apply(&mut past);
+        past
+    }
+}
+
+/// What training gives.
+pub(crate) struct Trained {
+    /// What each group of directions counts beside what whitening says, as a factor on lengths.
+    pub stretch: Vec<f64>,
+    /// What was learned in the space so corrected.
+    pub lessons: Lessons,
+}
+
+/// Learns from the sample and the space that either half makes. `None` where there is too little: fewer than
+/// [`LEAST_CATEGORIES`] categories with two items. `watch` is told the share done, 0 to 1, and stops the work with
+/// [`Error::Stopped`] by answering false.
 pub(crate) fn train(
     statistics: &Statistics,
-    spaces: [(&Whitening, &[f32]); 2],
+    mut spaces: [HalfSpace; 2],
     watch: &mut dyn FnMut(f64) -> bool,
-) -> Result<Option<Lessons>> {
-    let mut categories = 0;
-    let mut fields = Vec::new();
-    for pile in statistics.sample().chunk_by(|a, b| a.pile() == b.pile()) {
-        for half in 0..2 {
-            let own: Vec<&Sampled> = pile.iter().filter(|one| one.half() == half).collect();
-            if let Some(field) = Field::new(&own, spaces[1 - half])? {
-                categories += own.len();
-                fields.push((own.len(), field));
-            }
-        }
-    }
-    if categories < LEAST_CATEGORIES {
-        return Ok(None);
-    }
-    let tasks = draw(&fields, categories)?;
-    if tasks.is_empty() {
-        return Ok(None);
-    }
-    let evidence = Evidence { categories, tasks: &tasks };
+) -> Result<Option<Trained>> {
     let mut go_on = |share: f64| if watch(share) { Ok(()) } else { Err(Error::Stopped) };
+    let (tasks, categories) = tasks(statistics, &spaces)?;
+    if tasks.is_empty() || categories < LEAST_CATEGORIES {
+        return Ok(None);
+    }
+    go_on(0.1)?;
+    let stretch = Evidence { categories, tasks: &tasks }.tune_space(&mut |share| go_on(0.1 + 0.2 * share))?;
+    spaces.iter_mut().for_each(|space| space.whitening = stretched(&space.whitening, &stretch));
 
+    let (tasks, categories) = self::tasks(statistics, &spaces)?;
+    let evidence = Evidence { categories, tasks: &tasks };
     let mut prior = Prior::default();
     evidence.tune_prototypes(&mut prior);
-    go_on(0.1)?;
+    go_on(0.4)?;
     evidence.tune_ridge(&mut prior);
-    go_on(0.3)?;
-    let descent = evidence.tune_descent(&prior, &mut |share| go_on(0.3 + 0.6 * share))?;
+    go_on(0.5)?;
+    let descent = evidence.tune_descent(&prior, &mut |share| go_on(0.5 + 0.4 * share))?;
     if let Some((start, steps)) = &descent {
         // Stands for every task's own directions, which have the same groups.
         prior.descent = Descent::new(tasks[0].groups.clone(), start.clone(), steps.clone());
     }
     let preference = evidence.preference(&prior);
     go_on(1.0)?;
-    Ok(Some(Lessons {
+    let lessons = Lessons {
         categories,
         tasks: tasks.len(),
         shrinkage: prior.shrinkage,
@@ -193,26 +221,29 @@ pub(crate) fn train(
         ridge_temperature: prior.ridge_temperature,
         preference,
         descent,
-    }))
+    };
+    Ok(Some(Trained { stretch, lessons }))
+}
+
+/// The whitening with every group of directions stretched.
+pub(crate) fn stretched(whitening: &Whitening, stretch: &[f64]) -> Whitening {
+    let (directions, damping) = whitening.parts();
+    let ends = group_ends(directions.nrows());
+    let group = |direction: usize| ends.iter().position(|&end| direction < end).expect("ends cover all directions");
+    let damping = damping
+        .iter()
+        .enumerate()
+        .map(|(k, &damping)| (1.0 - (1.0 - f64::from(damping)) * stretch[group(k)]).max(LEAST_DAMPING) as f32)
+        .collect();
+    Whitening::new(directions.clone(), damping)
 }
 
 impl<'a> Field<'a> {
     /// `None` where the categories make no task.
-    fn new(categories: &[&Sampled], (whitening, past): (&'a Whitening, &'a [f32])) -> Result<Option<Self>> {
+    fn new(categories: &[&Sampled], whitening: &Whitening, past: &'a [f32]) -> Result<Option<Self>> {
         if categories.len() < 2 {
             return Ok(None);
         }
-        let labels: Vec<usize> =
-            categories.iter().enumerate().flat_map(|(c, one)| vec![c; one.places().len()]).collect();
-        let places = categories
-            .iter()
-            .flat_map(|one| one.places())
-            .map(|place| {
-                let mut place = place.clone();
-                whitening.apply(&mut place);
-                place
-            })
-            .collect();
         // Shots for which most categories have the items, and one over.
         let has = |shot: usize| categories.iter().filter(|one| one.places().len() > shot).count();
         let shots: Vec<usize> =
@@ -220,6 +251,8 @@ impl<'a> Field<'a> {
         if shots.is_empty() {
             return Ok(None);
         }
+        let labels: Vec<usize> =
+            categories.iter().enumerate().flat_map(|(c, one)| vec![c; one.places().len()]).collect();
         let number = |n: usize| std::num::NonZeroUsize::new(n).expect("not zero");
         let labelled = Labelled::new(&labels, categories.len())?;
         let episodes = [(5, false), (10, false), (5, true), (10, true)]
@@ -230,10 +263,33 @@ impl<'a> Field<'a> {
                 Episodes::new(labelled.clone(), &design)
             })
             .collect::<Result<Vec<_>>>()?;
-        Ok(Some(Self { places, episodes, shots, whitening, past }))
+
+        let mut rows = Vec::with_capacity(labels.len() * past.len());
+        for place in categories.iter().flat_map(|one| one.places()) {
+            let mut place = place.clone();
+            whitening.apply(&mut place);
+            rows.extend(place);
+        }
+        let rows = Array2::from_shape_vec((labels.len(), past.len()), rows).expect("as many as counted");
+        let groups = groups(whitening.parts().0);
+        let past_row = Array2::from_shape_vec((1, past.len()), past.to_vec()).expect("one row");
+        Ok(Some(Self {
+            products: arithmetic::gram(rows.view()),
+            with_past: rows
+                .outer_iter()
+                .map(|row| f64::from(dot(row.as_slice().expect("standard layout"), past)))
+                .collect(),
+            coordinates: groups.coordinates(rows.view()),
+            past_coordinates: groups.coordinates(past_row.view()),
+            places: rows.outer_iter().map(|row| row.to_vec()).collect(),
+            groups: Arc::new(groups),
+            episodes,
+            shots,
+            past,
+        }))
     }
 
-    fn tasks(&self, number: usize, groups: &Arc<Groups>) -> Result<Vec<Task>> {
+    fn tasks(&self, number: usize) -> Result<Vec<Task>> {
         let draw = self.episodes[number % self.episodes.len()].draw(number as u64);
         (0..self.shots.len())
             .map(|position| {
@@ -244,35 +300,82 @@ impl<'a> Field<'a> {
                     sum.iter_mut().zip(&self.places[item]).for_each(|(sum, &x)| *sum += f64::from(x));
                 }
                 let centre = Centre::of_sum(&sum, members.len(), Some(self.past));
-                let rows: Vec<f32> = members.iter().flat_map(|&item| centre.view(&self.places[item])).collect();
-                let rows = Array2::from_shape_vec((members.len(), self.past.len()), rows).expect("as many as counted");
-                let examples = rows.select(Axis(0), &(0..support.len()).collect::<Vec<_>>());
+                let rows = |items: &[Labelling]| {
+                    let rows: Vec<f32> = items.iter().flat_map(|one| centre.view(&self.places[one.item])).collect();
+                    Array2::from_shape_vec((items.len(), self.past.len()), rows).expect("as many as counted")
+                };
                 let labels: Vec<usize> = support.iter().map(|one| one.label).collect();
+                let (gram, coordinates) = self.seen_from_the_middle(&members);
                 Ok(Task {
                     shot: SHOTS.iter().position(|&shot| shot == self.shots[position]).expect("one of them"),
-                    support: Support::new(examples, labels, categories.len())?,
-                    rows,
+                    support: Support::new(rows(&support), labels, categories.len())?,
+                    query_rows: rows(&queries),
                     queries: queries.iter().map(|one| one.label).collect(),
-                    groups: groups.clone(),
+                    gram,
+                    coordinates,
+                    groups: self.groups.clone(),
                 })
             })
             .collect()
     }
+
+    /// Products and coordinates of these items as seen from their centre, without their d numbers: what [`Centre`] does.
+    fn seen_from_the_middle(&self, members: &[usize]) -> (Array2<f64>, Array2<f64>) {
+        let weight = 1.0 / (members.len() as f64 + CENTRE_CAUTION);
+        let products = self.products.select(Axis(0), members).select(Axis(1), members);
+        let coordinates = self.coordinates.select(Axis(0), members);
+        let with_past: Vec<f64> = members.iter().map(|&item| self.with_past[item]).collect();
+        let past_square = self.past.iter().map(|&x| f64::from(x).powi(2)).sum::<f64>();
+        let with_centre: Vec<f64> = products
+            .outer_iter()
+            .zip(&with_past)
+            .map(|(row, past)| (row.sum() + CENTRE_CAUTION * past) * weight)
+            .collect();
+        let square = (with_centre.iter().sum::<f64>()
+            + CENTRE_CAUTION * (with_past.iter().sum::<f64>() + CENTRE_CAUTION * past_square) * weight)
+            * weight;
+        let factors: Vec<f64> = (0..members.len())
+            .map(|i| {
+                let distance = (products[[i, i]] - 2.0 * with_centre[i] + square).max(0.0).sqrt();
+                if distance < 1e-5 { 0.0 } else { 1.0 / distance }
+            })
+            .collect();
+        let gram = Array2::from_shape_fn(products.dim(), |(i, j)| {
+            (products[[i, j]] - with_centre[i] - with_centre[j] + square) * factors[i] * factors[j]
+        });
+        let middle: Vec<f64> = (0..coordinates.ncols())
+            .map(|k| (coordinates.column(k).sum() + CENTRE_CAUTION * self.past_coordinates[[0, k]]) * weight)
+            .collect();
+        let coordinates =
+            Array2::from_shape_fn(coordinates.dim(), |(i, k)| (coordinates[[i, k]] - middle[k]) * factors[i]);
+        (gram, coordinates)
+    }
 }
 
-/// Tasks from every field, as many as it has a share of the categories.
-fn draw(fields: &[(usize, Field)], categories: usize) -> Result<Vec<Task>> {
+/// Tasks from every pile and half, as many as it has a share of the categories; and how many categories these are.
+fn tasks(statistics: &Statistics, spaces: &[HalfSpace; 2]) -> Result<(Vec<Task>, usize)> {
+    let pasts = spaces.each_ref().map(HalfSpace::past);
+    let mut fields = Vec::new();
+    let mut categories = 0;
+    for pile in statistics.sample().chunk_by(|a, b| a.pile() == b.pile()) {
+        for half in 0..2 {
+            let own: Vec<&Sampled> = pile.iter().filter(|one| one.half() == half).collect();
+            if let Some(field) = Field::new(&own, &spaces[1 - half].whitening, &pasts[1 - half])? {
+                categories += own.len();
+                fields.push((own.len(), field));
+            }
+        }
+    }
     let mut tasks = Vec::new();
     let mut passed = 0;
-    for (own, field) in fields {
-        let groups = Arc::new(groups(field.whitening.parts().0));
+    for (own, field) in &fields {
         let (from, to) = (passed * DRAWS / categories, (passed + own) * DRAWS / categories);
         passed += own;
         for number in from..to.max(from + 1) {
-            tasks.extend(field.tasks(number, &groups)?);
+            tasks.extend(field.tasks(number)?);
         }
     }
-    Ok(tasks)
+    Ok((tasks, categories))
 }
 
 /// Tasks and how much they count for: as many independent ones as there are categories.
@@ -282,8 +385,9 @@ struct Evidence<'a> {
 }
 
 impl Task {
-    fn query_rows(&self) -> Array2<f32> {
-        self.rows.select(Axis(0), &(self.support.len()..self.rows.nrows()).collect::<Vec<_>>())
+    fn problem(&self, temperature: f64) -> Problem {
+        let products = (&self.gram, &self.coordinates);
+        Problem::new(&self.groups, products, self.support.labels(), &self.queries, temperature)
     }
 
     /// The mean log loss of the queries by their logits times a factor.
@@ -345,7 +449,7 @@ impl Evidence<'_> {
             let logits: Vec<Array2<f64>> = self
                 .tasks
                 .iter()
-                .map(|task| Prototype { shrinkage }.fit(&task.support).logits(task.query_rows().view()))
+                .map(|task| Prototype { shrinkage }.fit(&task.support).logits(task.query_rows.view()))
                 .collect();
             let usual = |task: &Task| usual_prototype_factor(task.support.shot());
             let against: f64 = (0..SHOTS.len()).map(|shot| self.temperature(shot, &logits, usual).1).sum();
@@ -365,7 +469,7 @@ impl Evidence<'_> {
             let logits: Vec<Array2<f64>> = self
                 .tasks
                 .iter()
-                .map(|task| Ridge::fit(&task.support, strength).logits(task.query_rows().view()))
+                .map(|task| Ridge::fit(&task.support, strength).logits(task.query_rows.view()))
                 .collect();
             for (shot, best) in best.iter_mut().enumerate() {
                 let usual = |task: &Task| plain.ridge_factor(&task.support, strength);
@@ -380,6 +484,39 @@ impl Evidence<'_> {
         prior.ridge_temperature = self.by_shot(|shot| best[shot].2);
     }
 
+    /// How much each group of directions is stretched so that nearest prototypes do best, at every shot with the
+    /// temperature that suits it.
+    fn tune_space(&self, watch: &mut dyn FnMut(f64) -> Result<()>) -> Result<Vec<f64>> {
+        let groups = GROUP_ENDS.len() + 1;
+        let problems: Vec<(usize, Problem)> = self
+            .tasks
+            .iter()
+            .map(|task| (task.shot, task.problem(usual_prototype_factor(task.support.shot()))))
+            .collect();
+        // Logarithms of squared stretches by group, the rest last, and of the temperature by shot.
+        let mut logs = vec![0.0; groups + SHOTS.len()];
+        let mut adam = Adam::new(logs.len());
+        for round in 0..ROUNDS {
+            let weight = |k: usize| 1.0 / if k < groups { STRETCH_SPREAD.powi(2) } else { TEMPERATURE_SPREAD.powi(2) };
+            let mut slope: Vec<f64> =
+                logs.iter().enumerate().map(|(k, x)| x * weight(k) / self.categories as f64).collect();
+            for k in 0..BATCH {
+                let (shot, problem) = &problems[(round * BATCH + k) % problems.len()];
+                let temperature = logs[groups + shot];
+                let start: Vec<f64> = logs[..groups].iter().map(|&x| libm::exp(x + temperature)).collect();
+                let by = problem.loss(&Sizes { start: start.clone(), steps: Vec::new() }).1.start;
+                for (group, (by, a)) in by.iter().zip(&start).enumerate() {
+                    slope[group] += by * a / BATCH as f64;
+                    slope[groups + shot] += by * a / BATCH as f64;
+                }
+            }
+            adam.step(&mut logs, &slope, RATE * (1.0 - round as f64 / ROUNDS as f64));
+            watch((round + 1) as f64 / ROUNDS as f64)?;
+        }
+        let rest = logs[groups - 1];
+        Ok(logs[..groups - 1].iter().map(|log| libm::exp((log - rest) / 2.0)).collect())
+    }
+
     /// The gradient learner's sizes, or `None` where they don't do better on tasks that they weren't fitted to.
     fn tune_descent(
         &self,
@@ -389,14 +526,11 @@ impl Evidence<'_> {
         let usual = &Prior::default().descent;
         let size = usual.steps()[0].bias;
         let groups = GROUP_ENDS.len() + 1;
-        let problem = |task: &Task| {
-            let temperature = prior.prototype_factor(&task.support);
-            Problem::new(&task.groups, task.rows.view(), task.support.labels(), &task.queries, temperature)
-        };
         let small = self.tasks.iter().filter(|task| task.support.len() <= MOST_EXAMPLES);
         let (mut taught, mut checked) = (Vec::new(), Vec::new());
         for (number, task) in small.enumerate() {
-            if number % CHECKED == CHECKED - 1 { &mut checked } else { &mut taught }.push(problem(task));
+            let problem = task.problem(prior.prototype_factor(&task.support));
+            if number % CHECKED == CHECKED - 1 { &mut checked } else { &mut taught }.push(problem);
         }
         if checked.is_empty() {
             return Ok(None);
@@ -449,18 +583,18 @@ impl Evidence<'_> {
     fn preference(&self, prior: &Prior) -> [ByShot; 3] {
         let members: [Vec<Array2<f64>>; 3] = [
             self.logits(|task| {
-                prior.prototype().fit(&task.support).logits(task.query_rows().view())
+                prior.prototype().fit(&task.support).logits(task.query_rows.view())
                     * prior.prototype_factor(&task.support)
             }),
             self.logits(|task| {
                 let strength = prior.strength(&task.support);
-                Ridge::fit(&task.support, strength).logits(task.query_rows().view())
+                Ridge::fit(&task.support, strength).logits(task.query_rows.view())
                     * prior.ridge_factor(&task.support, strength)
             }),
             self.logits(|task| {
                 let mut own = prior.clone();
                 own.descent = prior.descent.with_groups_of(&task.groups);
-                Gradient { prior: &own }.fit(&task.support).logits(task.query_rows().view())
+                Gradient { prior: &own }.fit(&task.support).logits(task.query_rows.view())
             }),
         ];
         let usual = |shot: usize| {

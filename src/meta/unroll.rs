@@ -7,7 +7,7 @@
 //! Cost O(T G N n C) for N items, n of them examples. The differentiation through inner steps is that of MAML (Finn et al.
 //! 2017, arXiv:1703.03400), nothing of it left out.
 
-use ndarray::{Array2, ArrayView2, Axis};
+use ndarray::{Array2, Axis};
 
 use crate::{
     arithmetic,
@@ -33,15 +33,19 @@ pub(crate) struct Sizes {
 }
 
 impl Problem {
-    /// `rows` are the examples and then the queries, as seen from their centre.
-    pub fn new(groups: &Groups, rows: ArrayView2<f32>, labels: &[usize], queries: &[usize], temperature: f64) -> Self {
+    /// Of all items' products with each other (N × N) and coordinates along the directions (N × r), the examples first.
+    pub fn new(
+        groups: &Groups,
+        (gram, coordinates): (&Array2<f64>, &Array2<f64>),
+        labels: &[usize],
+        queries: &[usize],
+        temperature: f64,
+    ) -> Self {
         let n = labels.len();
         let categories = labels.iter().max().map_or(0, |top| top + 1);
         let mut counts = vec![0; categories];
         labels.iter().for_each(|&label| counts[label] += 1);
-        let with_examples = |kernel: Array2<f64>| kernel.select(Axis(1), &(0..n).collect::<Vec<_>>());
-        let kernels: Vec<Array2<f64>> =
-            kernels(Some(groups), rows, &arithmetic::gram(rows)).into_iter().map(with_examples).collect();
+        let kernels = kernels(Some((groups, coordinates)), &gram.select(Axis(1), &(0..n).collect::<Vec<_>>()));
         let starts = kernels.iter().map(|kernel| Start::new(kernel, labels, &counts).logits() * temperature).collect();
         Self { kernels, starts, labels: labels.to_vec(), counts, queries: queries.to_vec() }
     }
@@ -145,6 +149,11 @@ mod tests {
         Groups::new(directions, vec![1, 3])
     }
 
+    fn problem(rows: &Array2<f32>, labels: &[usize], queries: &[usize]) -> Problem {
+        let products = (&arithmetic::gram(rows.view()), &groups().coordinates(rows.view()));
+        Problem::new(&groups(), products, labels, queries, 1.5)
+    }
+
     fn numbers(sizes: &Sizes) -> Vec<f64> {
         let steps = sizes.steps.iter().flat_map(|step| step.weights.iter().copied().chain([step.bias]));
         sizes.start.iter().copied().chain(steps).collect()
@@ -162,7 +171,7 @@ mod tests {
 
         #[test]
         fn derivatives_are_those_of_finite_differences((rows, labels, queries) in episodes(), sizes in sizes()) {
-            let problem = Problem::new(&groups(), rows.view(), &labels, &queries, 1.5);
+            let problem = problem(&rows, &labels, &queries);
             let claimed = numbers(&problem.loss(&sizes).1);
             for (number, claimed) in claimed.into_iter().enumerate() {
                 let at = |by: f64| problem.loss(&changed(&sizes, number, by)).0;
@@ -176,7 +185,7 @@ mod tests {
         /// What is differentiated is what the learner does.
         #[test]
         fn the_loss_is_the_learners((rows, labels, queries) in episodes(), sizes in sizes()) {
-            let loss = Problem::new(&groups(), rows.view(), &labels, &queries, 1.5).loss(&sizes).0;
+            let loss = problem(&rows, &labels, &queries).loss(&sizes).0;
             let n = labels.len();
             let categories = labels.iter().max().unwrap() + 1;
             let part = |range: std::ops::Range<usize>| rows.select(Axis(0), &range.collect::<Vec<_>>());

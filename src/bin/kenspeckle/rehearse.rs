@@ -132,6 +132,12 @@ impl Rehearse {
         Ok(contenders)
     }
 
+    /// The contenders with a starter beside their twins without one: those stand first, in the same order.
+    fn twins(&self, contenders: usize) -> Vec<(usize, usize)> {
+        let without = if self.starter.is_some() { contenders / 2 } else { contenders };
+        (without..contenders).map(|with| (with, with - without)).collect()
+    }
+
     /// Runs the command and tells how many items could not be read.
     pub fn run(self) -> Result<usize, Failure> {
         let material = if vectors::is_npy(&self.labelled) { self.read_vectors()? } else { self.read_photos()? };
@@ -160,6 +166,7 @@ impl Rehearse {
             design: &design,
             ways: rehearsal.episodes().ways(),
             contenders: contenders.iter().map(|contender| contender.name.as_str()).collect(),
+            twins: self.twins(contenders.len()),
             episodes: played.len(),
             summary: Summary::new(&played),
         };

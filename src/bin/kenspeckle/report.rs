@@ -33,6 +33,8 @@ pub struct Report<'a> {
     pub ways: usize,
     /// The contenders' names; the others are compared with the first.
     pub contenders: Vec<&'a str>,
+    /// Contenders with a starter, each with the one that differs from it in nothing else, by position.
+    pub twins: Vec<(usize, usize)>,
     /// How many episodes were played.
     pub episodes: usize,
     /// The numbers.
@@ -73,6 +75,15 @@ impl Report<'_> {
             for (position, name) in self.contenders.iter().enumerate().skip(1) {
                 text += &self.row(name, |shot| {
                     let Estimate { mean, half_width } = self.summary.difference(position, 0, shot);
+                    format!("{} ± {:.1}", signed(100.0 * mean), 100.0 * half_width)
+                });
+            }
+        }
+        if !self.twins.is_empty() {
+            let _ = writeln!(text, "\nWhat the starter adds (+) or takes (−), each learner against itself, in points:");
+            for &(with, without) in &self.twins {
+                text += &self.row(self.contenders[without], |shot| {
+                    let Estimate { mean, half_width } = self.summary.difference(with, without, shot);
                     format!("{} ± {:.1}", signed(100.0 * mean), 100.0 * half_width)
                 });
             }
@@ -131,6 +142,16 @@ impl Report<'_> {
             let Estimate { mean, half_width } = estimate;
             json!([(mean - half_width).max(least), (mean + half_width).min(1.0)])
         };
+        let mut starter = Vec::new();
+        for &(with, without) in &self.twins {
+            for (at, shot) in shots.iter().enumerate() {
+                let found = self.summary.difference(with, without, at);
+                starter.push(json!({
+                    "learner": self.contenders[without], "shot": shot, "mean": found.mean,
+                    "interval": interval(found, -1.0),
+                }));
+            }
+        }
         let mut accuracy = Vec::new();
         let mut difference = Vec::new();
         for (position, name) in self.contenders.iter().enumerate() {
@@ -173,6 +194,7 @@ impl Report<'_> {
             "seed": self.design.seed,
             "accuracy": accuracy,
             "difference": difference,
+            "starter_adds": starter,
             "confused": { "learner": self.contenders[0], "shot": shots[shots.len() - 1], "pairs": confused },
         });
         format!("{report:#}\n")
