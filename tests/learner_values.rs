@@ -1,9 +1,11 @@
 //! Learners against scikit-learn and numpy: `pkg-scripts/reference/learner_values.py` wrote the values and names the
 //! versions in them.
 
+use std::sync::Arc;
+
 use kenspeckle::{
     Prior, Support,
-    learner::{Descent, Gradient, Learner, Prototype, Ridge},
+    learner::{Descent, Gradient, Groups, Learner, Prototype, Ridge, Step},
     prior::{ByShot, usual_prototype_factor},
 };
 use ndarray::Array2;
@@ -28,6 +30,18 @@ struct Task {
     ridge: Vec<RidgeValues>,
     gradient: Vec<Vec<f64>>,
     gradient_loss: f64,
+    descent: DescentValues,
+}
+
+#[derive(Deserialize)]
+struct DescentValues {
+    directions: Vec<Vec<f32>>,
+    ends: Vec<usize>,
+    start: Vec<f64>,
+    /// By group, the rest, and the bias.
+    steps: Vec<Vec<f64>>,
+    logits: Vec<Vec<f64>>,
+    loss: f64,
 }
 
 #[derive(Deserialize)]
@@ -96,27 +110,46 @@ fn ridge_fits_as_scikit_learns_ridge() {
     }
 }
 
+/// Logits of the queries, and the loss that the steps go down: scikit-learn's log_loss with the same weights.
+fn check_gradient(task: &Task, temperature: f64, descent: Descent, logits: &[Vec<f64>], expected_loss: f64) {
+    let support = task.support();
+    let prior = Prior {
+        descent,
+        prototype_temperature: ByShot::even(temperature / usual_prototype_factor(support.shot())),
+        ..Prior::default()
+    };
+    let head = Gradient { prior: &prior }.learn(&support).head;
+    assert_close(&task.name, &head.logits(rows(&task.queries).view()), logits, 1e-4);
+    let probabilities = head.probabilities(support.embeddings());
+    let loss: f64 = (0..support.len())
+        .map(|i| {
+            let label = support.labels()[i];
+            -probabilities[[i, label]].ln() / (support.counts()[label] * support.categories()) as f64
+        })
+        .sum();
+    assert!((loss - expected_loss).abs() < 1e-5, "{}: {loss} {expected_loss}", task.name);
+}
+
 #[test]
 fn gradient_steps_as_numpy_takes_them() {
     let values = values();
     for task in &values.tasks {
-        let support = task.support();
-        let prior = Prior {
-            descent: Descent::even(values.steps, values.step_size),
-            prototype_temperature: ByShot::even(values.temperature / usual_prototype_factor(support.shot())),
-            ..Prior::default()
-        };
-        let head = Gradient { prior: &prior }.learn(&support).head;
-        assert_close(&task.name, &head.logits(rows(&task.queries).view()), &task.gradient, 1e-4);
+        let even = Descent::even(values.steps, values.step_size);
+        check_gradient(task, values.temperature, even, &task.gradient, task.gradient_loss);
+    }
+}
 
-        // The loss that the steps go down, against scikit-learn's log_loss with the same weights.
-        let probabilities = head.probabilities(support.embeddings());
-        let loss: f64 = (0..support.len())
-            .map(|i| {
-                let label = support.labels()[i];
-                -probabilities[[i, label]].ln() / (support.counts()[label] * support.categories()) as f64
-            })
-            .sum();
-        assert!((loss - task.gradient_loss).abs() < 1e-5, "{}: {loss} {}", task.name, task.gradient_loss);
+#[test]
+fn steps_by_group_of_directions_as_numpy_takes_them() {
+    let values = values();
+    for task in &values.tasks {
+        let DescentValues { directions, ends, start, steps, logits, loss } = &task.descent;
+        let groups = Arc::new(Groups::new(rows(directions), ends.clone()));
+        let step = |sizes: &Vec<f64>| {
+            let (bias, weights) = sizes.split_last().unwrap();
+            Step { weights: weights.to_vec(), bias: *bias }
+        };
+        let descent = Descent::new(groups, start.clone(), steps.iter().map(step).collect());
+        check_gradient(task, values.temperature, descent, logits, *loss);
     }
 }

@@ -2,7 +2,7 @@
 
 use std::sync::Arc;
 
-use kenspeckle::{LearnerKind, Settings, Sorter, Space, Starter, meta::statistics::Statistics};
+use kenspeckle::{LearnerKind, Settings, Sorter, Space, Starter, meta::statistics::Statistics, whitening::Whitening};
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
@@ -149,4 +149,73 @@ fn damaged_files_are_refused_without_a_panic() {
         Starter::learn(&statistics).unwrap()
     };
     assert_eq!(newer.categories(), 18);
+}
+
+/// Categories that differ along the very directions in which their items do: whitening alone takes away what tells them
+/// apart, and past tasks must say so.
+fn flat_pile(categories: usize, each: usize, rng: &mut ChaCha8Rng) -> Vec<Vec<Vec<f32>>> {
+    (0..categories)
+        .map(|_| {
+            let centre: Vec<f32> = (0..DIMENSION).map(|_| rng.random_range(-1.0..1.0)).collect();
+            let item = |rng: &mut ChaCha8Rng| {
+                (0..DIMENSION)
+                    .map(|j| {
+                        if j < 8 { 3.0 * centre[j] + rng.random_range(-1.2..1.2) } else { rng.random_range(-0.5..0.5) }
+                    })
+                    .collect()
+            };
+            (0..each).map(|_| item(rng)).collect()
+        })
+        .collect()
+}
+
+#[test]
+fn whitening_is_corrected_where_it_would_take_away_what_matters() {
+    let mut rng = ChaCha8Rng::seed_from_u64(5);
+    let mut statistics = Statistics::new("test", space());
+    let pile = flat_pile(24, 10, &mut rng);
+    statistics.add_pile(pile.iter().map(|items| items.iter().map(Vec::as_slice))).unwrap();
+    let starter = Arc::new(Starter::learn(&statistics).unwrap());
+    let plain = Whitening::learn(&statistics.whole(), 256);
+    assert!(starter.whitening().parts().1[0] < plain.parts().1[0] - 0.1, "{:?}", starter.whitening().parts().1);
+
+    let (mut without, mut with, mut items) = (0, 0, 0);
+    for _ in 0..30 {
+        let pile = flat_pile(5, 12, &mut rng);
+        let right = |mut sorter: Sorter| {
+            let truth: Vec<usize> = (0..60).map(|i| i % 5).collect();
+            for (i, &category) in truth.iter().enumerate() {
+                sorter.add_item(&pile[category][i / 5]).unwrap();
+            }
+            let trays: Vec<usize> = (0..5).map(|c| sorter.answer_new(c, &format!("category {c}")).unwrap()).collect();
+            let verdicts = sorter.verdicts();
+            (5..60).filter(|&i| verdicts[i].unwrap().tray == Some(trays[truth[i]])).count()
+        };
+        without += right(Sorter::new(settings()));
+        with += right(Sorter::with_starter(settings(), starter.clone()).unwrap());
+        items += 55;
+    }
+    assert!(with + items / 100 >= without, "of {items}: {with} with the starter, {without} without");
+}
+
+#[test]
+fn one_small_pile_already_gives_lessons_and_fewer_say_that_there_are_none() {
+    let starter = Starter::learn(&statistics(4, 6, 1)).unwrap();
+    assert_eq!(starter.lessons().unwrap().categories, 4);
+    let few = Starter::learn(&statistics(3, 6, 1)).unwrap();
+    assert!(few.lessons().is_none());
+    assert_eq!(few.prior(), kenspeckle::Prior::default());
+}
+
+#[test]
+fn learning_tells_how_far_it_is_and_can_be_stopped() {
+    let statistics = statistics(12, 5, 1);
+    let mut told = Vec::new();
+    Starter::learn_watched(&statistics, &mut |share| {
+        told.push(share);
+        true
+    })
+    .unwrap();
+    assert!(told.is_sorted() && told.len() > 20 && told.iter().all(|share| (0.0..=1.0).contains(share)), "{told:?}");
+    assert_eq!(Starter::learn_watched(&statistics, &mut |share| share < 0.7).unwrap_err().code(), "stopped");
 }

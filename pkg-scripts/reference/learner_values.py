@@ -63,17 +63,41 @@ def prototype(x, y):
     return 2 * means, variance / counts - (means**2).sum(1)
 
 
-def gradient(x, y, query):
-    """Full-batch steps down the category-balanced log loss in weight space, from the prototypes."""
-    categories = y.max() + 1
-    weights, bias = (TEMPERATURE * part for part in prototype(x, y))
-    share = 1 / (np.bincount(y)[y] * categories)
-    for _ in range(STEPS):
+def descent(dimension, seed):
+    """Directions in two groups beside the rest, a start scale for each, and steps of different sizes."""
+    random = np.random.Generator(np.random.PCG64(seed))
+    rank = min(3, dimension - 1)
+    directions = np.linalg.qr(random.standard_normal((dimension, rank)))[0].T.astype(np.float32)
+    sizes = random.uniform(0, 30, (STEPS, 4)).round(3)
+    return {"directions": directions.tolist(), "ends": [1, rank], "start": [0.4, 1.7, 0.9], "steps": sizes.tolist()}
+
+
+def groups_of(descent):
+    """The map onto each group: U_gᵀ U_g, and what is left for the rest."""
+    directions, ends = np.array(descent["directions"]), descent["ends"]
+    parts = [directions[start:end] for start, end in zip([0, *ends], ends)]
+    maps = [part.T @ part for part in parts]
+    return [*maps, np.eye(directions.shape[1]) - sum(maps)]
+
+
+def gradient(x, y, query, maps, start, sizes):
+    """Full-batch steps down the category-balanced log loss in weight space, from the prototypes under Σ a_g M_g."""
+    counts = np.bincount(y)
+    categories = len(counts)
+    metric = sum(a * m for a, m in zip(start, maps))
+    means = np.stack([x[y == c].mean(0) for c in range(categories)])
+    apart = x - means[y]
+    variance = (apart @ metric * apart).sum() / max(len(y) - categories, 1)
+    weights = 2 * TEMPERATURE * means @ metric
+    bias = TEMPERATURE * (variance / counts - (means @ metric * means).sum(1))
+    share = 1 / (counts[y] * categories)
+    for *by_group, by_bias in sizes:
         logits = x @ weights.T + bias
         p = np.exp(logits - logits.max(1, keepdims=True))
         p /= p.sum(1, keepdims=True)
         error = (p - np.eye(categories)[y]) * share[:, None]
-        weights, bias = weights - STEP_SIZE * error.T @ x, bias - STEP_SIZE * error.sum(0)
+        weights = weights - error.T @ x @ sum(size * m for size, m in zip(by_group, maps))
+        bias = bias - by_bias * error.sum(0)
     logits = x @ weights.T + bias
     loss = log_loss(y, np.exp(logits) / np.exp(logits).sum(1, keepdims=True), sample_weight=share)
     return (query @ weights.T + bias).tolist(), loss
@@ -89,7 +113,10 @@ def values():
     ]:
         x, y, query = task(table, counts, seed=len(tasks) + 1)
         wide, wide_query = x.astype(np.float64), query.astype(np.float64)
-        gradient_logits, gradient_loss = gradient(wide, y, wide_query)
+        even_steps = [[STEP_SIZE, STEP_SIZE]] * STEPS
+        gradient_logits, gradient_loss = gradient(wide, y, wide_query, [np.eye(wide.shape[1])], [1], even_steps)
+        grouped = descent(wide.shape[1], seed=len(tasks) + 1)
+        grouped["logits"], grouped["loss"] = gradient(wide, y, wide_query, groups_of(grouped), grouped["start"], grouped["steps"])
         weights, bias = prototype(wide, y)
         even = len(set(counts)) == 1
         tasks.append(
@@ -106,6 +133,7 @@ def values():
                 ],
                 "gradient": gradient_logits,
                 "gradient_loss": gradient_loss,
+                "descent": grouped,
             }
         )
     return {

@@ -38,10 +38,13 @@ pub struct Groups {
 }
 
 impl Groups {
-    /// Groups of these directions (r × d); `ends` ascends up to r.
-    pub(crate) fn new(directions: Array2<f32>, ends: Vec<usize>) -> Self {
-        debug_assert!(ends.is_sorted() && ends.last().copied().unwrap_or(0) == directions.nrows());
-        Self { directions, ends }
+    /// Groups of these directions (r × d, orthonormal but for rounding): the first up to the first of `ends`, and so on.
+    ///
+    /// # Panics
+    /// If `ends` does not ascend up to r.
+    pub fn new(directions: Array2<f32>, ends: Vec<usize>) -> Self {
+        assert!(ends.is_sorted() && ends.last().copied().unwrap_or(0) == directions.nrows(), "ends ascend up to r");
+        Self { directions: directions.as_standard_layout().into_owned(), ends }
     }
 
     /// How many groups, the rest not counted.
@@ -90,10 +93,18 @@ impl Descent {
         Self { groups: None, start: vec![1.0], steps: vec![step; steps.min(MOST_STEPS)] }
     }
 
-    /// Start scales and step sizes for these groups and the rest: all lists are one longer than the groups are.
-    pub(crate) fn new(groups: Arc<Groups>, start: Vec<f64>, steps: Vec<Step>) -> Self {
-        debug_assert!(start.len() == groups.len() + 1 && steps.len() <= MOST_STEPS);
-        debug_assert!(steps.iter().all(|step| step.weights.len() == groups.len() + 1));
+    /// A start scale (≥ 0) for each of these groups and the rest, and at most [`MOST_STEPS`] steps with a size (≥ 0) for
+    /// each of them.
+    ///
+    /// # Panics
+    /// If a list isn't one longer than the groups are, or there are more steps.
+    pub fn new(groups: Arc<Groups>, start: Vec<f64>, steps: Vec<Step>) -> Self {
+        let fits = |list: &Vec<f64>| list.len() == groups.len() + 1;
+        assert!(
+            fits(&start) && steps.iter().all(|step| fits(&step.weights)),
+            "one number a group, and one for the rest"
+        );
+        assert!(steps.len() <= MOST_STEPS, "at most {MOST_STEPS} steps");
         Self { groups: Some(groups), start, steps }
     }
 

@@ -29,8 +29,11 @@ use crate::{
     whitening::{LEAST_DAMPING, Whitening},
 };
 
-/// Fewer categories teach nothing about how to learn.
-pub const LEAST_CATEGORIES: usize = 8;
+/// Fewer categories teach nothing about how to learn: two in each half make the smallest task.
+pub const LEAST_CATEGORIES: usize = 4;
+
+/// How many items count as much as one that depends on no other.
+const ITEMS_AS_ONE: f64 = 3.0;
 
 /// Where groups of directions end: each holds about as much scatter as the next.
 const GROUP_ENDS: [usize; 6] = [8, 16, 32, 64, 128, 256];
@@ -58,7 +61,7 @@ const STRENGTHS: [f64; 7] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0, 10.0];
 const TEMPERATURE_SPREAD: f64 = 0.7;
 const STRENGTH_SPREAD: f64 = 1.5;
 const SIZE_SPREAD: f64 = 1.0;
-const STRETCH_SPREAD: f64 = 1.0;
+const STRETCH_SPREAD: f64 = 2.0;
 
 /// What a share of 1 too much in the mix costs before there is evidence, in nats.
 const PREFERENCE_WEIGHT: f64 = 4.0;
@@ -195,11 +198,13 @@ pub(crate) fn train(
         return Ok(None);
     }
     go_on(0.1)?;
-    let stretch = Evidence { categories, tasks: &tasks }.tune_space(&mut |share| go_on(0.1 + 0.2 * share))?;
+    let beyond = |one: &Sampled| one.places().len() - 1;
+    let weight = statistics.sample().iter().map(beyond).sum::<usize>() as f64 / ITEMS_AS_ONE;
+    let stretch = Evidence { weight, tasks: &tasks }.tune_space(&mut |share| go_on(0.1 + 0.2 * share))?;
     spaces.iter_mut().for_each(|space| space.whitening = stretched(&space.whitening, &stretch));
 
     let (tasks, categories) = self::tasks(statistics, &spaces)?;
-    let evidence = Evidence { categories, tasks: &tasks };
+    let evidence = Evidence { weight, tasks: &tasks };
     let mut prior = Prior::default();
     evidence.tune_prototypes(&mut prior);
     go_on(0.4)?;
@@ -378,9 +383,9 @@ fn tasks(statistics: &Statistics, spaces: &[HalfSpace; 2]) -> Result<(Vec<Task>,
     Ok((tasks, categories))
 }
 
-/// Tasks and how much they count for: as many independent ones as there are categories.
+/// Tasks and how much their mean loss counts for: as so many independent items.
 struct Evidence<'a> {
-    categories: usize,
+    weight: f64,
     tasks: &'a [Task],
 }
 
@@ -408,7 +413,7 @@ impl Evidence<'_> {
     /// The summed evidence against logits that are multiplied by a factor at this shot; 0 where no task has it.
     fn against(&self, shot: usize, logits: &[Array2<f64>], factor: impl Fn(&Task) -> f64) -> f64 {
         let losses: Vec<f64> = self.at(shot).map(|(i, task)| task.loss(&logits[i], factor(task))).collect();
-        if losses.is_empty() { 0.0 } else { losses.iter().sum::<f64>() / losses.len() as f64 * self.categories as f64 }
+        if losses.is_empty() { 0.0 } else { losses.iter().sum::<f64>() / losses.len() as f64 * self.weight }
     }
 
     /// The factor beside the usual one that suits these logits best at this shot, and what speaks against it.
@@ -498,8 +503,7 @@ impl Evidence<'_> {
         let mut adam = Adam::new(logs.len());
         for round in 0..ROUNDS {
             let weight = |k: usize| 1.0 / if k < groups { STRETCH_SPREAD.powi(2) } else { TEMPERATURE_SPREAD.powi(2) };
-            let mut slope: Vec<f64> =
-                logs.iter().enumerate().map(|(k, x)| x * weight(k) / self.categories as f64).collect();
+            let mut slope: Vec<f64> = logs.iter().enumerate().map(|(k, x)| x * weight(k) / self.weight).collect();
             for k in 0..BATCH {
                 let (shot, problem) = &problems[(round * BATCH + k) % problems.len()];
                 let temperature = logs[groups + shot];
@@ -559,8 +563,7 @@ impl Evidence<'_> {
         for round in 0..ROUNDS {
             let now = sizes(&logs);
             let values = flat(&now);
-            let mut slope: Vec<f64> =
-                logs.iter().map(|x| x / (SIZE_SPREAD * SIZE_SPREAD * self.categories as f64)).collect();
+            let mut slope: Vec<f64> = logs.iter().map(|x| x / (SIZE_SPREAD * SIZE_SPREAD * self.weight)).collect();
             for k in 0..BATCH {
                 // Strides through all tasks, whatever their number.
                 let problem = &taught[(round * BATCH + k) % taught.len()];
@@ -618,7 +621,7 @@ impl Evidence<'_> {
                             task.loss(&mixed, 1.0)
                         })
                         .collect();
-                    let loss = losses.iter().sum::<f64>() / losses.len() as f64 * self.categories as f64;
+                    let loss = losses.iter().sum::<f64>() / losses.len() as f64 * self.weight;
                     let distance: f64 = shares.iter().zip(usual(shot)).map(|(a, b)| (a - b).powi(2)).sum();
                     let against = loss + PREFERENCE_WEIGHT * distance;
                     if against < best.0 {

@@ -75,6 +75,7 @@ impl Learn {
         }
         let Some(gathered) = gathered else { return Err(Failure::because("there is no past pile to learn from")) };
         let (categories, items) = (gathered.categories(), gathered.items());
+        let mut taught = true;
         let file = if self.partial {
             gathered.write()
         } else {
@@ -86,13 +87,7 @@ impl Learn {
             bar.finish_and_clear();
             console::go_on()?;
             let starter = starter.map_err(Failure::because)?;
-            if starter.lessons().is_none() {
-                console::say(&format!(
-                    "too little to learn how to learn from: that takes {} categories with two items each in a pile; the starter \
-                     knows how categories scatter, and nothing of steps and temperatures",
-                    meta::train::LEAST_CATEGORIES
-                ));
-            }
+            taught = starter.lessons().is_some();
             starter.write(self.min_categories).map_err(Failure::because)?
         };
         console::go_on()?;
@@ -103,6 +98,13 @@ impl Learn {
             file.len().div_ceil(1000),
             self.out.display()
         ));
+        if !taught {
+            console::say(&format!(
+                "that was too little to learn how to learn from: it takes {} categories with two items each; the starter knows \
+                 how categories scatter, and nothing of steps and temperatures",
+                meta::train::LEAST_CATEGORIES
+            ));
+        }
         Ok(troubles)
     }
 }
