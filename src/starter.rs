@@ -69,18 +69,21 @@ impl Starter {
         }
         let mut go_on = |share: f64| if watch(share) { Ok(()) } else { Err(Error::Stopped) };
         let whole = statistics.whole();
-        let whitening = learned(&whole);
-        go_on(0.2)?;
+        let halves = statistics.halves();
         // Fewer can't give a lesson, and then their halves needn't be whitened.
-        let trained = if statistics.sample().len() < LEAST_TO_LEARN {
-            None
+        let teaches = statistics.sample().len() >= LEAST_TO_LEARN;
+        let mut whitenings = learned(if teaches { vec![&whole, &halves[0], &halves[1]] } else { vec![&whole] }).into_iter();
+        let mut next = || whitenings.next().expect("one for each sum");
+        let whitening = next();
+        go_on(0.6)?;
+        let trained = if teaches {
+            let spaces = halves.each_ref().map(|half| HalfSpace {
+                whitening: next(),
+                mean: half.mean().mapv(|x| x as f32).to_vec(),
+            });
+            train(statistics, spaces, &mut |share| watch(0.6 + 0.4 * share))?
         } else {
-            let halves = statistics
-                .halves()
-                .each_ref()
-                .map(|half| HalfSpace { whitening: learned(half), mean: half.mean().mapv(|x| x as f32).to_vec() });
-            go_on(0.6)?;
-            train(statistics, halves, &mut |share| watch(0.6 + 0.4 * share))?
+            None
         };
         let (whitening, lessons) = match trained {
             Some(Trained { stretch, lessons }) => (stretched(&whitening, &stretch), Some(lessons)),
@@ -216,11 +219,21 @@ impl Starter {
     }
 }
 
-/// The whitening of these sums as a file can hold it: what is used from the start, so that saving changes nothing.
-fn learned(sums: &Sums) -> Whitening {
-    let learned = Whitening::learn(sums, MOST_DIRECTIONS);
-    let (directions, damping) = learned.parts();
-    Whitening::new(unpacked(&packed(directions)), damping.to_vec())
+/// The whitenings of these sums, side by side where there are threads.
+fn learned(sums: Vec<&Sums>) -> Vec<Whitening> {
+    // What a file can hold is what is used from the start, so that saving changes nothing.
+    let learn = |sums: &Sums| {
+        let learned = Whitening::learn(sums, MOST_DIRECTIONS);
+        let (directions, damping) = learned.parts();
+        Whitening::new(unpacked(&packed(directions)), damping.to_vec())
+    };
+    #[cfg(target_family = "wasm")]
+    return sums.into_iter().map(learn).collect();
+    #[cfg(not(target_family = "wasm"))]
+    std::thread::scope(|scope| {
+        let threads: Vec<_> = sums.into_iter().map(|sums| scope.spawn(move || learn(sums))).collect();
+        threads.into_iter().map(|thread| thread.join().expect("whitening doesn't panic")).collect()
+    })
 }
 
 /// Each row in whole numbers from −127 to 127.
