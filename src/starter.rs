@@ -72,15 +72,15 @@ impl Starter {
         let halves = statistics.halves();
         // Fewer can't give a lesson, and then their halves needn't be whitened.
         let teaches = statistics.sample().len() >= LEAST_TO_LEARN;
-        let mut whitenings = learned(if teaches { vec![&whole, &halves[0], &halves[1]] } else { vec![&whole] }).into_iter();
+        let mut whitenings =
+            learned(if teaches { vec![&whole, &halves[0], &halves[1]] } else { vec![&whole] }).into_iter();
         let mut next = || whitenings.next().expect("one for each sum");
         let whitening = next();
         go_on(0.6)?;
         let trained = if teaches {
-            let spaces = halves.each_ref().map(|half| HalfSpace {
-                whitening: next(),
-                mean: half.mean().mapv(|x| x as f32).to_vec(),
-            });
+            let spaces = halves
+                .each_ref()
+                .map(|half| HalfSpace { whitening: next(), mean: half.mean().mapv(|x| x as f32).to_vec() });
             train(statistics, spaces, &mut |share| watch(0.6 + 0.4 * share))?
         } else {
             None

@@ -108,11 +108,6 @@ impl Descent {
         Self { groups: Some(groups), start, steps }
     }
 
-    /// The same sizes for other directions in as many groups; the usual descent has none and stays as it is.
-    pub(crate) fn with_groups_of(&self, groups: &Arc<Groups>) -> Self {
-        Self { groups: self.groups.as_ref().map(|_| groups.clone()), ..self.clone() }
-    }
-
     /// The start's scales a_g by group, the rest last.
     pub fn start(&self) -> &[f64] {
         &self.start

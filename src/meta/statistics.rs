@@ -53,13 +53,14 @@ impl Sums {
         for place in places {
             mean.iter_mut().zip(place).for_each(|(m, &x)| *m += f64::from(x) / places.len() as f64);
         }
-        let mut centred = vec![0.0_f64; d];
+        let centred: Vec<Vec<f64>> =
+            places.iter().map(|place| place.iter().zip(&mean).map(|(&x, &m)| f64::from(x) - m).collect()).collect();
         let scatter = self.scatter.as_slice_mut().expect("standard layout by construction");
-        for place in places {
-            centred.iter_mut().zip(place).zip(&mean).for_each(|((out, &x), &m)| *out = f64::from(x) - m);
-            for (j, row) in scatter.chunks_exact_mut(d).enumerate() {
+        // Row by row, so that the matrix passes through the cache once a category and not once an item.
+        for (j, row) in scatter.chunks_exact_mut(d).enumerate() {
+            for centred in &centred {
                 let factor = centred[j];
-                row[..=j].iter_mut().zip(&centred).for_each(|(sum, &x)| *sum += factor * x);
+                row[..=j].iter_mut().zip(centred).for_each(|(sum, &x)| *sum += factor * x);
             }
         }
         self.mean_sum.iter_mut().zip(&mean).for_each(|(sum, &m)| *sum += m);

@@ -22,7 +22,7 @@ use super::{
 use crate::{
     arithmetic::{self, dot, log_sum_exp},
     error::{Error, Result},
-    learner::{Descent, Gradient, Groups, Prototype, Ridge, Step},
+    learner::{Descent, Groups, Prototype, Ridge, Step},
     prior::{ByShot, Prior, SHOTS, usual_prototype_factor},
     space::{CENTRE_CAUTION, Centre},
     support::Support,
@@ -211,11 +211,7 @@ pub(crate) fn train(
     evidence.tune_ridge(&mut prior);
     go_on(0.5)?;
     let descent = evidence.tune_descent(&prior, &mut |share| go_on(0.5 + 0.4 * share))?;
-    if let Some((start, steps)) = &descent {
-        // Stands for every task's own directions, which have the same groups.
-        prior.descent = Descent::new(tasks[0].groups.clone(), start.clone(), steps.clone());
-    }
-    let preference = evidence.preference(&prior);
+    let preference = evidence.preference(&prior, descent.as_ref().unwrap_or(&usual_sizes()));
     go_on(1.0)?;
     let lessons = Lessons {
         categories,
@@ -225,7 +221,7 @@ pub(crate) fn train(
         prototype_temperature: prior.prototype_temperature,
         ridge_temperature: prior.ridge_temperature,
         preference,
-        descent,
+        descent: descent.map(|Sizes { start, steps }| (start, steps)),
     };
     Ok(Some(Trained { stretch, lessons }))
 }
@@ -355,6 +351,14 @@ impl<'a> Field<'a> {
             Array2::from_shape_fn(coordinates.dim(), |(i, k)| (coordinates[[i, k]] - middle[k]) * factors[i]);
         (gram, coordinates)
     }
+}
+
+/// The usual descent's sizes, the same for every group.
+fn usual_sizes() -> Sizes {
+    let groups = GROUP_ENDS.len() + 1;
+    let usual = &Prior::default().descent;
+    let step = |step: &Step| Step { weights: vec![step.bias; groups], bias: step.bias };
+    Sizes { start: vec![1.0; groups], steps: usual.steps().iter().map(step).collect() }
 }
 
 /// Tasks from every pile and half, as many as it has a share of the categories; and how many categories these are.
@@ -522,13 +526,8 @@ impl Evidence<'_> {
     }
 
     /// The gradient learner's sizes, or `None` where they don't do better on tasks that they weren't fitted to.
-    fn tune_descent(
-        &self,
-        prior: &Prior,
-        watch: &mut dyn FnMut(f64) -> Result<()>,
-    ) -> Result<Option<(Vec<f64>, Vec<Step>)>> {
-        let usual = &Prior::default().descent;
-        let size = usual.steps()[0].bias;
+    fn tune_descent(&self, prior: &Prior, watch: &mut dyn FnMut(f64) -> Result<()>) -> Result<Option<Sizes>> {
+        let size = usual_sizes().steps[0].bias;
         let groups = GROUP_ENDS.len() + 1;
         let small = self.tasks.iter().filter(|task| task.support.len() <= MOST_EXAMPLES);
         let (mut taught, mut checked) = (Vec::new(), Vec::new());
@@ -578,12 +577,11 @@ impl Evidence<'_> {
         if loss(&checked, &logs) >= loss(&checked, &vec![0.0; count]) {
             return Ok(None);
         }
-        let Sizes { start, steps } = sizes(&logs);
-        Ok(Some((start, steps)))
+        Ok(Some(sizes(&logs)))
     }
 
     /// The shares of prototype, ridge and gradient by shot.
-    fn preference(&self, prior: &Prior) -> [ByShot; 3] {
+    fn preference(&self, prior: &Prior, sizes: &Sizes) -> [ByShot; 3] {
         let members: [Vec<Array2<f64>>; 3] = [
             self.logits(|task| {
                 prior.prototype().fit(&task.support).logits(task.query_rows.view())
@@ -594,11 +592,7 @@ impl Evidence<'_> {
                 Ridge::fit(&task.support, strength).logits(task.query_rows.view())
                     * prior.ridge_factor(&task.support, strength)
             }),
-            self.logits(|task| {
-                let mut own = prior.clone();
-                own.descent = prior.descent.with_groups_of(&task.groups);
-                Gradient { prior: &own }.fit(&task.support).logits(task.query_rows.view())
-            }),
+            self.logits(|task| task.problem(prior.prototype_factor(&task.support)).query_logits(sizes)),
         ];
         let usual = |shot: usize| {
             let known = Prior { centre_known: 1.0, preference: None, ..Prior::default() };

@@ -54,9 +54,8 @@ impl Problem {
         logits.select(Axis(0), &(0..self.labels.len()).collect::<Vec<_>>())
     }
 
-    /// The mean log loss of the queries after the steps, and its derivatives by every size.
-    pub fn loss(&self, sizes: &Sizes) -> (f64, Sizes) {
-        let (n, categories) = (self.labels.len(), self.counts.len());
+    /// The logits of all items after the steps, and every step's errors.
+    fn descend(&self, sizes: &Sizes) -> (Array2<f64>, Vec<Array2<f64>>) {
         let mut logits = Array2::zeros(self.starts[0].dim());
         for (start, &a) in self.starts.iter().zip(&sizes.start) {
             logits.scaled_add(a, start);
@@ -70,6 +69,19 @@ impl Problem {
             logits -= &(errors.sum_axis(Axis(0)) * step.bias);
             path.push(errors);
         }
+        (logits, path)
+    }
+
+    /// The logits of the queries after the steps.
+    pub fn query_logits(&self, sizes: &Sizes) -> Array2<f64> {
+        let (logits, _) = self.descend(sizes);
+        logits.select(Axis(0), &(self.labels.len()..logits.nrows()).collect::<Vec<_>>())
+    }
+
+    /// The mean log loss of the queries after the steps, and its derivatives by every size.
+    pub fn loss(&self, sizes: &Sizes) -> (f64, Sizes) {
+        let (n, categories) = (self.labels.len(), self.counts.len());
+        let (logits, path) = self.descend(sizes);
 
         // ∂L/∂P after the last step: nothing for examples.
         let share = 1.0 / self.queries.len() as f64;
