@@ -7,6 +7,8 @@ use kenspeckle::{
 };
 use ndarray::{Array2, Axis};
 use proptest::prelude::*;
+use rand::{RngExt, SeedableRng};
+use rand_chacha::ChaCha8Rng;
 
 /// A support set of unit vectors with 1 to 6 examples in each of 2 to 5 categories, 2 to 12 dimensions.
 fn supports() -> impl Strategy<Value = Support> {
@@ -164,4 +166,27 @@ fn many_examples_are_learned_from_as_few_are() {
     let learned = LearnerKind::Auto.learn(&many(3 * limit, 12), &prior);
     let known = (0..3 * limit).filter(|&i| learned.left_out.get(i).is_some()).count();
     assert!((limit - 3..=limit).contains(&known), "{known} examples judged");
+}
+
+/// From 2 categories to 200 and from 1 example to 1 000: everyone learns, and sorts what lies apart without a mistake.
+#[test]
+fn few_and_many_categories_and_examples() {
+    for (categories, each) in [(2, 1), (2, 1000), (200, 1), (200, 2), (20, 60)] {
+        let dimension = 24;
+        let mut rng = ChaCha8Rng::seed_from_u64(1);
+        let centres = Array2::from_shape_simple_fn((categories, dimension), || rng.random_range(-1.0_f32..1.0));
+        let row = |i: usize, j: usize| centres[[i % categories, j]] + (((i * 37 + j * 11) % 19) as f32 - 9.0) / 90.0;
+        let labels: Vec<usize> = (0..categories * each).map(|i| i % categories).collect();
+        let rows = Array2::from_shape_fn((labels.len(), dimension), |(i, j)| row(i, j));
+        let queries = Array2::from_shape_fn((categories, dimension), |(c, j)| row(c + 5 * categories * each, j));
+        let support = Support::new(rows, labels, categories).unwrap();
+        for kind in LearnerKind::ALL {
+            let probabilities = kind.learn(&support, &Prior::default()).head.probabilities(queries.view());
+            let right = (0..categories)
+                .filter(|&c| kenspeckle::arithmetic::arg_max(probabilities.row(c).iter()) == Some(c))
+                .count();
+            assert!(probabilities.iter().all(|p| p.is_finite()));
+            assert!(100 * right >= 97 * categories, "{kind:?}, {categories} × {each}: {right} right");
+        }
+    }
 }

@@ -25,6 +25,13 @@ use crate::{arithmetic, head::Head, prior::Prior, support::Support};
 /// The most steps.
 pub const MOST_STEPS: usize = 20;
 
+/// About how many multiplications leave-one-out may take. Beyond, a spread-out part of the examples is left out, each of
+/// them still alone.
+const BUDGET: usize = 1_500_000_000;
+
+/// How many examples are left out whatever it takes.
+const LEAST_JUDGED: usize = 12;
+
 /// How many columns of logits are worked on at a time while examples are left out: they stay in the cache.
 const BLOCK: usize = 128;
 
@@ -310,7 +317,11 @@ impl<'a> Landscape<'a> {
         let (labels, counts) = (self.support.labels(), self.support.counts());
         let (n, categories) = (self.support.len(), self.support.categories());
         let mut left_out = LeftOut::unknown(n, categories);
-        let judged: Vec<usize> = (0..n).filter(|&i| counts[labels[i]] > 1).collect();
+        let mut judged: Vec<usize> = (0..n).filter(|&i| counts[labels[i]] > 1).collect();
+        let affordable = (BUDGET / (n * n * categories * self.order.len().max(1))).max(LEAST_JUDGED);
+        if judged.len() > affordable {
+            judged = (0..affordable).map(|k| judged[k * judged.len() / affordable]).collect();
+        }
         for block in judged.chunks((BLOCK / categories).max(1)) {
             let mut logits = Array2::zeros((n, block.len() * categories));
             for (variant, &i) in block.iter().enumerate() {

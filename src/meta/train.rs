@@ -6,8 +6,11 @@
 //! takes too much away); in the space so corrected, how far prototypes shrink; by examples
 //! a category the temperatures, the ridge learner's strength and the shares of the learners in the mix; and the gradient
 //! learner's start and step sizes by group of directions, by exact derivatives through its steps ([`super::unroll`]) with
-//! Adam (Kingma, Ba 2015, arXiv:1412.6980). Each is held near its usual value, the less the more categories there were;
-//! the gradient learner's are only kept if tasks that they weren't fitted to confirm them.
+//! Adam (Kingma, Ba 2015, arXiv:1412.6980). Each is held near its usual value, the less the more items there were; the
+//! gradient learner's are only kept if tasks that they weren't fitted to confirm them. Temperatures and shares are kept
+//! halfway between what suited the past best and the usual: the next pile may be of another kind. (With a starter from drawn
+//! icons, halfway cost other drawn icons 0.2 points at one example a category, and gave stamps back 0.5 to 0.9 points and a
+//! log loss of 0.80 for 0.86.)
 
 use std::sync::Arc;
 
@@ -218,8 +221,8 @@ pub(crate) fn train(
         tasks: tasks.len(),
         shrinkage: prior.shrinkage,
         ridge_strength: prior.ridge_strength,
-        prototype_temperature: prior.prototype_temperature,
-        ridge_temperature: prior.ridge_temperature,
+        prototype_temperature: halfway(prior.prototype_temperature),
+        ridge_temperature: halfway(prior.ridge_temperature),
         preference,
         descent: descent.map(|Sizes { start, steps }| (start, steps)),
     };
@@ -351,6 +354,11 @@ impl<'a> Field<'a> {
             Array2::from_shape_fn(coordinates.dim(), |(i, k)| (coordinates[[i, k]] - middle[k]) * factors[i]);
         (gram, coordinates)
     }
+}
+
+/// Halfway to 1, as factors go.
+fn halfway(factors: ByShot) -> ByShot {
+    ByShot(factors.0.map(f64::sqrt))
 }
 
 /// The usual descent's sizes, the same for every group.
@@ -580,7 +588,7 @@ impl Evidence<'_> {
         Ok(Some(sizes(&logs)))
     }
 
-    /// The shares of prototype, ridge and gradient by shot.
+    /// The shares of prototype, ridge and gradient by shot, halfway between the best and the usual.
     fn preference(&self, prior: &Prior, sizes: &Sizes) -> [ByShot; 3] {
         let members: [Vec<Array2<f64>>; 3] = [
             self.logits(|task| {
@@ -623,7 +631,7 @@ impl Evidence<'_> {
                     }
                 }
             }
-            best.1
+            std::array::from_fn(|member| 0.5 * (best.1[member] + usual(shot)[member]))
         };
         let by_shot: [[f64; 3]; SHOTS.len()] = std::array::from_fn(best);
         std::array::from_fn(|member| ByShot(by_shot.map(|shares| shares[member])))
