@@ -60,6 +60,12 @@ impl Head {
         self
     }
 
+    /// The same head with these numbers (C) added to its logits.
+    pub(crate) fn shifted(mut self, by: &Array1<f64>) -> Self {
+        self.bias += by;
+        self
+    }
+
     /// The weighted sum of heads: logits are mixed in the same shares.
     pub(crate) fn mixed<'a>(parts: impl IntoIterator<Item = (&'a Head, f64)>) -> Option<Self> {
         let mut parts = parts.into_iter();

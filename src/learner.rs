@@ -125,6 +125,11 @@ impl LearnerKind {
     /// Beyond [`JUDGED_LIMIT`] examples a spread-out part of about that size decides on everything that leave-one-out
     /// decides, and the head is then fitted to all of them; only the gradient learner keeps to the part.
     pub fn learn(self, support: &Support, prior: &Prior) -> Learned {
+        with_shares(self.learn_fairly(support, prior), support, prior.counts_as_shares)
+    }
+
+    /// The same, to an item of each category as good as to one of any other.
+    fn learn_fairly(self, support: &Support, prior: &Prior) -> Learned {
         let limit = JUDGED_LIMIT.max(2 * support.categories());
         if support.len() <= limit {
             return self.judge(support, prior).0;
@@ -145,6 +150,16 @@ impl LearnerKind {
         };
         (learned, vec![recipe])
     }
+}
+
+/// Adds what counts say of shares: the log of each category's count, beside the mean, times `trust`. An example left out
+/// still counts, lest its own category seem rarer for it.
+fn with_shares(learned: Learned, support: &Support, trust: f64) -> Learned {
+    let log_shares: Array1<f64> =
+        support.counts().iter().map(|&count| trust * libm::log(count as f64 / support.shot())).collect();
+    let Learned { head, mut left_out } = learned;
+    left_out.logits += &log_shares;
+    Learned { head: head.shifted(&log_shares), left_out }
 }
 
 /// What leave-one-out decided about a learner: enough to fit it to more examples without judging again.

@@ -55,6 +55,9 @@ pub struct Prior {
     pub preference: Option<[ByShot; 3]>,
     /// How much of the pile's centre is known beyond the examples themselves, 0 to 1. Nearest prototypes need it.
     pub centre_known: f64,
+    /// How far the examples' counts are taken for the categories' shares among items still to be sorted, 0 (not at all) to 1:
+    /// categories get the logarithm of their count times this on their logits.
+    pub counts_as_shares: f64,
     /// How strongly the mix of learners is held to the preference, in nats for a share of 1 too much.
     pub preference_weight: f64,
 }
@@ -63,12 +66,13 @@ impl Default for Prior {
     fn default() -> Self {
         Self {
             shrinkage: 0.0,
-            ridge_strength: ByShot::even(0.1),
+            ridge_strength: ByShot([0.1, 0.1, 0.3, 0.5]),
             prototype_temperature: ByShot::even(1.0),
             ridge_temperature: ByShot::even(1.0),
             descent: Descent::even(10, 20.0),
             preference: None,
             centre_known: 0.0,
+            counts_as_shares: 0.5,
             preference_weight: 20.0,
         }
     }
@@ -103,7 +107,7 @@ impl Prior {
             return learned.each_ref().map(|share| share.at(shot));
         }
         let gradient = 0.1 * (1.0 - 1.0 / shot);
-        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.5 * self.centre_known / (shot * shot);
+        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.65 * self.centre_known / (shot * shot);
         [prototype, 1.0 - prototype - gradient, gradient]
     }
 

@@ -38,11 +38,25 @@ def task(table, counts, seed):
 
 
 def ridge(x, y, query, penalty):
-    """Category means of squared errors plus penalty · ‖W‖²: scikit-learn's Ridge with weights 1/n_c."""
+    """Category means of squared errors plus penalty · ‖W‖²: scikit-learn's Ridge with weights 1/n_c; then fairness to few."""
     categories = y.max() + 1
     targets = np.eye(categories)[y] - 1 / categories
     fit = Ridge(alpha=penalty).fit(x.astype(np.float64), targets, sample_weight=1 / np.bincount(y)[y])
-    return fit.predict(query.astype(np.float64))
+    return (fit.predict(query.astype(np.float64)) + 1 / categories) * fairness(x.astype(np.float64), y, penalty) - 1 / categories
+
+
+def fairness(x, y, penalty):
+    """What a category's scores are multiplied by: the geometric mean of r/(r + (1 − r)/n_c + penalty) over its own, r the share in
+    common."""
+    counts = np.bincount(y)
+    if len(y) == len(counts):
+        return np.ones(len(counts))
+    means = np.stack([x[y == c].mean(0) for c in range(len(counts))])
+    variance = ((x - means[y]) ** 2).sum() / (len(y) - len(counts))
+    square = (x**2).sum(1).mean()
+    common = np.clip(1 - variance / square, 0.05, 1)
+    scores = common / (common + (1 - common) / counts + penalty / square)
+    return np.exp(np.log(scores).mean()) / scores
 
 
 def ridge_left_out(x, y, penalty):

@@ -56,14 +56,14 @@ impl Products {
 
 /// Squared distances of examples from their category's mean, summed, and how many of them are free.
 #[derive(Clone, Copy)]
-struct Scatter {
+pub(super) struct Scatter {
     sum: f64,
     freedom: usize,
 }
 
 impl Scatter {
     /// The scatter of the whole support set around its category means (C × d). Cost O(n d).
-    fn around(means: &Array2<f64>, support: &Support) -> Self {
+    pub(super) fn around(means: &Array2<f64>, support: &Support) -> Self {
         let sum = support
             .labels()
             .iter()
@@ -75,12 +75,12 @@ impl Scatter {
     }
 
     /// s²; 0 where every category has one example, and then it would make no difference.
-    fn variance(self) -> f64 {
+    pub(super) fn variance(self) -> f64 {
         if self.freedom == 0 { 0.0 } else { self.sum / self.freedom as f64 }
     }
 
     /// Without one example at this squared distance from the mean of its category of `count` ≥ 2.
-    fn without(self, squared_distance: f64, count: f64) -> Self {
+    pub(super) fn without(self, squared_distance: f64, count: f64) -> Self {
         let sum = (self.sum - squared_distance * count / (count - 1.0)).max(0.0);
         Self { sum, freedom: self.freedom - 1 }
     }
