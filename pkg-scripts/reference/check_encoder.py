@@ -83,7 +83,7 @@ def read(path):
 def session(name, *options):
     file = WORK / name
     if not file.exists():
-        subprocess.run([sys.executable, HERE / "make_encoder.py", "--float", file, *options], check=True)
+        subprocess.run([sys.executable, HERE / "make_encoder.py", "photo", "--float", file, *options], check=True)
     settings = onnxruntime.SessionOptions()
     settings.intra_op_num_threads = 1
     return onnxruntime.InferenceSession(file, settings, providers=["CPUExecutionProvider"])

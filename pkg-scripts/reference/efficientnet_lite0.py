@@ -7,6 +7,8 @@ import numpy as np
 from onnx import TensorProto, helper
 from scipy.stats import norm
 
+from graph import Graph, store_f32
+
 SIDE = 224
 FEATURES = 1280
 CLASSES = 1000
@@ -111,29 +113,6 @@ def convolutions(tensors):
     add("head", "_conv_head", "_bn1")
     assert len(mean) == FEATURES
     return layers
-
-
-class Graph:
-    """An ONNX graph under construction."""
-
-    def __init__(self):
-        self.nodes, self.initializers, self.names = [], [], set()
-
-    def node(self, op, inputs, output, **attributes):
-        self.nodes.append(helper.make_node(op, inputs, [output], name=output, **attributes))
-        return output
-
-    def constant(self, name, values):
-        if name not in self.names:
-            self.names.add(name)
-            kind = helper.np_dtype_to_tensor_dtype(values.dtype)
-            self.initializers.append(helper.make_tensor(name, kind, values.shape, values.astype(values.dtype.newbyteorder("<")).tobytes(), raw=True))
-        return name
-
-
-def store_f32(graph, name, values):
-    """Stores a weight or bias as it is."""
-    return graph.constant(name, values.astype(np.float32))
 
 
 def model(layers, store_weight=store_f32, store_bias=store_f32, classifier=None, description=""):
