@@ -1,25 +1,39 @@
 //! From an item's bytes to its embedding.
 
+#[cfg(any(feature = "photo", feature = "text"))]
+mod fingerprint;
+#[cfg(feature = "text")]
+mod language;
 #[cfg(feature = "photo")]
 mod network;
 #[cfg(feature = "photo")]
 mod photo;
 #[cfg(feature = "photo")]
 mod picture;
+#[cfg(feature = "text")]
+mod text;
+#[cfg(feature = "text")]
+mod tokens;
 
+#[cfg(any(feature = "photo", feature = "text"))]
+pub use fingerprint::file_fingerprint;
 #[cfg(feature = "photo")]
-pub use photo::{Photo, PhotoEncoder, file_fingerprint};
+pub use photo::{Photo, PhotoEncoder};
+#[cfg(feature = "text")]
+pub use text::{Note, NoteEncoder};
 
 /// Most pixels a picture may have: more than any camera takes, little enough for a browser's memory.
 pub const MAX_PIXELS: u64 = 100_000_000;
 /// Most pixels a picture may have across or down.
 pub const MAX_SIDE: u32 = 30_000;
+/// Most characters a note may have, about sixty pages: a longer text is no note but a book.
+pub const MAX_CHARACTERS: usize = 100_000;
 
 /// A frozen network that turns one item into numbers, alike for items that look alike.
 ///
 /// Nothing is learnt here: categories are learnt from the embeddings.
 pub trait Encoder {
-    /// What is embedded, as it is stored: `[u8]` for the bytes of a picture file.
+    /// What is embedded, as it is stored: `[u8]` for the bytes of a picture file, `str` for a note.
     type Item: ?Sized;
 
     /// Names the network and the file it was read from. Embeddings with different identities can't be compared.
@@ -99,8 +113,14 @@ pub enum EncoderError {
         /// Bytes that came.
         bytes: usize,
     },
+    /// A note has no letter, digit or sign.
+    #[error("there is no text in it; write something or leave it out")]
+    NoteEmpty,
+    /// A note with more text than is worth the time.
+    #[error("it has {0} characters, and a note can have at most {MAX_CHARACTERS}; divide it or leave it out")]
+    NoteTooLong(usize),
     /// The encoder file is not what this encoder runs.
-    #[error("this encoder file can't be used: {0}; take the photo.onnx that came with this version")]
+    #[error("this encoder file can't be used: {0}; take the encoder file of that name that came with this version")]
     EncoderFile(String),
 }
 
@@ -112,7 +132,15 @@ impl EncoderError {
             Self::NotAnImage { .. } => "not-an-image",
             Self::ImageTooLarge { .. } | Self::NoMemory { .. } => "image-too-large",
             Self::ImageUnreadable { .. } | Self::ImageUnsupported { .. } | Self::FrameSize { .. } => "image-unreadable",
+            Self::NoteEmpty => "note-empty",
+            Self::NoteTooLong(_) => "note-too-long",
             Self::EncoderFile(_) => "encoder-file",
         }
     }
+}
+
+/// One thread an encoder: items are many, so they run side by side rather than the parts of one.
+#[cfg(any(feature = "photo", feature = "text"))]
+fn one_thread() -> std::sync::Arc<rten::ThreadPool> {
+    std::sync::Arc::new(rten::ThreadPool::with_num_threads(1))
 }

@@ -1,6 +1,6 @@
 //! The library's error type.
 
-use crate::encoder::EncoderError;
+use crate::{encoder::EncoderError, table::TableError};
 
 /// What can go wrong in the library; every message names the item and the remedy.
 #[derive(Debug, thiserror::Error)]
@@ -9,6 +9,9 @@ pub enum Error {
     /// An item could not be turned into an embedding.
     #[error(transparent)]
     Encoder(#[from] EncoderError),
+    /// A file of notes could not be read.
+    #[error(transparent)]
+    Table(#[from] TableError),
     /// An embedding has another length than the space.
     #[error("an embedding has {found} numbers where {expected} are expected; use one encoder for everything in a pile")]
     WrongDimension {
@@ -154,6 +157,7 @@ impl Error {
     pub fn code(&self) -> &'static str {
         match self {
             Error::Encoder(error) => error.code(),
+            Error::Table(error) => error.code(),
             Error::WrongDimension { .. } => "wrong-dimension",
             Error::DimensionOutOfRange(_) => "dimension-out-of-range",
             Error::NotFinite { .. } => "not-finite",

@@ -1,7 +1,10 @@
 //! The wasm-bindgen surface: names and types for JavaScript, no arithmetic.
 
+#[cfg(feature = "photo")]
 mod photo;
 mod sorter;
+#[cfg(feature = "text")]
+mod text;
 
 use wasm_bindgen::prelude::*;
 

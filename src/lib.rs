@@ -5,7 +5,8 @@
 //!
 //! | module | what it holds |
 //! | --- | --- |
-//! | [`encoder`] | photos in, embeddings out |
+//! | [`encoder`] | photos and notes in, embeddings out |
+//! | [`table`] | lines, tables and JSON lines in, notes with their columns out |
 //! | [`space`] | the unit vectors in which items are compared, and the pile's own centre |
 //! | [`support`] | the examples, checked once at the door |
 //! | [`learner`] | nearest prototype, ridge, a few gradient steps, and the mix of them |
@@ -37,6 +38,7 @@ pub mod sorter;
 pub mod space;
 pub mod starter;
 pub mod support;
+pub mod table;
 pub mod whitening;
 
 #[cfg(target_family = "wasm")]

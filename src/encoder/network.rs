@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use rten::{Dimension, Model, ModelOptions, NodeId, RunOptions, ThreadPool, Value, op_registry};
 
-use super::EncoderError;
+use super::{EncoderError, one_thread};
 
 /// Pixels to a side of the network's input.
 pub(super) const SIDE: usize = 224;
@@ -74,9 +74,4 @@ impl Network {
         }
         Ok(embedding)
     }
-}
-
-/// One thread an encoder: photos are many, so they run side by side rather than the parts of one.
-fn one_thread() -> Arc<ThreadPool> {
-    Arc::new(ThreadPool::with_num_threads(1))
 }

@@ -1,9 +1,8 @@
 //! The photo encoder: EfficientNet-Lite0 (Tan & Le 2019; Lite variant 2020) on the middle square of a picture.
 
-use sha2::{Digest, Sha256};
-
 use super::{
     Encoder, EncoderError,
+    fingerprint::fingerprint,
     network::{Network, SIDE},
     picture::Picture,
 };
@@ -135,19 +134,4 @@ impl Encoder for PhotoEncoder {
     fn embed(&self, file: &[u8]) -> Result<Vec<f32>, EncoderError> {
         self.embed_picture(&Picture::decode(file)?)
     }
-}
-
-/// Names a file's content: the first 128 bits of its SHA-256, in hexadecimal. The same as [`Photo`]'s.
-pub fn file_fingerprint(file: &[u8]) -> String {
-    fingerprint(&[file])
-}
-
-/// The first 128 bits of the SHA-256 of the parts, in hexadecimal.
-fn fingerprint(parts: &[&[u8]]) -> String {
-    let mut hash = Sha256::new();
-    // In short calls: a WebAssembly engine exchanges slow first code for fast code only between calls.
-    for piece in parts.iter().flat_map(|part| part.chunks(1 << 14)) {
-        hash.update(piece);
-    }
-    hash.finalize()[..16].iter().map(|byte| format!("{byte:02x}")).collect()
 }
