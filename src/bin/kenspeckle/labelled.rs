@@ -19,6 +19,15 @@ pub struct Item {
     pub name: String,
     /// As its encoder gives it.
     pub embedding: Vec<f32>,
+    /// Its row in the table it is from, if it is from one.
+    pub row: Option<usize>,
+}
+
+impl Item {
+    /// An item that is from no table.
+    pub fn new(name: String, embedding: Vec<f32>) -> Self {
+        Self { name, embedding, row: None }
+    }
 }
 
 /// An item whose category is known.
@@ -81,34 +90,36 @@ fn example_files(folder: &Path) -> Result<(Vec<PathBuf>, Vec<String>), Failure> 
     Ok((inside, troubles))
 }
 
-/// Examples by category, a file in one category once, and a file in several categories not at all; and how many such
-/// files there are.
-pub fn without_disputed(photos: Vec<photos::Photo>) -> (Vec<Example>, usize) {
-    let mut places: HashMap<String, Vec<String>> = HashMap::new();
-    for photo in &photos {
-        places.entry(photo.fingerprint.clone()).or_default().push(photo.name.clone());
+/// The folder that an item's name begins with.
+pub fn folder_of(name: &str) -> String {
+    name.split('/').next().unwrap_or("").to_owned()
+}
+
+/// Examples with their fingerprints: the same content in one category counts once, and in several categories not at all.
+/// Also how many contents there are in several. `what` is what the person calls one of them.
+pub fn without_disputed(found: Vec<(Example, String)>, what: &str) -> (Vec<Example>, usize) {
+    let mut places: HashMap<String, Vec<(String, String)>> = HashMap::new();
+    for (example, fingerprint) in &found {
+        let place = (example.item.name.clone(), example.category.clone());
+        places.entry(fingerprint.clone()).or_default().push(place);
     }
-    let category = |name: &str| name.split('/').next().unwrap_or("").to_owned();
     let mut disputed = 0;
     let mut examples = Vec::new();
-    for photo in photos {
-        let names = &places[&photo.fingerprint];
-        if names[0] != photo.name {
-            continue;
-        }
-        let own = category(&photo.name);
-        if names.iter().any(|name| category(name) != own) {
+    for (example, fingerprint) in found {
+        // Met before, so told and counted before.
+        let Some(same) = places.remove(&fingerprint) else { continue };
+        let names = same.iter().map(|(name, _)| name.as_str()).collect::<Vec<_>>().join(" and ");
+        if same.iter().any(|(_, category)| *category != example.category) {
             console::say(&format!(
-                "{}: the same file is in several categories, so none of them counts; keep it in one",
-                names.join(" and ")
+                "{names}: the same {what} is in several categories, so none of them counts; keep it in one"
             ));
             disputed += 1;
             continue;
         }
-        if names.len() > 1 {
-            console::say(&format!("{}: the same file; it counts once", names.join(" and ")));
+        if same.len() > 1 {
+            console::say(&format!("{names}: the same {what}; it counts once"));
         }
-        examples.push(Example { item: Item { name: photo.name, embedding: photo.embedding }, category: own });
+        examples.push(example);
     }
     (examples, disputed)
 }
@@ -117,7 +128,7 @@ pub fn without_disputed(photos: Vec<photos::Photo>) -> (Vec<Example>, usize) {
 pub fn items(array: &Array2<f32>, path: &Path) -> Vec<Item> {
     let names = vectors::names_beside(path, array.nrows());
     let name = |row: usize| names.as_ref().map_or_else(|| row.to_string(), |names| names[row].clone());
-    array.outer_iter().enumerate().map(|(row, numbers)| Item { name: name(row), embedding: numbers.to_vec() }).collect()
+    array.outer_iter().enumerate().map(|(row, numbers)| Item::new(name(row), numbers.to_vec())).collect()
 }
 
 /// The rows of the array in `path`, each with its category from the file of labels.

@@ -5,15 +5,15 @@ use std::{collections::BTreeMap, fs, path::PathBuf};
 use clap::Args;
 use kenspeckle::{
     Space, Starter,
-    encoder::{Encoder, PhotoEncoder},
     meta::{self, statistics::Statistics},
     starter::LEAST_CATEGORIES,
 };
 
 use crate::{
     console::{self, Failure},
-    labelled::{self, Example},
-    output, vectors,
+    labelled::Example,
+    material::{self, Kind, Reading},
+    output,
 };
 
 /// Learn from piles already sorted, so that the next one of the same kind needs fewer examples.
@@ -22,13 +22,16 @@ use crate::{
 /// describes the past material on the whole, so think before you give it to others.
 #[derive(Args)]
 pub struct Learn {
-    /// Past piles: folders that hold one folder of photos for each category; .npy files of vectors, each with --labels; or
-    /// files that `learn --partial` wrote.
+    /// Past piles: folders that hold one folder of photos or of .txt files for each category; tables of notes (.csv, .tsv,
+    /// .jsonl) with --column and --category; .npy files of vectors, each with --labels; or files that `learn --partial`
+    /// wrote. All by one encoder.
     #[arg(required = true)]
     past: Vec<PathBuf>,
     /// For each past pile in an .npy file, in the same order: a file with one category a line.
     #[arg(long, value_name = "FILE.csv")]
     labels: Vec<PathBuf>,
+    #[command(flatten)]
+    reading: Reading,
     /// The starter file to write.
     #[arg(long, value_name = "FILE.starter")]
     out: PathBuf,
@@ -47,15 +50,12 @@ impl Learn {
         let mut gathered: Option<Statistics> = None;
         let mut troubles = 0;
         for past in &self.past {
-            let (statistics, unread) = if past.is_dir() {
-                photos(past)?
-            } else if vectors::is_npy(past) {
-                let labels = labels.next().ok_or_else(|| {
-                    Failure::because(format!("{}: vectors need --labels FILE.csv, one category a line", past.display()))
-                })?;
-                let array = vectors::read(past)?;
-                let space = Space::new(array.ncols(), array.iter().all(|&x| x >= 0.0)).map_err(Failure::because)?;
-                gather("vectors", space, labelled::vectors(&array, past, labels)?)?
+            let kind = Kind::of(past);
+            let (statistics, unread) = if kind != Kind::Photos || past.is_dir() {
+                let labels = if kind == Kind::Vectors { labels.next() } else { None };
+                let read = material::labelled(past, labels.map(PathBuf::as_path), &self.reading, "past pile")?;
+                let (statistics, unusable) = gather(&read.encoder, read.space, read.examples)?;
+                (statistics, read.troubles + unusable)
             } else {
                 let named = |reason: String| Failure::because(format!("{}: {reason}", past.display()));
                 let file = fs::read(past).map_err(|error| named(format!("it can't be read ({error})")))?;
@@ -107,16 +107,6 @@ impl Learn {
         }
         Ok(troubles)
     }
-}
-
-fn photos(folder: &std::path::Path) -> Result<(Statistics, usize), Failure> {
-    let (photos, troubles) = labelled::photos(folder, "past pile")?;
-    troubles.iter().for_each(|trouble| console::say(trouble));
-    let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
-    let space = Space::new(encoder.dimension(), encoder.non_negative()).map_err(Failure::because)?;
-    let (examples, disputed) = labelled::without_disputed(photos);
-    let (statistics, unusable) = gather(encoder.identity(), space, examples)?;
-    Ok((statistics, troubles.len() + disputed + unusable))
 }
 
 /// The sums over these examples, and how many could not be used.

@@ -1,13 +1,16 @@
-//! The program `kenspeckle`: sort a folder of photos, or vectors, by a few examples of each category.
+//! The program `kenspeckle`: sort photos, notes or vectors by a few examples of each category.
 //!
-//! One file a command; [`photos`], [`vectors`] and [`labelled`] read what is outside, [`output`] writes, [`console`] speaks
-//! to the person.
+//! One file a command; [`material`] reads what is outside, through [`photos`], [`notes`], [`vectors`] and [`labelled`];
+//! [`output`] writes, [`console`] speaks to the person.
 
 mod console;
 mod embed;
 mod labelled;
 mod learn;
+mod material;
+mod notes;
 mod output;
+mod parallel;
 mod photos;
 mod plot;
 mod rehearse;
@@ -21,14 +24,15 @@ use clap::{Parser, Subcommand};
 
 use console::Failure;
 
-/// Sort a pile of photos into your own categories, from a few examples of each. Nothing leaves this machine.
+/// Sort a pile of photos or notes into your own categories, from a few examples of each. Nothing leaves this machine.
 #[derive(Parser)]
 #[command(
     version,
     after_help = "\
 Start with:
   kenspeckle sort unsorted/ --examples sorted/ --out result.csv
-where unsorted/ holds the photos of the pile and sorted/ holds one folder for each category with a few example photos in it.
+where unsorted/ holds the photos of the pile and sorted/ holds one folder for each category with a few example photos in it. Or, for notes in a table:
+  kenspeckle sort notes.csv --column note --examples known.csv --category tray --out result.csv
 
 Exit codes: 0 done · 1 not done · 2 the command line can't be understood · 3 done, but some items could not be read · 130 stopped by Ctrl-C
 

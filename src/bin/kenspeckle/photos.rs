@@ -4,13 +4,11 @@ use std::{
     collections::HashSet,
     fs,
     path::{Path, PathBuf},
-    sync::atomic::{AtomicUsize, Ordering},
-    thread,
 };
 
 use kenspeckle::encoder::{Encoder, PhotoEncoder, file_fingerprint};
 
-use crate::console::{self, Failure};
+use crate::{console::Failure, parallel};
 
 /// The largest file that is read as a photo.
 const FILE_LIMIT: u64 = 512 << 20;
@@ -73,42 +71,21 @@ pub fn shown(part: &Path) -> String {
 /// The embeddings of these files of the folder, in order; and the lines about those that could not be read.
 pub fn embed(folder: &Path, parts: &[PathBuf], what: &str) -> Result<(Vec<Photo>, Vec<String>), Failure> {
     let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
-    let bar = console::progress(parts.len(), what);
-    let next = AtomicUsize::new(0);
-    let workers = thread::available_parallelism().map_or(1, |cores| cores.get()).min(parts.len());
-    // Plain threads: a pool's worker that waits for the encoder's own pool would pick up another photo meanwhile.
-    let done: Vec<(usize, Result<Photo, String>)> = thread::scope(|scope| {
-        let work = || {
-            let encoder = encoder.clone();
-            let mut done = Vec::new();
-            while !console::stopped() {
-                let index = next.fetch_add(1, Ordering::Relaxed);
-                let Some(part) = parts.get(index) else { break };
-                let name = shown(part);
-                let outcome = match read_one(&encoder, &folder.join(part)) {
-                    Ok((embedding, fingerprint)) => Ok(Photo { name, embedding, fingerprint }),
-                    Err(reason) => Err(format!("{name}: {reason}")),
-                };
-                done.push((index, outcome));
-                bar.inc(1);
+    let outcomes = parallel::each(
+        parts.len(),
+        what,
+        || encoder.clone(),
+        |encoder, index| {
+            let name = shown(&parts[index]);
+            match read_one(encoder, &folder.join(&parts[index])) {
+                Ok((embedding, fingerprint)) => Ok(Photo { name, embedding, fingerprint }),
+                Err(reason) => Err(format!("{name}: {reason}")),
             }
-            done
-        };
-        let workers: Vec<_> = (0..workers).map(|_| scope.spawn(work)).collect();
-        workers
-            .into_iter()
-            .flat_map(|worker| worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
-            .collect()
-    });
-    bar.finish_and_clear();
-    console::go_on()?;
-    let mut in_order: Vec<Option<Result<Photo, String>>> = parts.iter().map(|_| None).collect();
-    for (index, outcome) in done {
-        in_order[index] = Some(outcome);
-    }
+        },
+    )?;
     let mut photos = Vec::new();
     let mut troubles = Vec::new();
-    for outcome in in_order.into_iter().flatten() {
+    for outcome in outcomes {
         match outcome {
             Ok(photo) => photos.push(photo),
             Err(trouble) => troubles.push(trouble),

@@ -14,7 +14,6 @@ use std::{
 use clap::Args;
 use kenspeckle::{
     LearnerKind, Settings, Sorter, Space,
-    encoder::{Encoder, PhotoEncoder},
     meta::{
         episode::{Design, Labelled},
         rehearse::{Contender, LEAST_VALUES, Played, Rehearsal, Summary},
@@ -23,11 +22,10 @@ use kenspeckle::{
 
 use crate::{
     console::{self, Failure},
-    labelled::{self, Example},
+    material::{self, Labelled as Read, Reading},
     output, plot,
     report::Report,
     sort::read_starter,
-    vectors,
 };
 
 /// The shots where the person names none, as far as counts allow.
@@ -36,18 +34,21 @@ const USUAL_SHOTS: [usize; 4] = [1, 2, 5, 10];
 /// Categories an episode where the person names no number.
 const USUAL_WAYS: usize = 5;
 
-/// Find out how well this tool suits your material, from photos whose category you know.
+/// Find out how well this tool suits your material, from photos or notes whose category you know.
 ///
-/// Draws small tasks from them again and again: a few categories with a few examples of each, and other photos of the same
+/// Draws small tasks from them again and again: a few categories with a few examples of each, and other items of the same
 /// categories that are sorted as if nobody knew where they belong. Prints the share that came into their own category, for
 /// each number of examples and each learner.
 #[derive(Args)]
 pub struct Rehearse {
-    /// A folder that holds one folder of photos for each category, named like it; or an .npy file of vectors.
+    /// A folder that holds one folder of photos or of .txt files for each category, named like it, or a .txt file for each
+    /// category with a note a line; a table of notes with --column and --category; or an .npy file of vectors.
     labelled: PathBuf,
     /// For an .npy file: a file with one category a line, in the same order.
     #[arg(long, value_name = "FILE.csv")]
     labels: Option<PathBuf>,
+    #[command(flatten)]
+    reading: Reading,
     /// How many categories a task has [default: 5, or as many as there are].
     #[arg(long, value_name = "NUMBER", value_parser = at_least::<2, 500>)]
     ways: Option<NonZeroUsize>,
@@ -58,10 +59,10 @@ pub struct Rehearse {
     /// How many tasks are drawn.
     #[arg(long, default_value = "300", value_name = "NUMBER", value_parser = at_least::<LEAST_VALUES, 100_000>)]
     episodes: NonZeroUsize,
-    /// How many other photos of each category are sorted, as far as there are.
+    /// How many other items of each category are sorted, as far as there are.
     #[arg(long, default_value = "15", value_name = "NUMBER", value_parser = at_least::<1, 1000>)]
     queries: NonZeroUsize,
-    /// Spread examples and other photos unevenly: each category has 0.66 times as many as the one before, and the numbers
+    /// Spread examples and other items unevenly: each category has 0.66 times as many as the one before, and the numbers
     /// above are the mean.
     #[arg(long)]
     uneven: bool,
@@ -75,9 +76,6 @@ pub struct Rehearse {
     /// Seed of everything that is drawn: the same seed gives the same result.
     #[arg(long, default_value_t = 1)]
     seed: u64,
-    /// Vectors have a sign even if no number happens to be negative (see `kenspeckle sort --help`).
-    #[arg(long)]
-    signed: bool,
     /// How many tasks are worked on at a time [default: one for each core]; the result doesn't depend on it.
     #[arg(long, value_name = "NUMBER", value_parser = at_least::<1, 256>)]
     threads: Option<NonZeroUsize>,
@@ -140,7 +138,8 @@ impl Rehearse {
 
     /// Runs the command and tells how many items could not be read.
     pub fn run(self) -> Result<usize, Failure> {
-        let material = if vectors::is_npy(&self.labelled) { self.read_vectors()? } else { self.read_photos()? };
+        let read = material::labelled(&self.labelled, self.labels.as_deref(), &self.reading, "examples")?;
+        let material = self.gather(read)?;
         let labelled = Labelled::new(&material.labels, material.categories.len()).map_err(Failure::because)?;
         let sizes: Vec<usize> = (0..labelled.categories()).map(|category| labelled.members(category).len()).collect();
         let design = self.design(&material, &sizes)?;
@@ -184,44 +183,10 @@ impl Rehearse {
         Ok(material.troubles)
     }
 
-    fn read_photos(&self) -> Result<Material, Failure> {
-        if self.labels.is_some() {
-            return Err(Failure::because(format!(
-                "{}: --labels goes with an .npy file; in a folder, the photos' own folders name the categories",
-                self.labelled.display()
-            )));
-        }
-        let (photos, troubles) = labelled::photos(&self.labelled, "photos")?;
-        troubles.iter().for_each(|trouble| console::say(trouble));
-        let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
-        let space = Space::new(encoder.dimension(), encoder.non_negative()).map_err(Failure::because)?;
-        let (examples, disputed) = labelled::without_disputed(photos);
-        self.gather(encoder.identity().to_owned(), space, "photos", examples, troubles.len() + disputed)
-    }
-
-    fn read_vectors(&self) -> Result<Material, Failure> {
-        let Some(labels) = &self.labels else {
-            return Err(Failure::because(format!(
-                "{}: an .npy file needs --labels FILE.csv, one category a line in the same order",
-                self.labelled.display()
-            )));
-        };
-        let array = vectors::read(&self.labelled)?;
-        let examples = labelled::vectors(&array, &self.labelled, labels)?;
-        let negative = array.iter().any(|&x| x < 0.0);
-        let space = Space::new(array.ncols(), !negative && !self.signed).map_err(Failure::because)?;
-        self.gather("vectors".into(), space, "vectors", examples, 0)
-    }
-
     /// Checks every item at the door, so that no episode meets one that can't be sorted.
-    fn gather(
-        &self,
-        encoder: String,
-        space: Space,
-        noun: &'static str,
-        examples: Vec<Example>,
-        mut troubles: usize,
-    ) -> Result<Material, Failure> {
+    fn gather(&self, read: Read) -> Result<Material, Failure> {
+        let noun = read.kind.noun();
+        let Read { encoder, space, examples, mut troubles, .. } = read;
         let (examples, refused): (Vec<_>, Vec<_>) = examples
             .into_iter()
             .map(|example| {

@@ -8,29 +8,34 @@ use std::{
 
 use clap::Args;
 use kenspeckle::{
-    LearnerKind, Settings, Sorter, Space, Starter,
-    encoder::{Encoder, PhotoEncoder},
+    LearnerKind, Settings, Sorter, Starter,
+    table::{Format, Table},
 };
 use serde::Serialize;
 
 use crate::{
     console::{self, Failure},
-    labelled::{self, Example, Item},
-    output, photos, vectors,
+    labelled::Example,
+    material::{self, Labelled, Pile, Reading},
+    output,
 };
 
 /// Sort a pile by a few examples of each category.
 ///
 /// Prints a table with one line for each item of the pile: its name, the tray it belongs in, and how probable that is
-/// (0 to 1). Two to five examples of each category are a good start; sort again with more where the result is not sure.
+/// (0 to 1). A pile that is a table comes back with all of its columns and these two more. Two to five examples of each
+/// category are a good start; sort again with more where the result is not sure.
 #[derive(Args)]
 pub struct Sort {
-    /// The pile: a folder of photos (JPEG, PNG, WebP, GIF, BMP, in any depth), or an .npy file of vectors.
+    /// The pile: a folder of photos (JPEG, PNG, WebP, GIF, BMP, in any depth); notes, one a line in a .txt file, in a column
+    /// of a table (.csv, .tsv, .jsonl), or each in a .txt file of its own in a folder; or an .npy file of vectors.
     pile: PathBuf,
-    /// The examples: a folder that holds one folder of photos for each category, named like it; or an .npy file with
-    /// vectors of the same kind as the pile's.
+    /// The examples, of the same kind: a folder that holds one folder of photos or of .txt files for each category, named like
+    /// it, or a .txt file for each category with a note a line; a table with a column of categories; or an .npy file.
     #[arg(long)]
     examples: PathBuf,
+    #[command(flatten)]
+    reading: Reading,
     /// For examples in an .npy file: a file with one category a line, in the same order.
     #[arg(long, value_name = "FILE.csv")]
     labels: Option<PathBuf>,
@@ -40,10 +45,6 @@ pub struct Sort {
     /// Seed of everything that is drawn: the same seed gives the same result.
     #[arg(long, default_value_t = 1)]
     seed: u64,
-    /// Vectors have a sign even if no number happens to be negative (by default, vectors without any negative number are
-    /// compared by their square roots, which suits what comes after a rectifier).
-    #[arg(long)]
-    signed: bool,
     /// A starter from past piles of the same kind (`kenspeckle learn` makes it): fewer examples are needed with one.
     #[arg(long, value_name = "FILE.starter")]
     starter: Option<PathBuf>,
@@ -55,20 +56,17 @@ pub struct Sort {
     json: bool,
 }
 
-/// What was read, and what could not be.
-struct Material {
-    encoder: String,
-    space: Space,
-    pile: Vec<Item>,
-    examples: Vec<Example>,
-    troubles: usize,
-}
-
 #[derive(Serialize)]
 struct Sorted<'a> {
     item: &'a str,
     tray: &'a str,
     probability: f64,
+    /// The row of the table it is from.
+    #[serde(skip)]
+    row: Option<usize>,
+    /// That row's cells by column.
+    #[serde(skip_serializing_if = "BTreeMap::is_empty")]
+    columns: BTreeMap<&'a str, &'a str>,
 }
 
 #[derive(Serialize)]
@@ -78,28 +76,17 @@ struct Report<'a> {
     seed: u64,
     trays: BTreeMap<&'a str, usize>,
     unreadable: usize,
-    items: Vec<Sorted<'a>>,
+    items: &'a [Sorted<'a>],
 }
 
 impl Sort {
     /// Runs the command and tells how many items could not be read.
     pub fn run(self) -> Result<usize, Failure> {
-        let mut material = match (vectors::is_npy(&self.pile), vectors::is_npy(&self.examples)) {
-            (false, false) => self.read_photos()?,
-            (true, true) => self.read_vectors()?,
-            _ => {
-                return Err(Failure::because(
-                    "the pile and the examples must both be folders of photos or both be .npy files; \
-                     `kenspeckle embed` turns photos into an .npy file",
-                ));
-            }
-        };
-        let settings = Settings {
-            encoder: material.encoder.clone(),
-            space: material.space,
-            learner: self.learner,
-            seed: self.seed,
-        };
+        let (pile, examples) =
+            material::pile_and_examples(&self.pile, &self.examples, self.labels.as_deref(), &self.reading)?;
+        let mut troubles = pile.troubles + examples.troubles;
+        let settings =
+            Settings { encoder: pile.encoder.clone(), space: pile.space, learner: self.learner, seed: self.seed };
         let mut sorter = match &self.starter {
             Some(path) => read_starter(path).and_then(|starter| {
                 let other = |error| Failure::because(format!("{}: {error}", path.display()));
@@ -107,99 +94,58 @@ impl Sort {
             })?,
             None => Sorter::new(settings),
         };
-        let pile = add_pile(&mut sorter, &mut material);
-        let trays = add_examples(&mut sorter, &mut material)?;
-        if pile.is_empty() {
+        let numbers = add_pile(&mut sorter, &pile, &mut troubles);
+        let trays = add_examples(&mut sorter, &examples, &mut troubles)?;
+        if numbers.is_empty() {
             return Err(Failure::because(format!("{}: no item of the pile could be read", self.pile.display())));
         }
         console::go_on()?;
 
         let names: HashMap<usize, &str> = trays.iter().map(|(name, &tray)| (tray, name.as_str())).collect();
         let verdicts = sorter.verdicts();
-        let mut items = Vec::with_capacity(pile.len());
-        for (number, name) in &pile {
+        let mut items = Vec::with_capacity(numbers.len());
+        for (number, index) in numbers {
+            let item = &pile.items[index];
             let verdict =
-                verdicts[*number].as_ref().and_then(|verdict| Some((*names.get(&verdict.tray?)?, verdict.probability)));
-            let (tray, probability) = verdict.ok_or_else(|| Failure::because(format!("{name}: it got no tray")))?;
-            items.push(Sorted { item: name, tray, probability });
+                verdicts[number].as_ref().and_then(|verdict| Some((*names.get(&verdict.tray?)?, verdict.probability)));
+            let (tray, probability) =
+                verdict.ok_or_else(|| Failure::because(format!("{}: it got no tray", item.name)))?;
+            let columns = match (&pile.table, item.row) {
+                (Some(table), Some(row)) if self.json => columns_of(table, row),
+                _ => BTreeMap::new(),
+            };
+            items.push(Sorted { item: &item.name, tray, probability, row: item.row, columns });
         }
-        self.write(&material, &trays, items)?;
-        Ok(material.troubles)
+        self.write(&pile, &trays, &items, troubles)?;
+        Ok(troubles)
     }
 
-    fn read_photos(&self) -> Result<Material, Failure> {
-        let parts = photos::files_below(&self.pile)?;
-        if parts.is_empty() {
-            return Err(Failure::because(format!(
-                "{}: there is no file in this folder; name the folder with the pile",
-                self.pile.display()
-            )));
-        }
-        let (examples, mut troubles) = labelled::photos(&self.examples, "examples")?;
-        let (pile, unreadable) = photos::embed(&self.pile, &parts, "pile")?;
-        troubles.extend(labelled::within(&self.pile, unreadable));
-        troubles.iter().for_each(|trouble| console::say(trouble));
-        repeated_in_pile(&pile);
-
-        let encoder = PhotoEncoder::bundled().map_err(Failure::because)?;
-        let space = Space::new(encoder.dimension(), encoder.non_negative()).map_err(Failure::because)?;
-        let (examples, disputed) = labelled::without_disputed(examples);
-        Ok(Material {
-            encoder: encoder.identity().to_owned(),
-            space,
-            pile: pile.into_iter().map(|photo| Item { name: photo.name, embedding: photo.embedding }).collect(),
-            examples,
-            troubles: troubles.len() + disputed,
-        })
-    }
-
-    fn read_vectors(&self) -> Result<Material, Failure> {
-        let Some(labels) = &self.labels else {
-            return Err(Failure::because(
-                "examples in an .npy file need --labels FILE.csv, one category a line in the same order",
-            ));
-        };
-        let pile = vectors::read(&self.pile)?;
-        let examples = vectors::read(&self.examples)?;
-        if pile.ncols() != examples.ncols() {
-            return Err(Failure::because(format!(
-                "the pile's vectors have {} numbers and the examples' {}; use vectors of one encoder",
-                pile.ncols(),
-                examples.ncols()
-            )));
-        }
-        let negative = pile.iter().chain(&examples).any(|&x| x < 0.0);
-        let space = Space::new(pile.ncols(), !negative && !self.signed).map_err(Failure::because)?;
-        let examples = labelled::vectors(&examples, &self.examples, labels)?;
-        Ok(Material {
-            encoder: "vectors".into(),
-            space,
-            pile: labelled::items(&pile, &self.pile),
-            examples,
-            troubles: 0,
-        })
-    }
-
-    fn write(&self, material: &Material, trays: &BTreeMap<String, usize>, items: Vec<Sorted>) -> Result<(), Failure> {
+    fn write(
+        &self,
+        pile: &Pile,
+        trays: &BTreeMap<String, usize>,
+        items: &[Sorted],
+        troubles: usize,
+    ) -> Result<(), Failure> {
         let mut counts: BTreeMap<&str, usize> = trays.keys().map(|name| (name.as_str(), 0)).collect();
-        for item in &items {
+        for item in items {
             *counts.entry(item.tray).or_default() += 1;
         }
         let put = |to: &mut dyn std::io::Write| -> Result<(), String> {
             if self.json {
                 let report = Report {
-                    encoder: &material.encoder,
+                    encoder: &pile.encoder,
                     learner: self.learner,
                     seed: self.seed,
                     trays: counts.clone(),
-                    unreadable: material.troubles,
-                    items: items
-                        .iter()
-                        .map(|i| Sorted { item: i.item, tray: i.tray, probability: i.probability })
-                        .collect(),
+                    unreadable: troubles,
+                    items,
                 };
                 serde_json::to_writer_pretty(&mut *to, &report).map_err(|error| error.to_string())?;
                 return writeln!(to).map_err(|error| error.to_string());
+            }
+            if let Some(table) = &pile.table {
+                return output::table(to, table_rows(table, items));
             }
             let header = ["item", "tray", "probability"].map(str::to_owned).to_vec();
             let row = |i: &Sorted| vec![output::cell(i.item), output::cell(i.tray), format!("{:.4}", i.probability)];
@@ -234,28 +180,43 @@ pub fn read_starter(path: &Path) -> Result<Starter, Failure> {
     Starter::read(&file).map_err(|error| named(error.to_string()))
 }
 
-/// Says which photos of the pile are the same file; they are sorted all the same.
-fn repeated_in_pile(pile: &[photos::Photo]) {
-    let mut first: HashMap<&str, &str> = HashMap::new();
-    for photo in pile {
-        match first.get(photo.fingerprint.as_str()) {
-            Some(earlier) => console::say(&format!("{}: the same file as {earlier}", photo.name)),
-            None => {
-                first.insert(&photo.fingerprint, &photo.name);
-            }
-        }
-    }
+/// A row's cells by column.
+fn columns_of(table: &Table, row: usize) -> BTreeMap<&str, &str> {
+    table.columns.iter().zip(&table.rows[row].cells).map(|(name, cell)| (name.as_str(), cell.as_str())).collect()
 }
 
-/// Adds the pile; gives the number and name of each item that could be added.
-fn add_pile(sorter: &mut Sorter, material: &mut Material) -> Vec<(usize, String)> {
-    let mut added = Vec::with_capacity(material.pile.len());
-    for item in &material.pile {
+/// Every row of the table as it came, with its tray and probability; both are empty where the note could not be read.
+fn table_rows<'a>(table: &'a Table, items: &'a [Sorted]) -> impl Iterator<Item = Vec<String>> + 'a {
+    let free = |name: &str| {
+        let mut name = name.to_owned();
+        while table.columns.contains(&name) {
+            name.push('\'');
+        }
+        name
+    };
+    let header = table.columns.iter().cloned().chain(["tray", "probability"].map(free)).collect();
+    let by_row: HashMap<usize, &Sorted> = items.iter().filter_map(|item| Some((item.row?, item))).collect();
+    // What was a table is handed back cell by cell as it came; a line becomes a cell only here.
+    let kept = |cell: &String| if table.format == Format::Lines { output::cell(cell) } else { cell.clone() };
+    let rows = (0..table.rows.len()).map(move |row| {
+        let (tray, probability) = match by_row.get(&row) {
+            Some(sorted) => (output::cell(sorted.tray), format!("{:.4}", sorted.probability)),
+            None => (String::new(), String::new()),
+        };
+        table.rows[row].cells.iter().map(kept).chain([tray, probability]).collect()
+    });
+    std::iter::once(header).chain(rows)
+}
+
+/// Adds the pile; gives the number in the sorter and the position in the pile of each item that could be added.
+fn add_pile(sorter: &mut Sorter, pile: &Pile, troubles: &mut usize) -> Vec<(usize, usize)> {
+    let mut added = Vec::with_capacity(pile.items.len());
+    for (index, item) in pile.items.iter().enumerate() {
         match sorter.add_item(&item.embedding) {
-            Ok(number) => added.push((number, item.name.clone())),
+            Ok(number) => added.push((number, index)),
             Err(error) => {
                 console::say(&format!("item {} of the pile: {error}", item.name));
-                material.troubles += 1;
+                *troubles += 1;
             }
         }
     }
@@ -263,14 +224,18 @@ fn add_pile(sorter: &mut Sorter, material: &mut Material) -> Vec<(usize, String)
 }
 
 /// Adds the examples to the trays of their categories; gives each tray's number.
-fn add_examples(sorter: &mut Sorter, material: &mut Material) -> Result<BTreeMap<String, usize>, Failure> {
+fn add_examples(
+    sorter: &mut Sorter,
+    labelled: &Labelled,
+    troubles: &mut usize,
+) -> Result<BTreeMap<String, usize>, Failure> {
     let mut trays = BTreeMap::new();
-    for Example { item, category } in &material.examples {
+    for Example { item, category } in &labelled.examples {
         let number = match sorter.add_item(&item.embedding) {
             Ok(number) => number,
             Err(error) => {
                 console::say(&format!("example {}: {error}", item.name));
-                material.troubles += 1;
+                *troubles += 1;
                 continue;
             }
         };

@@ -2,12 +2,13 @@
 
 use std::{
     fs::{self, File},
-    path::Path,
+    path::{Path, PathBuf},
 };
 
 use kenspeckle::space::DIMENSIONS;
 use ndarray::{Array2, Ix2, OwnedRepr};
 use ndarray_npy::{ReadNpyExt, ReadableElement, WriteNpyExt};
+use serde::{Deserialize, Serialize};
 
 use crate::console::Failure;
 
@@ -123,4 +124,35 @@ pub fn names_beside(path: &Path, items: usize) -> Option<Vec<String>> {
     let mut rows = csv::Reader::from_path(path.with_extension("names.csv")).ok()?;
     let names: Vec<String> = rows.records().map(|row| row.ok()?.get(0).map(str::to_owned)).collect::<Option<_>>()?;
     (names.len() == items).then_some(names)
+}
+
+/// What is kept beside an `.npy` file about where its vectors come from.
+#[derive(Serialize, Deserialize)]
+#[serde(rename_all = "camelCase")]
+pub struct Origin {
+    /// The identity of the encoder.
+    pub encoder: String,
+    /// Numbers in a vector.
+    pub numbers: usize,
+    /// Whether none of them is ever below zero.
+    pub non_negative: bool,
+}
+
+/// Where an origin is kept: `FILE.encoder.json` for `FILE.npy`.
+pub fn origin_path(path: &Path) -> PathBuf {
+    path.with_extension("encoder.json")
+}
+
+/// What `kenspeckle embed` wrote beside an `.npy` file about the encoder, if it is there.
+pub fn origin_beside(path: &Path) -> Result<Option<Origin>, Failure> {
+    let path = origin_path(path);
+    let trouble = |reason: String| {
+        Failure::because(format!("{}: {reason}; embed the items again, or delete this file", path.display()))
+    };
+    let bytes = match fs::read(&path) {
+        Ok(bytes) => bytes,
+        Err(error) if error.kind() == std::io::ErrorKind::NotFound => return Ok(None),
+        Err(error) => return Err(trouble(format!("it can't be read ({error})"))),
+    };
+    serde_json::from_slice(&bytes).map(Some).map_err(|error| trouble(format!("it does not name an encoder ({error})")))
 }
