@@ -77,11 +77,18 @@ export default defineConfig({
       },
       workbox: {
         globPatterns: ['**/*.{html,js,css,wasm,onnx,svg}'],
+        // The text encoder is kept once the first note has fetched it; who sorts photos never does.
+        globIgnores: ['**/text-*.onnx'],
         maximumFileSizeToCacheInBytes: 16 * 1024 * 1024,
         cleanupOutdatedCaches: true,
         clientsClaim: true,
         // The first opening of the demo keeps it for the next one without a network.
         runtimeCaching: [
+          {
+            urlPattern: ({ url, sameOrigin }) => sameOrigin && /\/text-[^/]*\.onnx$/.test(url.pathname),
+            handler: 'CacheFirst',
+            options: { cacheName: 'text-encoder', expiration: { maxEntries: 1 } },
+          },
           {
             urlPattern: ({ url, sameOrigin }) => sameOrigin && url.pathname.includes('/demo/pile/'),
             handler: 'StaleWhileRevalidate',

@@ -1,17 +1,21 @@
 import init from './wasm/kenspeckle.js';
 import { KenspeckleError, messageOf } from './error';
 
-export { PhotoEncoder, Sorter } from './wasm/kenspeckle.js';
+export { NoteEncoder, PhotoEncoder, Sorter, readNoteTable } from './wasm/kenspeckle.js';
+export type { NoteTable } from './wasm/kenspeckle.js';
 
-/** Where the two heavy files are. Both can be served from anywhere on the page's own origin. */
+/** Where the heavy files are. All can be served from anywhere on the page's own origin. */
 export interface Assets {
   wasm: URL;
   photoEncoder: URL;
+  /** Fetched only when the first note arrives. */
+  textEncoder: URL;
 }
 
 export const bundledAssets: Assets = {
   wasm: new URL('./wasm/kenspeckle_bg.wasm', import.meta.url),
   photoEncoder: new URL('../encoders/photo.onnx', import.meta.url),
+  textEncoder: new URL('../encoders/text.onnx', import.meta.url),
 };
 
 async function get(url: URL): Promise<Response> {
