@@ -108,6 +108,12 @@ try {
   const job = JSON.parse(readFileSync(join(data, "job.json")));
   const result = { browser: browser.version() };
   result.photos = await page.evaluate((options) => window.measure.photos(options), job.photos);
+  // A page of its own, so that the memory is that of notes alone.
+  const other = await browser.newPage();
+  await other.goto(origin);
+  await other.waitForFunction("window.ready", undefined, { timeout: 20_000 });
+  result.notes = await other.evaluate((options) => window.measure.notes(options), job.notes);
+  await other.close();
   result.answers = await page.evaluate((options) => window.measure.answers(options), job.answers);
   server.close();
   const dist = join(root, "www/app/dist");

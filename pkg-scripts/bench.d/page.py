@@ -2,6 +2,7 @@
 
 import json
 import subprocess
+import sys
 from collections import Counter
 
 import numpy as np
@@ -16,6 +17,7 @@ PACKAGES = {"playwright-core": "1.65.1", "onnxruntime-web": "1.30.0"}
 PILE, TRAYS, ANSWERS_PER_TRAY = 400, 10, 10
 ROUNDS, WARM_UP = 60, 8
 FOLDER = sets.DATA / "bench" / "page"
+NOTE_TOKENS = 32
 # A phone's camera gives about 12 million pixels.
 PHONE = (4032, 3024)
 MOST_MILLISECONDS_TO_SORT = 50
@@ -32,6 +34,25 @@ def pile():
     return sets.read_vectors("stamps")[rows], labels
 
 
+def notes():
+    """Real notes of exactly so many tokens, start and end included, with their rows in the encoder's token table."""
+    sys.path.insert(0, str(sets.ROOT / "pkg-scripts" / "reference"))
+    import make_encoder
+    import minilm
+    from tokenizers import Tokenizer
+
+    if fetch.fetch(["quotations"]):
+        raise sets.Unmeasured("the set quotations can't be had")
+    tokenizer_file = make_encoder.text_parts()["tokenizer.json"]
+    tokenizer = Tokenizer.from_str(tokenizer_file.decode())
+    tokenizer.no_padding()
+    tokenizer.no_truncation()
+    kept = {row: place for place, row in enumerate(row for row, token in enumerate(minilm.read_vocabulary(tokenizer_file)) if not token.startswith(minilm.UNUSED))}
+    texts = [text for _, _, text in sets.read_texts("quotations")]
+    found = [{"text": text, "tokens": [kept[row] for row in rows]} for text in texts if len(rows := tokenizer.encode(text).ids) == NOTE_TOKENS]
+    return found[:20]
+
+
 def prepare(say):
     """Writes what the page's measurements read into FOLDER."""
     embed.vectors_of("stamps", say)
@@ -39,7 +60,10 @@ def prepare(say):
     FOLDER.mkdir(parents=True, exist_ok=True)
     network = FOLDER / "photo-f32.onnx"
     if not network.exists():
-        subprocess.run([sets.ROOT / "pkg-scripts" / "make-encoder", "--float", network], check=True)
+        subprocess.run([sets.ROOT / "pkg-scripts" / "make-encoder", "photo", "--float", network], check=True)
+    network = FOLDER / "text-f32.onnx"
+    if not network.exists():
+        subprocess.run([sets.ROOT / "pkg-scripts" / "make-encoder", "text", "--float", network], check=True)
     vectors, labels = pile()
     vectors.astype("<f4").tofile(FOLDER / "pile.f32")
     # Photos that scikit-image carries; each wide enough to fill the encoder's square.
@@ -54,6 +78,7 @@ def prepare(say):
             "rounds": ROUNDS,
             "warmUp": WARM_UP,
         },
+        "notes": {"notes": notes(), "rounds": ROUNDS, "warmUp": WARM_UP},
         "answers": {"labels": labels, "trays": TRAYS, "answersPerTray": ANSWERS_PER_TRAY},
     }
     (FOLDER / "job.json").write_text(json.dumps(job))
@@ -92,6 +117,10 @@ def run(say):
         "cosine_to_float32": {"mean": float(np.mean(photos["cosines"])), "least": float(np.min(photos["cosines"]))},
         "network": beside(photos["network"]),
         "files": {name: beside(times) for name, times in photos["files"].items()},
+        "note": beside(raw["notes"]),
+        "note_load": {"kenspeckle": raw["notes"]["loadKenspeckle"], "onnxruntime-web": raw["notes"]["loadOrt"]},
+        "note_memory": raw["notes"]["memory"],
+        "note_cosine_to_float32": {"mean": float(np.mean(raw["notes"]["cosines"])), "least": float(np.min(raw["notes"]["cosines"]))},
         "answer_to_sorted": summarise(answers["sort"]),
         "answer_to_sorted_last_turn": summarise(answers["sort"][-TRAYS:]),
         "next_question": summarise(answers["question"]),
@@ -119,6 +148,14 @@ def table(numbers):
     text += f"| loading module and network, once | {load['kenspeckle']:.0f} | {load['onnxruntime-web']:.0f} | {load['kenspeckle'] / load['onnxruntime-web']:.2f} |\n"
     text += "\nFor files, Kenspeckle decodes, turns, crops, shrinks and makes the thumbnail itself; for onnxruntime-web the browser's own decoder and a canvas do it, without a thumbnail.\n"
     text += f"Cosine between the two embeddings: mean {numbers['cosine_to_float32']['mean']:.4f}, least {numbers['cosine_to_float32']['least']:.4f}.\n"
+    low, high = numbers["note"]["ratio_interval"]
+    ours, theirs = numbers["note"]["kenspeckle"]["median"], numbers["note"]["onnxruntime-web"]["median"]
+    text += f"\n## Time per note of {NOTE_TOKENS} tokens, turn by turn\n\n| | Kenspeckle | onnxruntime-web | ratio (95 % interval) |\n| --- | --- | --- | --- |\n"
+    text += f"| reading a note | {ours:.1f} | {theirs:.1f} | {numbers['note']['ratio']:.2f} ({low:.2f}–{high:.2f}) |\n"
+    load = numbers["note_load"]
+    text += f"| loading module and network, once | {load['kenspeckle']:.0f} | {load['onnxruntime-web']:.0f} | {load['kenspeckle'] / load['onnxruntime-web']:.2f} |\n"
+    text += f"\nKenspeckle makes the tokens too; to onnxruntime-web they are given. Memory of Kenspeckle's module: {numbers['note_memory'] / 1e6:.0f} MB.\n"
+    text += f"Cosine between the two embeddings: mean {numbers['note_cosine_to_float32']['mean']:.4f}, least {numbers['note_cosine_to_float32']['least']:.4f}.\n"
     visit = numbers["first_visit"]
     if not visit:
         return text + "\nThe page is not built, so the bytes of a first visit were not counted.\n"

@@ -1,5 +1,5 @@
 // Runs in the browser: times the built wasm module, beside onnxruntime-web in the same run. One thread for both.
-import init, { PhotoEncoder, Sorter } from "/kit/wasm/kenspeckle.js";
+import init, { NoteEncoder, PhotoEncoder, Sorter } from "/kit/wasm/kenspeckle.js";
 import * as ort from "/ort/ort.wasm.min.mjs";
 
 const SIDE = 224;
@@ -94,6 +94,39 @@ export async function photos({ pictures, files, rounds, warmUp }) {
     }
     result.files[name] = times;
   }
+  encoder.free();
+  return result;
+}
+
+/** Times both engines on the same notes, turn by turn; for onnxruntime-web the tokens are given. Times in milliseconds. */
+export async function notes({ notes, rounds, warmUp }) {
+  const start = performance.now();
+  const { memory } = await init({ module_or_path: "/kit/wasm/kenspeckle_bg.wasm" });
+  const encoder = new NoteEncoder(await bytesOf("/encoders/text.onnx"));
+  const loadKenspeckle = performance.now() - start;
+  ort.env.wasm.numThreads = 1;
+  ort.env.wasm.wasmPaths = "/ort/";
+  const ortStart = performance.now();
+  const session = await ort.InferenceSession.create(await bytesOf("/data/text-f32.onnx"), { executionProviders: ["wasm"] });
+  const loadOrt = performance.now() - ortStart;
+  const result = { loadKenspeckle, loadOrt, identity: encoder.identity, cosines: [], kenspeckle: [], ort: [] };
+  for (let round = -warmUp; round < rounds; round += 1) {
+    const { text, tokens } = notes[(round + warmUp) % notes.length];
+    const [ours, note] = timed(() => encoder.read(text));
+    const ortBegan = performance.now();
+    const column = (values) => new ort.Tensor("int32", Int32Array.from(values), [values.length]);
+    const { features } = await session.run({ tokens: column(tokens), positions: column(tokens.map((_, place) => place)) });
+    const mean = new Float32Array(encoder.dimension);
+    features.data.forEach((feature, place) => (mean[place % mean.length] += feature));
+    const ortTook = performance.now() - ortBegan;
+    if (round >= 0) {
+      result.kenspeckle.push(ours);
+      result.ort.push(ortTook);
+      result.cosines.push(cosine(note.embedding(), mean));
+    }
+    note.free();
+  }
+  result.memory = memory.buffer.byteLength;
   encoder.free();
   return result;
 }
