@@ -62,7 +62,7 @@ fn the_demo_pile_is_sorted_and_keeps_its_columns() {
     let (_, answers) = demo();
     let known: Vec<_> = rows.iter().filter(|row| !answers[&row[0]].is_empty()).collect();
     let right = known.iter().filter(|row| row[3] == answers[&row[0]]).count();
-    // Guessing would give one in seven.
+    // Guessing would give one in seven; 0.89 (106 of 119) when this was written.
     assert!(right * 10 >= known.len() * 7, "{right} of {} right", known.len());
 
     let output = kenspeckle(folder.path(), &[&SORT[..], &["--json"]].concat());

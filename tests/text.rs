@@ -63,8 +63,11 @@ fn long_notes_are_read_in_parts() {
     let pieces = encoder().read(&"kenspeckle ".repeat(200)).unwrap();
     let each = encoder().tokens("kenspeckle").unwrap().len();
     assert!(each > 1 && pieces.parts >= 200 * each / 254, "{} tokens in {} parts", pieces.tokens, pieces.parts);
-    let repeated = encoder().read(&sentence.repeat(60)).unwrap();
-    assert!(repeated.parts == 2 && cosine(&repeated.embedding, &whole.embedding) > 0.8);
+    // Two parts with the same text have the mean of either.
+    let twice = encoder().read(&sentence.repeat(60)).unwrap();
+    let once = encoder().read(&sentence.repeat(30)).unwrap();
+    assert_eq!((twice.parts, once.parts), (2, 1));
+    assert!(cosine(&twice.embedding, &once.embedding) > 0.999_999);
 }
 
 #[test]

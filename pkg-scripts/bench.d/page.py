@@ -11,6 +11,7 @@ from skimage import data as sample_pictures
 
 import clients
 import embed
+import fetch
 import sets
 
 PACKAGES = {"playwright-core": "1.65.1", "onnxruntime-web": "1.30.0"}

@@ -55,10 +55,10 @@ pub fn decode(bytes: &[u8]) -> Result<(String, Encoding), TableError> {
         // Of Latin letters the higher byte is zero.
         let zeros = |from: usize| bytes.iter().skip(from).step_by(2).filter(|&&byte| byte == 0).count();
         let (first, second, half) = (zeros(0), zeros(1), bytes.len() / 2);
-        if bytes.len() % 2 == 0 && second > half / 2 && first < half / 10 {
+        if bytes.len().is_multiple_of(2) && second > half / 2 && first < half / 10 {
             return utf16(bytes, u16::from_le_bytes);
         }
-        if bytes.len() % 2 == 0 && first > half / 2 && second < half / 10 {
+        if bytes.len().is_multiple_of(2) && first > half / 2 && second < half / 10 {
             return utf16(bytes, u16::from_be_bytes);
         }
         let at = bytes.iter().position(|&byte| byte == 0).unwrap_or(0);
