@@ -1,10 +1,11 @@
 //! How well each learner sorts a file of episodes.
 //!
 //! `cargo bench --features cli --bench episodes -- VECTORS.npy EPISODES.jsonl [--non-negative] [--starter=FILE]` prints one
-//! JSON object: under `one by one` the learner alone, which sees each query by itself, and under `in the pile` the [`Sorter`], whose pile is the
-//! episode's examples and queries, and under `in the pile, with a starter` the same with the starter of that file; in each, for every learner its accuracy (0…1) and log loss (nats) in every episode, and the
-//! median time in milliseconds to learn one episode and sort its queries. `pkg-scripts/bench` draws the episodes and makes the
-//! table.
+//! JSON object: under `one by one` the learner alone, which sees each query by itself, and under `in the pile` the [`Sorter`],
+//! whose pile is the episode's examples and queries. With the starter of that file there are also `one by one, with a starter`,
+//! where every item is whitened and seen from the middle of the past piles, and `in the pile, with a starter`. In each, every
+//! learner has its accuracy (0…1) and log loss (nats) in every episode, and the median time in milliseconds to learn one episode
+//! and sort its queries. `pkg-scripts/bench` draws the episodes and makes the table.
 
 use std::{
     collections::BTreeMap,
@@ -52,11 +53,7 @@ fn main() -> Outcome<()> {
     };
     let vectors: Array2<f32> = ndarray_npy::read_npy(vectors)?;
     let space = Space::new(vectors.ncols(), flags.iter().any(|flag| flag == "--non-negative"))?;
-    let mut places = vectors.clone();
-    for mut row in places.rows_mut() {
-        let place = space.place(&row.to_vec())?;
-        row.iter_mut().zip(place).for_each(|(value, new)| *value = new);
-    }
+    let places = each_row(&vectors, |row| Ok(space.place(row)?))?;
 
     let mut lines = BufReader::new(File::open(episodes)?).lines();
     let header: Header = serde_json::from_str(&lines.next().ok_or("the file of episodes is empty")??)?;
@@ -66,23 +63,49 @@ fn main() -> Outcome<()> {
         Some(file) => Some(Arc::new(Starter::read(&std::fs::read(file)?)?)),
         None => None,
     };
+    let started_places = starter.as_deref().map(|starter| from_the_past(starter, &places)).transpose()?;
     let mut results: BTreeMap<&str, BTreeMap<&str, Measured>> = BTreeMap::new();
     for kind in LearnerKind::ALL {
-        let alone = measure(&episodes, |episode| one_by_one(kind, &places, episode, header.way))?;
+        let mut keep = |mode, measured| results.entry(mode).or_default().insert(kind.name(), measured);
         let settings = Settings { encoder: "benchmark".into(), space, learner: kind, seed: 1 };
         let plain = Sorter::new(settings.clone());
-        let together = measure(&episodes, |episode| in_the_pile(plain.clone(), &vectors, episode, header.way))?;
-        if let Some(starter) = &starter {
+        keep(
+            "one by one",
+            measure(&episodes, |episode| one_by_one(kind, &Prior::default(), &places, episode, header.way))?,
+        );
+        keep("in the pile", measure(&episodes, |episode| in_the_pile(plain.clone(), &vectors, episode, header.way))?);
+        if let (Some(starter), Some(places)) = (&starter, &started_places) {
             let settings = Settings { encoder: starter.encoder().into(), ..settings };
+            let prior = starter.prior();
             let started = Sorter::with_starter(settings, starter.clone())?;
-            let helped = measure(&episodes, |episode| in_the_pile(started.clone(), &vectors, episode, header.way))?;
-            results.entry("in the pile, with a starter").or_default().insert(kind.name(), helped);
+            let alone = measure(&episodes, |episode| one_by_one(kind, &prior, places, episode, header.way))?;
+            let together = measure(&episodes, |episode| in_the_pile(started.clone(), &vectors, episode, header.way))?;
+            keep("one by one, with a starter", alone);
+            keep("in the pile, with a starter", together);
         }
-        results.entry("one by one").or_default().insert(kind.name(), alone);
-        results.entry("in the pile").or_default().insert(kind.name(), together);
     }
     println!("{}", serde_json::to_string(&results)?);
     Ok(())
+}
+
+/// The array with `change` made of each row.
+fn each_row(rows: &Array2<f32>, change: impl Fn(&[f32]) -> Outcome<Vec<f32>>) -> Outcome<Array2<f32>> {
+    let changed = rows.outer_iter().map(|row| change(&row.to_vec())).collect::<Outcome<Vec<_>>>()?;
+    Ok(Array2::from_shape_vec(rows.raw_dim(), changed.concat())?)
+}
+
+/// Places as a starter alone shows them, with no other item of the pile known: whitened, seen from the whitened mean of the
+/// past piles, at unit length.
+fn from_the_past(starter: &Starter, places: &Array2<f32>) -> Outcome<Array2<f32>> {
+    let mut middle = starter.mean().to_vec();
+    starter.whitening().apply(&mut middle);
+    each_row(places, |place| {
+        let mut seen = place.to_vec();
+        starter.whitening().apply(&mut seen);
+        seen.iter_mut().zip(&middle).for_each(|(x, &m)| *x -= m);
+        let length = seen.iter().map(|&x| f64::from(x).powi(2)).sum::<f64>().sqrt();
+        Ok(seen.iter().map(|&x| (f64::from(x) / length.max(1e-12)) as f32).collect())
+    })
 }
 
 /// Scores what `sort` says of each episode: the probability of each category (way) for each query, and the milliseconds taken.
@@ -107,12 +130,18 @@ fn measure(episodes: &[Episode], sort: impl Fn(&Episode) -> Outcome<(Vec<Vec<f64
     Ok(measured)
 }
 
-fn one_by_one(kind: LearnerKind, places: &Array2<f32>, episode: &Episode, way: usize) -> Outcome<(Vec<Vec<f64>>, f64)> {
+fn one_by_one(
+    kind: LearnerKind,
+    prior: &Prior,
+    places: &Array2<f32>,
+    episode: &Episode,
+    way: usize,
+) -> Outcome<(Vec<Vec<f64>>, f64)> {
     let examples = places.select(Axis(0), &episode.support);
     let queries = places.select(Axis(0), &episode.query);
     let start = Instant::now();
     let support = Support::new(examples, episode.support_labels.clone(), way)?;
-    let probabilities = kind.learn(&support, &Prior::default()).head.probabilities(queries.view());
+    let probabilities = kind.learn(&support, prior).head.probabilities(queries.view());
     let milliseconds = start.elapsed().as_secs_f64() * 1e3;
     Ok((probabilities.outer_iter().map(|row| row.to_vec()).collect(), milliseconds))
 }

@@ -1,37 +1,57 @@
 """How well each learner sorts, beside scikit-learn on the same episodes."""
 
 import csv
+import hashlib
 import json
 import subprocess
 import time
+from collections import Counter
 
 import numpy as np
 
+import accuracy_table
 import embed
 import episodes
 import references
 import sets
 
-CONDITIONS = [("icons-test", 1), ("icons-test", 5), ("stamps", 1), ("stamps", 5)]
-TITLES = {"icons-test": "drawn icons", "stamps": "stamps"}
-WAY = 5
-LEARNERS = ["prototype", "ridge", "gradient", "auto"]
-STARTED = "in the pile, with a starter"
-MODES = ["one by one", "in the pile", STARTED]
+SETS = ["icons-test", "stamps", "summaries", "quotations", "mail", "digits", "wine", "iris", "breast-cancer"]
+SHOTS = [1, 2, 5, 10]
+# A set with fewer categories takes part with all it has.
+WAYS = [5, 20]
+# Conditions of so many categories take long and get fewer episodes.
+MANY, EPISODES_OF_MANY = 20, 100
+LEARNERS = accuracy_table.LEARNERS
+MEMBERS = LEARNERS[:-1]
+ALONE, PILE = accuracy_table.ALONE, accuracy_table.PILE
+STARTED = {mode: f"{mode}, with a starter" for mode in (ALONE, PILE)}
 # What the starter learns from: names that no benchmark sorts.
 PAST = "icons-learn"
-# What Auto is compared with: (how Auto sorts, the spaces that scikit-learn is given).
-COMPARISONS = {
-    "both one by one": ("one by one", references.ONE_BY_ONE),
-    "both in the pile": ("in the pile", references.SPACES),
-    "Auto in the pile, scikit-learn one by one": ("in the pile", references.ONE_BY_ONE),
-}
 
 
 def interval(values):
     """Mean and half the width of its 95 % interval over episodes."""
     values = np.asarray(values)
     return float(values.mean()), float(1.96 * values.std(ddof=1) / len(values) ** 0.5)
+
+
+def paired(one, other, key, factor=1):
+    """Mean and half interval of the difference; a method may have had only the first episodes."""
+    count = min(len(one[key]), len(other[key]))
+    return interval(factor * (np.array(one[key][:count]) - np.array(other[key][:count])))
+
+
+def conditions(names, ways, shots):
+    """(set, way, shot) of every condition that the sets have items for; conditions of few categories first."""
+    found = []
+    for way in sorted(set(ways)):
+        for name in names:
+            sizes = Counter(sets.read_categories(name)).values()
+            for shot in shots:
+                condition = (name, min(way, len(sizes)), shot)
+                if sum(size > shot for size in sizes) >= condition[1] and condition not in found:
+                    found.append(condition)
+    return found
 
 
 def starter(say):
@@ -49,97 +69,102 @@ def starter(say):
     return file, time.perf_counter() - start
 
 
-def measure(name, shot, count, seed, file, say):
-    path, header, _ = episodes.write(name, WAY, shot, count, seed)
-    say(f"{name} {WAY}-way {shot}-shot: {count} episodes")
-    flags = ["--non-negative"] if sets.ALL[name].non_negative else []
-    flags.append(f"--starter={file}")
+def ours(program, name, path, file):
+    """What benches/episodes.rs says of a file of episodes; kept in data/bench/ours while neither it nor the data change."""
     vectors = sets.VECTORS / f"{name}.npy"
-    ours = json.loads(embed.cargo(["bench", "--features", "cli", "--bench", "episodes", "--", str(vectors), str(path), *flags]))
-    theirs = references.run(path, list(references.SPACES), say=say)
-    summary = {**header, "kenspeckle": {}, "scikit-learn": {}, "auto_minus": {}, "best": {}}
-    for space, methods in theirs.items():
-        summary["scikit-learn"][space] = {method: summarise(measured) for method, measured in methods.items()}
-    for mode in MODES:
-        summary["kenspeckle"][mode] = {name: summarise(measured) | {"milliseconds": measured["milliseconds"]} for name, measured in ours[mode].items()}
-        auto = np.array(ours[mode]["auto"]["accuracy"])
-        others = {f"Kenspeckle {name}": measured for name, measured in ours[mode].items() if name != "auto"}
-        others |= {f"{method}; {space}": measured for space, methods in theirs.items() for method, measured in methods.items()}
-        # A method may have had only the first episodes.
-        summary["auto_minus"][mode] = {name: interval(100 * (auto[: len(one["accuracy"])] - one["accuracy"])) for name, one in others.items()}
-    summary["starter_minus_none"] = {
-        name: interval(100 * (np.array(ours[STARTED][name]["accuracy"]) - ours["in the pile"][name]["accuracy"])) for name in LEARNERS
+    flags = ["--non-negative"] if sets.ALL[name].non_negative else []
+    flags += [f"--starter={file}"] if file else []
+    key = hashlib.sha256(" ".join(flags).encode())
+    for part in [program, vectors, path, *([file] if file else [])]:
+        key.update(hashlib.sha256(part.read_bytes()).digest())
+    kept = sets.DATA / "bench" / "ours" / f"{key.hexdigest()[:24]}.json"
+    if not kept.exists():
+        done = subprocess.run([program, vectors, path, *flags], capture_output=True, text=True, check=False)
+        if done.returncode:
+            raise sets.Unmeasured(f"benches/episodes.rs failed on {name}: {done.stderr.strip()}")
+        kept.parent.mkdir(parents=True, exist_ok=True)
+        kept.write_text(done.stdout)
+    return json.loads(kept.read_text())
+
+
+def measure(program, name, way, shot, count, seed, file, say):
+    """One condition: both sides on the same episodes, and what Auto is compared with."""
+    path, header, _ = episodes.write(name, way, shot, count, seed)
+    start = time.monotonic()
+    mine = ours(program, name, path, file)
+    say(f"{name} {way}-way {shot}-shot: {count} episodes: Kenspeckle: {time.monotonic() - start:.0f} s")
+    theirs = references.run(path, say=say)
+    auto = {mode: learners["auto"] for mode, learners in mine.items()}
+    rivals = {
+        ALONE: {f"{method}; {space}": measured for space in references.one_by_one(name) for method, measured in theirs[space].items()},
+        PILE: {f"{method}; pile-centred": measured for method, measured in theirs[references.pile_centred(name)].items()},
     }
-    for comparison, (mode, spaces) in COMPARISONS.items():
-        rivals = [f"{method}; {space}" for space in spaces for method in theirs[space]]
-        # Chosen in hindsight, which favours scikit-learn.
-        summary["best"][comparison] = min(rivals, key=lambda name: summary["auto_minus"][mode][name][0])
+    everyone = rivals[ALONE] | rivals[PILE]
+
+    def best(mode, among):
+        """The rival that Auto gains least on: chosen in hindsight, which favours scikit-learn."""
+        return min(among, key=lambda rival: paired(auto[mode], among[rival], "accuracy")[0])
+
+    def least_loss(among):
+        logistic = {rival: m for rival, m in among.items() if rival.split("; ")[0] in references.LOGISTIC}
+        return min(logistic, key=lambda rival: np.mean(logistic[rival]["log_loss"]))
+
+    chosen = {"one by one": best(ALONE, rivals[ALONE]), "pile-centred": best(PILE, rivals[PILE]), "any": best(PILE, everyone)}
+    logistic = {"one by one": least_loss(rivals[ALONE]), "any": least_loss(everyone)}
+    points = lambda mode, rival: paired(auto[mode], everyone[rival], "accuracy", 100)
+    losses = lambda mode, rival: paired(auto[mode], everyone[rival], "log_loss")
+    summary = {
+        **header,
+        "kenspeckle": {mode: {n: summarise(m) for n, m in learners.items()} for mode, learners in mine.items()},
+        "scikit-learn": {space: {method: summarise(m) for method, m in methods.items()} for space, methods in theirs.items()},
+        "best": {which: {"name": rival, **summarise(everyone[rival])} for which, rival in chosen.items()},
+        "logistic": {which: {"name": rival, **summarise(everyone[rival])} for which, rival in logistic.items()},
+        "auto_minus": {
+            f"{PILE}, best one by one": points(PILE, chosen["one by one"]),
+            f"{PILE}, best of any": points(PILE, chosen["any"]),
+            f"{ALONE}, best one by one": points(ALONE, chosen["one by one"]),
+        },
+        "log_loss_minus": {
+            f"{PILE}, logistic regression one by one": losses(PILE, logistic["one by one"]),
+            f"{PILE}, logistic regression of any": losses(PILE, logistic["any"]),
+            f"{ALONE}, logistic regression one by one": losses(ALONE, logistic["one by one"]),
+        },
+        "auto_minus_member": {
+            mode: {member: paired(auto[mode], learners[member], "accuracy", 100) for member in MEMBERS} for mode, learners in mine.items()
+        },
+        "starter_minus_none": {
+            mode: {learner: paired(mine[started][learner], mine[mode][learner], "accuracy", 100) for learner in LEARNERS}
+            for mode, started in STARTED.items()
+            if started in mine
+        },
+    }
     return summary
 
 
 def summarise(measured):
     accuracy, half = interval(100 * np.array(measured["accuracy"]))
-    result = {"accuracy": accuracy, "accuracy_half_interval": half}
+    result = {"episodes": len(measured["accuracy"]), "accuracy": accuracy, "accuracy_half_interval": half}
     if measured["log_loss"]:
         result["log_loss"], result["log_loss_half_interval"] = interval(measured["log_loss"])
+    if "milliseconds" in measured:
+        result["milliseconds"] = measured["milliseconds"]
     return result
 
 
-def row(cells):
-    return "| " + " | ".join(cells) + " |\n"
-
-
-def table(summaries):
-    """The numbers as Markdown."""
-    columns = [f"{TITLES[s['set']]}, {s['shot']}-shot" for s in summaries]
-    head = row(["", *columns]) + row(["---"] * (len(columns) + 1))
-
-    def rows(cell):
-        """A row for each of our learners in each mode and each reference in each space, where any cell has a number."""
-        text = head
-        for mode in MODES:
-            for name in LEARNERS:
-                text += row([f"**Kenspeckle {name}**, {mode}", *(cell(s["kenspeckle"][mode][name]) for s in summaries)])
-        for space in references.SPACES:
-            for name in references.METHODS:
-                cells = [cell(s["scikit-learn"][space].get(name)) for s in summaries]
-                if any(c != "–" for c in cells):
-                    text += row([f"{name}; {space}", *cells])
-        return text
-
-    text = f"## Accuracy, {WAY}-way, {summaries[0]['episodes']} episodes\n\n"
-    text += "Percent right, ± half the 95 % interval of the mean over episodes. Both sides sort the same episodes "
-    text += f"(shrunk LDA, which takes long, the first {references.FIRST_EPISODES['shrunk LDA']}).\n"
-    text += "One by one: no item knows of the others. In the pile: the sorter as it is used; its pile is the episode's items,\n"
-    text += "as many of each category. With a starter: the same, after `kenspeckle learn` on drawn icons of other names. Pile-centred: scikit-learn given items seen from the mean of that pile.\n\n"
-    text += rows(lambda n: f"{n['accuracy']:.1f} ± {n['accuracy_half_interval']:.1f}" if n else "–")
-    text += "\n## Auto minus the others, on the same episodes\n\n"
-    text += "Points, ± half the 95 % interval of the paired difference. The best of scikit-learn is chosen for each column in hindsight.\n\n" + head
-    # Adding 0.0 turns a rounded −0.0 into 0.0.
-    difference = lambda pair: f"{round(pair[0], 1) + 0.0:+.1f} ± {pair[1]:.1f}".replace("-", "−")
-    for mode in MODES:
-        for name in LEARNERS[:-1]:
-            text += row([f"Kenspeckle {name}, {mode}", *(difference(s["auto_minus"][mode][f"Kenspeckle {name}"]) for s in summaries)])
-    for comparison, (mode, _) in COMPARISONS.items():
-        best = [(s["auto_minus"][mode][s["best"][comparison]], s["best"][comparison]) for s in summaries]
-        text += row([f"**best of scikit-learn**, {comparison}", *(f"**{difference(pair)}** ({name})" for pair, name in best)])
-    text += "\n## What a starter from other drawn icons adds, in the pile\n\n"
-    text += "Points, ± half the 95 % interval of the paired difference.\n\n" + head
-    for name in LEARNERS:
-        text += row([f"Kenspeckle {name}", *(difference(s["starter_minus_none"][name]) for s in summaries)])
-    text += "\n## Log loss of the probabilities (nats, lower is better)\n\n"
-    text += rows(lambda n: f"{n['log_loss']:.3f} ± {n['log_loss_half_interval']:.3f}" if n and "log_loss" in n else "–")
-    text += "\n## Time to learn one episode and sort its queries (median, ms)\n\n"
-    return text + rows(lambda n: f"{n['milliseconds']:.2f}" if n and "milliseconds" in n else "–")
-
-
-def run(count, seed, say):
-    """Measures every condition: (numbers, Markdown)."""
-    for name in dict.fromkeys(name for name, _ in CONDITIONS):
+def run(names, ways, shots, count, seed, say):
+    """Measures the conditions: (numbers, Markdown)."""
+    for name in names:
         embed.vectors_of(name, say)
-    file, seconds = starter(say)
-    summaries = [measure(name, shot, count, seed, file, say) for name, shot in CONDITIONS]
-    versions = f"scikit-learn {references.sklearn.__version__}, numpy {np.__version__}"
-    learned = {"set": PAST, "bytes": file.stat().st_size, "seconds": seconds}
-    text = table(summaries) + f"\nThe starter has {learned['bytes']:,} bytes and took {seconds:.1f} s to learn from the vectors of {PAST}.\n"
-    return {"libraries": versions, "starter": learned, "conditions": summaries}, text + f"\nReference: {versions}.\n"
+    photos = [name for name in names if sets.ALL[name].kind == "pictures"]
+    file, seconds = starter(say) if photos else (None, None)
+    program = embed.bench_program("episodes")
+    summaries = []
+    for name, way, shot in conditions(names, ways, shots):
+        asked = min(count, EPISODES_OF_MANY) if way >= MANY else count
+        summaries.append(measure(program, name, way, shot, asked, seed, file if name in photos else None, say))
+    if not summaries:
+        raise sets.Unmeasured("no set has items enough for these ways and shots")
+    numbers = {"libraries": f"scikit-learn {references.sklearn.__version__}, numpy {np.__version__}", "conditions": summaries}
+    if file:
+        numbers["starter"] = {"set": PAST, "bytes": file.stat().st_size, "seconds": seconds}
+    return numbers, accuracy_table.table(numbers)

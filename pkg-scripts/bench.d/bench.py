@@ -1,4 +1,4 @@
-"""Runs the benchmarks and writes their tables to benches/results."""
+"""Runs the benchmarks. A whole run replaces their tables in benches/results; a part of one goes to data/bench/results."""
 
 import argparse
 import json
@@ -7,10 +7,13 @@ import sys
 from datetime import date
 
 import accuracy
+import adaptation
 import page
 import sets
 
 RESULTS = sets.ROOT / "benches" / "results"
+PARTIAL = sets.DATA / "bench" / "results"
+EPISODES, SEED = 300, 1
 
 
 def say(text):
@@ -18,9 +21,25 @@ def say(text):
 
 
 BENCHMARKS = {
-    "accuracy": lambda arguments: accuracy.run(arguments.episodes, arguments.seed, say),
-    "page": lambda arguments: page.run(say),
+    "accuracy": lambda asked: accuracy.run(asked.sets, asked.ways, asked.shots, asked.episodes, asked.seed, say),
+    "adaptation": lambda asked: adaptation.run(say),
+    "page": lambda asked: page.run(say),
 }
+
+
+def listed(kind, allowed=None):
+    """A comma-separated list as argparse reads it."""
+
+    def read(text):
+        values = [kind(part) for part in text.split(",")]
+        for value in values:
+            if allowed and value not in allowed:
+                raise argparse.ArgumentTypeError(f"`{value}` is not one of {', '.join(allowed)}")
+            if kind is int and value < 1:
+                raise argparse.ArgumentTypeError("whole numbers from 1 on are needed")
+        return values
+
+    return read
 
 
 def machine():
@@ -37,14 +56,19 @@ def machine():
 def main():
     parser = argparse.ArgumentParser(prog="pkg-scripts/bench", description=__doc__)
     parser.add_argument("what", nargs="*", metavar="WHAT", help=f"what to measure: {', '.join(BENCHMARKS)}; all of them when left out")
-    parser.add_argument("--episodes", type=int, default=300, help="episodes a set and shot, at least 100 to mean anything (default 300)")
-    parser.add_argument("--seed", type=int, default=1)
+    parser.add_argument("--sets", type=listed(str, accuracy.SETS), default=accuracy.SETS, help="accuracy: only these sets, as in icons-test,stamps")
+    parser.add_argument("--ways", type=listed(int), default=accuracy.WAYS, help="accuracy: so many categories a task (default 5,20); a set with fewer takes all it has")
+    parser.add_argument("--shots", type=listed(int), default=accuracy.SHOTS, help="accuracy: so many examples a category (default 1,2,5,10)")
+    parser.add_argument("--episodes", type=int, default=EPISODES, help=f"accuracy: episodes a condition (default {EPISODES}; {accuracy.MANY} categories at once get at most {accuracy.EPISODES_OF_MANY})")
+    parser.add_argument("--seed", type=int, default=SEED)
     arguments = parser.parse_args()
     unknown = [what for what in arguments.what if what not in BENCHMARKS]
     if unknown:
         parser.error(f"there is no benchmark `{unknown[0]}`: choose from {', '.join(BENCHMARKS)}")
     if arguments.episodes < 2:
         parser.error("an interval needs at least 2 episodes, and 100 to mean anything")
+    asked = [arguments.sets, arguments.ways, arguments.shots, arguments.seed]
+    whole = asked == [accuracy.SETS, accuracy.WAYS, accuracy.SHOTS, SEED] and arguments.episodes >= EPISODES
     failed = False
     for what in arguments.what or BENCHMARKS:
         try:
@@ -55,9 +79,10 @@ def main():
             continue
         numbers = {"measured": date.today().isoformat(), "machine": machine(), **numbers}
         heading = f"<!-- made by pkg-scripts/bench {what} -->\n\nMeasured on {numbers['machine']}, {numbers['measured']}.\n\n"
-        RESULTS.mkdir(parents=True, exist_ok=True)
-        (RESULTS / f"{what}.json").write_text(json.dumps(numbers, indent=1) + "\n")
-        (RESULTS / f"{what}.md").write_text(heading + table)
+        folder = RESULTS if whole or what != "accuracy" else PARTIAL
+        folder.mkdir(parents=True, exist_ok=True)
+        (folder / f"{what}.json").write_text(json.dumps(numbers, indent=1) + "\n")
+        (folder / f"{what}.md").write_text(heading + table)
         print(table)
     sys.exit(failed)
 

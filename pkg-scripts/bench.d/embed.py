@@ -7,8 +7,10 @@ the published encoder (embed_text.py).
 import argparse
 import csv
 import hashlib
+import json
 import subprocess
 import sys
+from pathlib import Path
 
 import numpy as np
 
@@ -30,6 +32,13 @@ def cargo(arguments):
     if done.returncode:
         raise sets.Unmeasured(f"`cargo {' '.join(arguments)}` failed:\n{done.stderr.strip()}")
     return done.stdout
+
+
+def bench_program(name):
+    """Builds one of benches/ and returns its executable."""
+    built = cargo(["bench", "--features", "cli", "--bench", name, "--no-run", "--message-format=json"])
+    made = [message.get("executable") for message in map(json.loads, built.splitlines()) if message.get("target", {}).get("name") == name]
+    return Path(made[-1])
 
 
 def encoder_identity():
