@@ -139,6 +139,21 @@ pub enum Error {
     /// A tray can't be merged into itself.
     #[error("a tray can't be merged into itself; choose another one")]
     MergeIntoItself,
+    /// No sorting can keep such terms.
+    #[error("these terms can't be kept: {0}")]
+    Terms(String),
+    /// A spot check can't be planned so.
+    #[error("this spot check can't be planned: {0}")]
+    SpotCheckPlan(String),
+    /// No item was sorted.
+    #[error("there is no sorted item to look at; a spot check needs a pile that has been sorted")]
+    NothingToCheck,
+    /// The item is not part of the sample.
+    #[error("item {0} is not part of the sample; judge the items that were drawn")]
+    NotInSample(usize),
+    /// Part of the sample has not been looked at.
+    #[error("{0} items of the sample have not been judged; a statement needs all of them")]
+    SpotCheckUnfinished(usize),
     /// A saved state can't be read.
     #[error("the saved state can't be read ({0}); start a new pile, or restore it from a copy")]
     StateUnreadable(String),
@@ -180,6 +195,11 @@ impl Error {
             Error::NoSuchTray(_) => "no-such-tray",
             Error::NoSuchItem(_) => "no-such-item",
             Error::MergeIntoItself => "merge-into-itself",
+            Error::Terms(_) => "terms",
+            Error::SpotCheckPlan(_) => "spot-check-plan",
+            Error::NothingToCheck => "nothing-to-check",
+            Error::NotInSample(_) => "not-in-sample",
+            Error::SpotCheckUnfinished(_) => "spot-check-unfinished",
             Error::StateUnreadable(_) => "state-unreadable",
             Error::StateNewer { .. } => "state-newer",
         }

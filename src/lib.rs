@@ -15,6 +15,7 @@
 //! | [`starter`] | what past piles taught, as one file |
 //! | [`whitening`] | how past categories scattered, taken out of the space |
 //! | [`pile`] | the items and their centre |
+//! | [`trust`] | how far the result can be relied on |
 //! | [`ask`] | which item's answer helps most |
 //! | [`ledger`] | trays and answers, with undo and redo |
 //! | [`sorter`] | the façade |
@@ -39,6 +40,7 @@ pub mod space;
 pub mod starter;
 pub mod support;
 pub mod table;
+pub mod trust;
 pub mod whitening;
 
 #[cfg(target_family = "wasm")]

@@ -1,6 +1,6 @@
 //! The support set: the examples a person gave, checked once at the door.
 
-use std::cell::OnceCell;
+use std::sync::OnceLock;
 
 use ndarray::{Array2, ArrayView2};
 
@@ -15,7 +15,7 @@ pub struct Support {
     embeddings: Array2<f32>,
     labels: Vec<usize>,
     counts: Vec<usize>,
-    gram: OnceCell<Array2<f64>>,
+    gram: OnceLock<Array2<f64>>,
 }
 
 impl Support {
@@ -43,7 +43,7 @@ impl Support {
             return Err(Error::NoExample(empty));
         }
         let embeddings = embeddings.as_standard_layout().into_owned();
-        Ok(Self { embeddings, labels, counts, gram: OnceCell::new() })
+        Ok(Self { embeddings, labels, counts, gram: OnceLock::new() })
     }
 
     /// How many examples (n).
