@@ -136,6 +136,20 @@ impl Ledger {
         })
     }
 
+    /// Items whose answer names another tray than an earlier answer did, with the earlier tray; trays that are gone don't count.
+    pub(crate) fn changed_answers(&self) -> Vec<(usize, usize)> {
+        let mut earlier = std::collections::BTreeMap::new();
+        for change in self.done.iter().filter(|entry| entry.action == Action::Answer).flat_map(|entry| &entry.changes) {
+            if let Change::Answered { item, from: Answer::Tray(tray), .. } = change {
+                earlier.insert(*item, *tray);
+            }
+        }
+        let differs = |&(item, tray): &(usize, usize)| {
+            matches!(self.answers[item], Answer::Tray(now) if now != tray) && self.trays[tray].live
+        };
+        earlier.into_iter().filter(|&(item, _)| !self.removed[item]).filter(differs).collect()
+    }
+
     fn live(&self, tray: usize) -> Result<usize> {
         if self.trays.get(tray).is_some_and(|t| t.live) { Ok(tray) } else { Err(Error::NoSuchTray(tray)) }
     }

@@ -1,5 +1,7 @@
 //! The façade: from embeddings and answers to verdicts and the next question.
 
+mod trusting;
+
 use std::sync::Arc;
 
 use ndarray::Array2;
@@ -10,14 +12,16 @@ use crate::{
     ask::{Asker, Situation},
     error::{Error, Result},
     head::Head,
-    learner::LearnerKind,
+    learner::{Learned, LearnerKind},
     ledger::{Action, Answer, Ledger},
     pile::Pile,
     prior::Prior,
     space::{CENTRE_CAUTION, Centre, Space},
     starter::Starter,
     support::Support,
+    trust::{Reason, Terms, neighbours::Neighbours},
 };
+use trusting::Trusting;
 
 /// The newest version of the saved state.
 const STATE_VERSION: u32 = 1;
@@ -45,6 +49,10 @@ pub struct Verdict {
     pub probability: f64,
     /// The second choice with its probability.
     pub runner_up: Option<(usize, f64)>,
+    /// Why the item is set aside rather than left in that tray, if it is.
+    pub set_aside: Option<Reason>,
+    /// How much the item is like what it is most like, −1 to 1; 0 while nothing can be said.
+    pub likeness: f64,
     /// What the person said.
     pub answer: Answer,
 }
@@ -63,6 +71,8 @@ impl Verdict {
 struct State {
     version: u32,
     settings: Settings,
+    #[serde(default)]
+    terms: Terms,
     /// The identity of the starter.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     starter: Option<String>,
@@ -77,6 +87,8 @@ struct Learnt {
     /// The logits of every item, n × C; no head while there are fewer than two trays with an answer.
     probabilities: Option<Array2<f64>>,
     verdicts: Vec<Option<Verdict>>,
+    /// How far that can be relied on; `None` with the probabilities.
+    trusting: Option<Trusting>,
 }
 
 /// Sorts a pile by the answers given so far.
@@ -108,6 +120,10 @@ pub struct Sorter {
     pile: Pile,
     ledger: Ledger,
     asker: Asker,
+    terms: Terms,
+    neighbours: Neighbours,
+    /// Who is near whom among the items that are in the pile now.
+    nearest: Option<Vec<Vec<(usize, f64)>>>,
     learnt: Option<Learnt>,
 }
 
@@ -119,6 +135,9 @@ impl Sorter {
             pile: Pile::new(settings.space),
             ledger: Ledger::default(),
             asker: Asker::new(settings.seed),
+            terms: Terms::default(),
+            neighbours: Neighbours::default(),
+            nearest: None,
             learnt: None,
             settings,
         }
@@ -155,6 +174,7 @@ impl Sorter {
         let item = self.pile.add(embedding)?;
         let same = self.ledger.add_item();
         debug_assert_eq!(item, same);
+        self.nearest = None;
         self.learnt = None;
         Ok(item)
     }
@@ -244,6 +264,7 @@ impl Sorter {
 
     fn follow_ledger(&mut self) {
         self.pile.set_removed(|item| self.ledger.is_removed(item));
+        self.nearest = None;
         self.learnt = None;
     }
 
@@ -294,24 +315,38 @@ impl Sorter {
         self.learnt.as_ref().expect("just learnt")
     }
 
-    fn learn(&self) -> Learnt {
+    fn learn(&mut self) -> Learnt {
         let mut trays: Vec<usize> = self.ledger.answered().map(|(_, tray)| tray).collect();
         trays.sort_unstable();
         trays.dedup();
         let centre = self.pile.centre();
-        let probabilities = self.head(&trays, &centre).map(|head| self.probabilities(&head, &centre));
+        let (probabilities, trusting) = match self.support(&trays, &centre) {
+            Some(support) => {
+                let learned = self.learned(&support);
+                let probabilities = self.probabilities(&learned.head, &centre);
+                let trusting = self.trusting(&trays, &centre, support, &learned, &probabilities);
+                (Some(probabilities), Some(trusting))
+            }
+            None => (None, None),
+        };
         let verdicts = (0..self.pile.len())
             .map(|item| {
                 let ranked =
                     probabilities.as_ref().map(|all| best_two(all.row(item).as_slice().expect("standard layout")));
-                self.pile.contains(item).then(|| self.judge(item, &trays, ranked))
+                self.pile.contains(item).then(|| {
+                    let verdict = self.judge(item, &trays, ranked);
+                    match (&trusting, &probabilities) {
+                        (Some(trusting), Some(all)) => trusting.complete(item, verdict, all.row(item), &self.terms),
+                        _ => verdict,
+                    }
+                })
             })
             .collect();
-        Learnt { trays, probabilities, verdicts }
+        Learnt { trays, probabilities, verdicts, trusting }
     }
 
-    /// The head for the trays that have an answer, if there are at least two.
-    fn head(&self, trays: &[usize], centre: &Centre) -> Option<Head> {
+    /// The answered items by category, in order, for the trays that have an answer, if there are at least two.
+    fn support(&self, trays: &[usize], centre: &Centre) -> Option<Support> {
         let d = self.settings.space.dimension();
         let mut numbers = Vec::new();
         let mut labels = Vec::new();
@@ -321,10 +356,13 @@ impl Sorter {
         }
         let rows = Array2::from_shape_vec((labels.len(), d), numbers).ok()?;
         // Fewer than two trays is the one refusal that can happen here, and then there is nothing to tell apart.
-        let support = Support::new(rows, labels, trays.len()).ok()?;
+        Support::new(rows, labels, trays.len()).ok()
+    }
+
+    fn learned(&self, support: &Support) -> Learned {
         let others = self.pile.items().count().saturating_sub(support.len()) as f64;
         let prior = Prior { centre_known: others / (others + CENTRE_CAUTION), ..self.prior.clone() };
-        Some(self.settings.learner.learn(&support, &prior).head)
+        self.settings.learner.learn(support, &prior)
     }
 
     /// Probabilities of all items, seen from the centre without moving any: W (u − μ)/‖u − μ‖ + b.
@@ -346,7 +384,7 @@ impl Sorter {
 
     fn judge(&self, item: usize, trays: &[usize], ranked: Option<((usize, f64), (usize, f64))>) -> Verdict {
         let answer = self.ledger.answer(item);
-        let nothing = Verdict { tray: None, probability: 0.0, runner_up: None, answer };
+        let nothing = Verdict { tray: None, probability: 0.0, runner_up: None, set_aside: None, likeness: 0.0, answer };
         match (answer, ranked) {
             (Answer::Tray(tray), _) => Verdict { tray: Some(tray), probability: 1.0, ..nothing },
             (Answer::None, _) | (_, None) => nothing,
@@ -354,7 +392,7 @@ impl Sorter {
                 tray: Some(trays[first.0]),
                 probability: first.1,
                 runner_up: Some((trays[second.0], second.1)),
-                answer,
+                ..nothing
             },
         }
     }
@@ -364,6 +402,7 @@ impl Sorter {
         let state = State {
             version: STATE_VERSION,
             settings: self.settings.clone(),
+            terms: self.terms,
             starter: self.starter().map(|starter| starter.identity()),
             ledger: self.ledger.clone(),
         };
@@ -383,7 +422,7 @@ impl Sorter {
         if version > STATE_VERSION {
             return Err(Error::StateNewer { found: version, known: STATE_VERSION });
         }
-        let State { settings, ledger, starter: needed, .. } = serde_json::from_str(state).map_err(unreadable)?;
+        let State { settings, terms, ledger, starter: needed, .. } = serde_json::from_str(state).map_err(unreadable)?;
         if needed != starter.as_ref().map(|starter| starter.identity()) {
             let reason = match needed {
                 Some(identity) => format!("it needs the starter {identity}"),
@@ -411,6 +450,7 @@ impl Sorter {
             sorter.pile.add(embedding)?;
         }
         sorter.ledger = ledger;
+        sorter.terms = Terms::new(terms.confidence(), terms.set_aside_share(), terms.only_sure())?;
         while sorter.ledger.items() < sorter.pile.len() {
             sorter.ledger.add_item();
         }

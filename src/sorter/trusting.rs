@@ -1,0 +1,181 @@
+//! The façade's part about trust: what is plausible, what is set aside, how well the answers sort each other, spot checks.
+
+use ndarray::{Array2, ArrayView1};
+
+use super::{Learnt, Sorter, Verdict};
+use crate::{
+    arithmetic::{dot, row, softmax},
+    error::Result,
+    learner::Learned,
+    ledger::Answer,
+    space::Centre,
+    support::Support,
+    trust::{
+        Reason, Terms,
+        assessment::Assessment,
+        doubt::{self, Doubt},
+        evidence::Evidence,
+        learning_curve::LearningCurve,
+        novelty::{Novelty, Scene},
+        prediction_set::PredictionSets,
+        spot_check::{Plan, Sorted, SpotCheck},
+    },
+};
+
+/// How far what was learned can be relied on.
+#[derive(Debug, Clone)]
+pub(super) struct Trusting {
+    support: Support,
+    /// The item of each example.
+    items: Vec<usize>,
+    evidence: Evidence,
+    sets: PredictionSets,
+    novelty: Novelty,
+    threshold: Option<f64>,
+}
+
+impl Trusting {
+    /// The verdict with what is to be said of its reliability; an item that the person spoke of is not set aside.
+    pub(super) fn complete(
+        &self,
+        item: usize,
+        verdict: Verdict,
+        probabilities: ArrayView1<f64>,
+        terms: &Terms,
+    ) -> Verdict {
+        if !matches!(verdict.answer, Answer::Open | Answer::Skipped) {
+            return verdict;
+        }
+        let likeness = self.novelty.likeness(item);
+        let set_aside = if self.threshold.is_some_and(|threshold| likeness < threshold) {
+            let lonely = self.evidence.counts()[self.novelty.nearest(item)] == 1;
+            Some(if lonely { Reason::TooLittle } else { Reason::Unlike })
+        } else if terms.only_sure() {
+            match self.sets.plausible(probabilities).len() {
+                0 => Some(Reason::Unlike),
+                1 => None,
+                many if many == probabilities.len() && many > 2 => Some(Reason::TooLittle),
+                _ => Some(Reason::Between),
+            }
+        } else {
+            None
+        };
+        Verdict { set_aside, likeness, ..verdict }
+    }
+}
+
+impl Sorter {
+    /// What the person asks of the sorter's care.
+    pub fn terms(&self) -> &Terms {
+        &self.terms
+    }
+
+    /// Asks for another confidence or another share to set aside.
+    pub fn set_terms(&mut self, terms: Terms) {
+        self.terms = terms;
+        self.learnt = None;
+    }
+
+    /// The trays that can't be ruled out for an item at the confidence of the terms, most probable first; only the answer's
+    /// for an answered item. Empty where even the first choice is less probable than usual, and while fewer than two
+    /// trays have an answer. What holds is said at [`crate::trust::prediction_set`].
+    pub fn plausible(&mut self, item: usize) -> Result<Vec<usize>> {
+        let item = self.pile.check(item)?;
+        if let Answer::Tray(tray) = self.ledger.answer(item) {
+            return Ok(vec![tray]);
+        }
+        let Learnt { trays, probabilities, trusting, .. } = self.learnt();
+        Ok(match (probabilities, trusting) {
+            (Some(probabilities), Some(trusting)) => {
+                let set = trusting.sets.plausible(probabilities.row(item));
+                set.into_iter().map(|category| trays[category]).collect()
+            }
+            _ => Vec::new(),
+        })
+    }
+
+    /// How well the answers sort each other; `None` while fewer than two trays have an answer.
+    pub fn assessment(&mut self) -> Option<Assessment> {
+        let seed = self.settings.seed;
+        let Learnt { trays, trusting, .. } = self.learnt();
+        let trusting = trusting.as_ref()?;
+        let mut assessment = Assessment::new(&trusting.evidence, trays, &trusting.items, None);
+        assessment.curve = LearningCurve::new(&trusting.support, &assessment.share, seed);
+        Some(assessment)
+    }
+
+    /// Answers that may be wrong, the gravest first.
+    pub fn doubts(&mut self) -> Vec<Doubt> {
+        let earlier = self.ledger.changed_answers();
+        let Learnt { trays, trusting, .. } = self.learnt();
+        trusting.as_ref().map_or_else(Vec::new, |trusting| {
+            doubt::doubts(&trusting.evidence, &trusting.support, trays, &trusting.items, &earlier)
+        })
+    }
+
+    /// The items that the sorter itself put into a tray, with the tray: neither answered nor set aside.
+    pub fn sorted(&mut self) -> Vec<Sorted> {
+        let sorted = |(item, verdict): (usize, &Option<Verdict>)| {
+            let verdict = verdict.as_ref()?;
+            let open = matches!(verdict.answer, Answer::Open | Answer::Skipped) && verdict.set_aside.is_none();
+            Some(Sorted { item, tray: verdict.tray.filter(|_| open)? })
+        };
+        self.verdicts().iter().enumerate().filter_map(sorted).collect()
+    }
+
+    /// How many items a spot check of the sorting as it is now would look at.
+    pub fn spot_check_size(&mut self, plan: &Plan) -> Result<usize> {
+        Ok(self.spot_check(*plan, 0)?.left())
+    }
+
+    /// Draws a spot check from the sorting as it is now. It holds that sorting still: what it shows is about it and its
+    /// corrections, not about what later answers change.
+    pub fn spot_check(&mut self, plan: Plan, seed: u64) -> Result<SpotCheck> {
+        SpotCheck::draw(plan, self.sorted(), seed)
+    }
+
+    pub(super) fn trusting(
+        &mut self,
+        trays: &[usize],
+        centre: &Centre,
+        support: Support,
+        learned: &Learned,
+        probabilities: &Array2<f64>,
+    ) -> Trusting {
+        let items: Vec<usize> = self.ledger.answered().map(|(item, _)| item).collect();
+        let mut evidence = Evidence::new(support.labels(), trays.len());
+        for (example, logits) in learned.left_out.iter() {
+            evidence.set(example, softmax(logits).view());
+        }
+        let nearest = self.nearest.get_or_insert_with(|| self.neighbours.nearest(&self.pile));
+        let (pile, ledger) = (&self.pile, &self.ledger);
+        let open = |&item: &usize| matches!(ledger.answer(item), Answer::Open | Answer::Skipped);
+        let rows = pile.items().filter(open).map(|item| probabilities.row(item));
+        let sets = PredictionSets::new(&evidence, rows, self.terms.confidence());
+
+        let means = support.means().mapv(|x| x as f32);
+        let means_view = means.view();
+        let offsets: Vec<f32> = (0..trays.len()).map(|c| dot(row(&means_view, c), centre.mean())).collect();
+        let mut with_means = Array2::zeros((pile.len(), trays.len()));
+        for item in pile.items() {
+            let (place, (_, factor)) = (pile.place(item), pile.seen_from(centre, item));
+            for c in 0..trays.len() {
+                with_means[[item, c]] = f64::from((dot(row(&means_view, c), place) - offsets[c]) * factor);
+            }
+        }
+        let cosine = |a: usize, b: usize| {
+            let seen = |item| pile.seen_from(centre, item);
+            f64::from(centre.cosine(pile.product(a, b), seen(a), seen(b)))
+        };
+        let novelty = Novelty::new(&Scene {
+            support: &support,
+            examples: &items,
+            items: pile.len(),
+            with_means,
+            cosine: &cosine,
+            neighbours: &|item| nearest[item].clone(),
+        });
+        let threshold = novelty.threshold(self.terms.set_aside_share());
+        Trusting { support, items, evidence, sets, novelty, threshold }
+    }
+}
