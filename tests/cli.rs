@@ -18,7 +18,7 @@ use tempfile::TempDir;
 /// A table as item → (tray, probability).
 fn table(text: &str) -> BTreeMap<String, (String, f64)> {
     let mut rows = csv::Reader::from_reader(text.as_bytes());
-    assert_eq!(rows.headers().unwrap(), vec!["item", "tray", "probability"]);
+    assert_eq!(rows.headers().unwrap(), vec!["item", "tray", "probability", "plausible", "set aside"]);
     rows.records()
         .map(|row| row.unwrap())
         .map(|row| (row[0].to_owned(), (row[1].to_owned(), row[2].parse().unwrap())))
@@ -50,7 +50,7 @@ fn sort_photos(folder: &TempDir, more: &[&str]) -> Output {
 #[test]
 fn a_folder_is_sorted_by_examples() {
     let folder = photos();
-    let output = sort_photos(&folder, &[]);
+    let output = sort_photos(&folder, &["--set-aside-share", "0"]);
     assert_eq!(output.status.code(), Some(0), "{}", said(&output));
     let table = table(std::str::from_utf8(&output.stdout).unwrap());
     assert_eq!(table.len(), 10);
@@ -60,6 +60,66 @@ fn a_folder_is_sorted_by_examples() {
         assert!((0.5..=1.0).contains(probability));
     }
     assert_eq!(lines_with(&said(&output), &["10 items sorted", "rings 5", "stripes 5"]).len(), 1);
+}
+
+/// Vectors around four directions, five examples of each; the pile has four more of each and four of a fifth direction.
+fn directions(folder: &Path) {
+    let row = |direction: usize, k: usize| -> Vec<f32> {
+        let off = |j: usize| ((direction * 31 + k * 17 + j * 7) % 11) as f32 / 40.0 - 0.125;
+        (0..8).map(|j| f32::from(u8::from(j == direction)) + off(j)).collect()
+    };
+    let array = |rows: Vec<Vec<f32>>| Array2::from_shape_fn((rows.len(), 8), |(i, j)| rows[i][j]);
+    let grid = |directions: usize, from: usize, to: usize| -> Vec<Vec<f32>> {
+        (0..directions).flat_map(|d| (from..to).map(move |k| row(d, k))).collect()
+    };
+    write_npy(folder.join("examples.npy"), &array(grid(4, 0, 5))).unwrap();
+    write_npy(folder.join("pile.npy"), &array(grid(5, 5, 9))).unwrap();
+    let labels: String = (0..20).map(|k| format!("{}\n", ["north", "east", "south", "west"][k / 5])).collect();
+    fs::write(folder.join("labels.csv"), labels).unwrap();
+}
+
+const SORT: [&str; 6] = ["sort", "pile.npy", "--examples", "examples.npy", "--labels", "labels.csv"];
+
+#[test]
+fn what_was_never_shown_is_set_aside() {
+    let folder = TempDir::new().unwrap();
+    directions(folder.path());
+    let output = kenspeckle(folder.path(), &SORT);
+    let text = std::str::from_utf8(&output.stdout).unwrap();
+    let table = table(text);
+    for unknown in 16..20 {
+        assert_eq!(table[&unknown.to_string()].0, "", "{text}");
+        assert!(lines_with(text, &[&format!("{unknown},,"), "unlike anything shown"]).len() == 1, "{text}");
+    }
+    assert!(table.values().filter(|(tray, _)| tray.is_empty()).count() <= 6, "{text}");
+    assert_eq!(lines_with(&said(&output), &["set aside", "says why"]).len(), 1);
+    for (option, value) in [("--confidence", "1.5"), ("--confidence", "0.3"), ("--set-aside-share", "0.9")] {
+        let refused = kenspeckle(folder.path(), &[&SORT[..], &[option, value]].concat());
+        assert_eq!((refused.status.code(), lines_with(&said(&refused), &["terms"]).len()), (Some(1), 1));
+    }
+}
+
+#[test]
+fn examples_are_assessed_and_the_misplaced_one_is_named() {
+    let folder = TempDir::new().unwrap();
+    directions(folder.path());
+    // The second example of the north is filed under south.
+    let labels = fs::read_to_string(folder.path().join("labels.csv")).unwrap();
+    fs::write(folder.path().join("labels.csv"), labels.replacen("north\nnorth", "north\nsouth", 1)).unwrap();
+    let assess = ["assess", "examples.npy", "--labels", "labels.csv"];
+    let output = kenspeckle(folder.path(), &assess);
+    assert_eq!(output.status.code(), Some(0), "{}", said(&output));
+    let text = std::str::from_utf8(&output.stdout).unwrap();
+    assert_eq!(lines_with(text, &["20 examples in 4 categories", "19 of 20 right", "95.0 %"]).len(), 1, "{text}");
+    assert_eq!(lines_with(text, &["south taken for north: 1"]).len(), 1, "{text}");
+    assert_eq!(lines_with(text, &["1: south, rather north"]).len(), 1, "{text}");
+    assert_eq!(lines_with(text, &["To sort 95.0 % right"]).len(), 1, "{text}");
+    let json = kenspeckle(folder.path(), &[&assess[..], &["--json"]].concat());
+    let json: serde_json::Value = serde_json::from_slice(&json.stdout).unwrap();
+    let confusion = serde_json::json!({"tray": "south", "takenFor": "north", "items": ["1"]});
+    assert_eq!(json["confusions"], serde_json::json!([confusion]));
+    assert_eq!((&json["doubts"][0]["item"], &json["doubts"][0]["rather"]), (&"1".into(), &"north".into()));
+    assert_eq!(json["projection"]["target"], 0.95);
 }
 
 #[test]
@@ -81,11 +141,15 @@ fn json_holds_the_same_result() {
     let folder = photos();
     let csv = table(std::str::from_utf8(&sort_photos(&folder, &[]).stdout).unwrap());
     let json: serde_json::Value = serde_json::from_slice(&sort_photos(&folder, &["--json"]).stdout).unwrap();
-    assert_eq!(json["trays"], serde_json::json!({"rings": 5, "stripes": 5}));
+    assert_eq!(json["terms"], serde_json::json!({"confidence": 0.9, "setAsideShare": 0.05, "onlySure": false}));
+    let count = |tray: &str| csv.values().filter(|(own, _)| own == tray).count();
+    assert_eq!(json["trays"], serde_json::json!({"rings": count("rings"), "stripes": count("stripes")}));
+    assert_eq!(json["set_aside"], count(""));
     assert_eq!(json["learner"], "auto");
     for item in json["items"].as_array().unwrap() {
         let (tray, probability) = &csv[item["item"].as_str().unwrap()];
-        assert_eq!(item["tray"], tray.as_str());
+        assert_eq!(item["tray"].as_str().unwrap_or_default(), tray.as_str());
+        assert_eq!(item["tray"].is_null(), item["set_aside"].is_string());
         assert!((item["probability"].as_f64().unwrap() - probability).abs() < 1e-4);
     }
 }

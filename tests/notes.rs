@@ -53,7 +53,7 @@ fn the_demo_pile_is_sorted_and_keeps_its_columns() {
     let output = kenspeckle(folder.path(), &SORT);
     assert!(output.status.success(), "{}", said(&output));
     let (header, rows) = read(&output.stdout);
-    assert_eq!(header, ["number", "note", "page", "tray", "probability"]);
+    assert_eq!(header, ["number", "note", "page", "tray", "probability", "plausible", "set aside"]);
     let (_, given) = read(&fs::read(folder.path().join("log.csv")).unwrap());
     assert_eq!(
         rows.iter().map(|row| &row[..3]).collect::<Vec<_>>(),

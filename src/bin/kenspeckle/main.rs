@@ -3,6 +3,7 @@
 //! One file a command; [`material`] reads what is outside, through [`photos`], [`notes`], [`vectors`] and [`labelled`];
 //! [`output`] writes, [`console`] speaks to the person.
 
+mod assess;
 mod console;
 mod embed;
 mod labelled;
@@ -16,6 +17,7 @@ mod plot;
 mod rehearse;
 mod report;
 mod sort;
+mod spot_check;
 mod vectors;
 
 use std::process::ExitCode;
@@ -47,9 +49,11 @@ struct Arguments {
 #[derive(Subcommand)]
 enum Command {
     Sort(sort::Sort),
+    Assess(assess::Assess),
     Embed(embed::Embed),
     Rehearse(rehearse::Rehearse),
     Learn(learn::Learn),
+    SpotCheck(spot_check::SpotCheckCommand),
 }
 
 fn main() -> ExitCode {
@@ -57,9 +61,11 @@ fn main() -> ExitCode {
     console::watch_for_stop();
     let done = match arguments.command {
         Command::Sort(sort) => sort.run(),
+        Command::Assess(assess) => assess.run(),
         Command::Embed(embed) => embed.run(),
         Command::Rehearse(rehearse) => rehearse.run(),
         Command::Learn(learn) => learn.run(),
+        Command::SpotCheck(check) => check.run(),
     };
     match done {
         Ok(0) => ExitCode::SUCCESS,
