@@ -5,6 +5,7 @@ mod photo;
 mod sorter;
 #[cfg(feature = "text")]
 mod text;
+mod trust;
 
 use wasm_bindgen::prelude::*;
 

@@ -4,7 +4,7 @@ use serde::{Deserialize, Serialize};
 use wasm_bindgen::prelude::*;
 
 use super::js_error;
-use crate::{Error, LearnerKind, Settings, Space, ledger::Answer, sorter};
+use crate::{Error, LearnerKind, Settings, Space, ledger::Answer, sorter, trust::Reason};
 
 fn thrown(error: Error) -> JsValue {
     js_error(error.code(), &error.to_string())
@@ -15,7 +15,7 @@ fn to_js(value: &impl Serialize) -> JsValue {
 }
 
 /// Turns a failure into a thrown `Error`, and tells what was done by its name.
-trait OrThrow<T> {
+pub(super) trait OrThrow<T> {
     fn or_throw(self) -> Result<T, JsValue>;
 }
 
@@ -61,6 +61,10 @@ export interface Verdicts {
   runnerUpProbability: Float32Array;
   /** 0 sorted by the sorter, 1 answered, 2 answered "none of these", 3 "can't tell", 4 removed. */
   status: Uint8Array;
+  /** Why it is set aside rather than left in the tray: 0 it is not, 1 unlike anything shown, 2 between trays, 3 too little to judge by. */
+  setAside: Uint8Array;
+  /** How much it is like what it is most like, −1 to 1; 0 while nothing can be said. */
+  likeness: Float32Array;
 }
 
 export interface RankedTray {
@@ -122,7 +126,7 @@ struct RankedTray {
 
 /// Sorts a pile by the answers given so far. Calls are synchronous: use it in a worker.
 #[wasm_bindgen]
-pub struct Sorter(sorter::Sorter);
+pub struct Sorter(pub(super) sorter::Sorter);
 
 #[wasm_bindgen]
 impl Sorter {
@@ -261,12 +265,21 @@ impl Sorter {
             Answer::Skipped => 3.0,
         };
         let bytes: Vec<u8> = column(&status, 4.0).iter().map(|&x| x as u8).collect();
-        let columns: [(&str, JsValue); 5] = [
+        let reason = |verdict: &sorter::Verdict| match verdict.set_aside {
+            None => 0.0,
+            Some(Reason::Unlike) => 1.0,
+            Some(Reason::Between) => 2.0,
+            Some(Reason::TooLittle) => 3.0,
+        };
+        let reasons: Vec<u8> = column(&reason, 0.0).iter().map(|&x| x as u8).collect();
+        let columns: [(&str, JsValue); 7] = [
             ("tray", whole(column(&|v| tray(v.tray), -2.0)).into()),
             ("probability", real(column(&|v| v.probability, 0.0)).into()),
             ("runnerUp", whole(column(&|v| tray(v.runner_up.map(|(tray, _)| tray)), -1.0)).into()),
             ("runnerUpProbability", real(column(&|v| v.runner_up.map_or(0.0, |(_, p)| p), 0.0)).into()),
             ("status", js_sys::Uint8Array::from(&bytes[..]).into()),
+            ("setAside", js_sys::Uint8Array::from(&reasons[..]).into()),
+            ("likeness", real(column(&|v| v.likeness, 0.0)).into()),
         ];
         let object = js_sys::Object::new();
         for (name, column) in columns {

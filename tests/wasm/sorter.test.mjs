@@ -56,8 +56,9 @@ function wasmSort(task, learner) {
   });
   const verdicts = sorter.verdicts();
   const names = new Map(sorter.trays().map(({ tray, name }) => [tray, name]));
+  const plausible = task.queries.map((_, item) => sorter.plausible(item));
   sorter.free();
-  return { verdicts, names };
+  return { verdicts, names, plausible };
 }
 
 describe("native and wasm", () => {
@@ -65,9 +66,12 @@ describe("native and wasm", () => {
     for (const learner of ["auto", "prototype", "ridge", "gradient"]) {
       test(`${task.name}, ${learner}: the same trays, the same bits`, () => {
         const native = nativeSort(task, learner);
-        const { verdicts, names } = wasmSort(task, learner);
+        const { verdicts, names, plausible } = wasmSort(task, learner);
         native.forEach((item, index) => {
-          assert.equal(names.get(verdicts.tray[index]), item.tray);
+          const reason = [null, "unlike", "between", "too-little"][verdicts.setAside[index]];
+          assert.equal(reason, item.set_aside);
+          if (reason === null) assert.equal(names.get(verdicts.tray[index]), item.tray);
+          assert.deepEqual([...plausible[index]].map((tray) => names.get(tray)), item.plausible);
           assert.equal(verdicts.probability[index], Math.fround(item.probability));
         });
       });
