@@ -10,6 +10,7 @@ import accuracy
 import adaptation
 import page
 import sets
+import trust
 
 RESULTS = sets.ROOT / "benches" / "results"
 PARTIAL = sets.DATA / "bench" / "results"
@@ -23,6 +24,7 @@ def say(text):
 BENCHMARKS = {
     "accuracy": lambda asked: accuracy.run(asked.sets, asked.ways, asked.shots, asked.episodes, asked.seed, say),
     "adaptation": lambda asked: adaptation.run(say),
+    "trust": lambda asked: trust.run(asked.episodes, asked.seed, say),
     "page": lambda asked: page.run(say),
 }
 
