@@ -73,7 +73,7 @@ impl Table {
 
     /// The last column of this name: a table that was sorted may have had one before.
     fn last_column(&self, path: &Path, name: &str) -> Result<usize, Failure> {
-        self.header.iter().rposition(|column| column.trim() == name).ok_or_else(|| {
+        self.header.iter().collect::<Vec<_>>().iter().rposition(|column| column.trim() == name).ok_or_else(|| {
             Failure::because(format!("{}: it has no column “{name}”; name it in the first line", path.display()))
         })
     }
@@ -96,8 +96,10 @@ impl Results {
         let table = Table::read(path)?;
         // A table that had such a column before it was sorted has got another one, with an apostrophe.
         let is_tray = |name: &str| name.trim_end_matches('\'') == "tray";
-        let tray_column = table.header.iter().rposition(is_tray).map_or_else(|| table.last_column(path, "tray"), Ok)?;
-        let found = &table.header.iter().collect::<Vec<_>>()[tray_column..];
+        let header: Vec<&str> = table.header.iter().collect();
+        let tray_column =
+            header.iter().rposition(|name| is_tray(name)).map_or_else(|| table.last_column(path, "tray"), Ok)?;
+        let found = &header[tray_column..];
         let sorted_photos = found.len() == table.header.len() - 1 && &table.header[0] == "item";
         let items: Vec<String> = match sorted_photos {
             true => table.rows.iter().map(|row| row[0].to_owned()).collect(),
