@@ -154,6 +154,14 @@ pub enum Error {
     /// Part of the sample has not been looked at.
     #[error("{0} items of the sample have not been judged; a statement needs all of them")]
     SpotCheckUnfinished(usize),
+    /// The embeddings of all items were needed.
+    #[error("the pile has {items} items, but {found} embeddings came; give the embedding of every item, in order")]
+    EmbeddingCount {
+        /// How many items the pile has, those taken out included.
+        items: usize,
+        /// How many embeddings came.
+        found: usize,
+    },
     /// A saved state can't be read.
     #[error("the saved state can't be read ({0}); start a new pile, or restore it from a copy")]
     StateUnreadable(String),
@@ -200,6 +208,7 @@ impl Error {
             Error::NothingToCheck => "nothing-to-check",
             Error::NotInSample(_) => "not-in-sample",
             Error::SpotCheckUnfinished(_) => "spot-check-unfinished",
+            Error::EmbeddingCount { .. } => "embedding-count",
             Error::StateUnreadable(_) => "state-unreadable",
             Error::StateNewer { .. } => "state-newer",
         }

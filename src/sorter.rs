@@ -397,6 +397,27 @@ impl Sorter {
         }
     }
 
+    /// Starts from another starter, or from none: the items keep their numbers, trays, answers and the log stay, and
+    /// everything is sorted anew. Takes the embeddings of all items in order (items × d), since an item's place depends on
+    /// the starter. Cost as for adding the items. On an error nothing is changed.
+    pub fn change_starter(&mut self, embeddings: &[f32], starter: Option<Arc<Starter>>) -> Result<()> {
+        let d = self.settings.space.dimension();
+        if embeddings.len() != self.pile.len() * d {
+            return Err(Error::EmbeddingCount { items: self.pile.len(), found: embeddings.len() / d });
+        }
+        let mut fresh = match starter {
+            Some(starter) => Self::with_starter(self.settings.clone(), starter)?,
+            None => Self::new(self.settings.clone()),
+        };
+        for embedding in embeddings.chunks_exact(d) {
+            fresh.pile.add(embedding)?;
+        }
+        fresh.ledger = self.ledger.clone();
+        fresh.follow_ledger();
+        *self = fresh;
+        Ok(())
+    }
+
     /// Settings, trays, answers and the log as JSON; embeddings are kept by whoever keeps the items.
     pub fn state(&self) -> String {
         let state = State {

@@ -219,3 +219,32 @@ fn learning_tells_how_far_it_is_and_can_be_stopped() {
     assert!(told.is_sorted() && told.len() > 20 && told.iter().all(|share| (0.0..=1.0).contains(share)), "{told:?}");
     assert_eq!(Starter::learn_watched(&statistics, &mut |share| share < 0.7).unwrap_err().code(), "stopped");
 }
+
+#[test]
+fn a_starter_changes_under_a_pile_and_back() {
+    let starter = Arc::new(Starter::learn(&statistics(9, 4, 1)).unwrap());
+    let mut rng = ChaCha8Rng::seed_from_u64(5);
+    let centres = centres(2, &mut rng);
+    let embeddings: Vec<Vec<f32>> = (0..8).map(|number| item(&centres[number % 2], &mut rng)).collect();
+    let filled = |mut sorter: Sorter| {
+        for embedding in &embeddings {
+            sorter.add_item(embedding).unwrap();
+        }
+        for item in 0..2 {
+            sorter.answer_new(item, &format!("category {item}")).unwrap();
+        }
+        sorter.remove_item(7).unwrap();
+        sorter
+    };
+    let mut with = filled(Sorter::with_starter(settings(), starter.clone()).unwrap());
+    let mut without = filled(Sorter::new(settings()));
+    let mut sorter = with.clone();
+    let all = embeddings.concat();
+    assert_eq!(sorter.change_starter(&all[1..], None).unwrap_err().code(), "embedding-count");
+    sorter.change_starter(&all, None).unwrap();
+    assert_eq!(sorter.verdicts(), without.verdicts());
+    assert_eq!(sorter.state(), without.state());
+    sorter.change_starter(&all, Some(starter)).unwrap();
+    assert_eq!(sorter.verdicts(), with.verdicts());
+    assert_eq!(sorter.state(), with.state());
+}

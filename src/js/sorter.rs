@@ -3,26 +3,11 @@
 use serde::{Deserialize, Serialize};
 use wasm_bindgen::prelude::*;
 
-use super::js_error;
-use crate::{Error, LearnerKind, Settings, Space, ledger::Answer, sorter, trust::Reason};
-
-fn thrown(error: Error) -> JsValue {
-    js_error(error.code(), &error.to_string())
-}
+use super::{OrThrow, js_error, starter::GivenStarter};
+use crate::{LearnerKind, Settings, Space, ledger::Answer, sorter, trust::Reason};
 
 fn to_js(value: &impl Serialize) -> JsValue {
     serde_wasm_bindgen::to_value(value).unwrap_or(JsValue::UNDEFINED)
-}
-
-/// Turns a failure into a thrown `Error`, and tells what was done by its name.
-pub(super) trait OrThrow<T> {
-    fn or_throw(self) -> Result<T, JsValue>;
-}
-
-impl<T> OrThrow<T> for Result<T, Error> {
-    fn or_throw(self) -> Result<T, JsValue> {
-        self.map_err(thrown)
-    }
 }
 
 #[wasm_bindgen(typescript_custom_section)]
@@ -41,6 +26,8 @@ export interface SorterOptions {
   learner?: LearnerName;
   /** Seed of everything that is drawn, a whole number from 0; 1 if left out. */
   seed?: number;
+  /** What past piles taught, to start from. The sorter keeps a share: the caller still frees its own. */
+  starter?: Starter;
 }
 
 export interface Tray {
@@ -81,6 +68,8 @@ extern "C" {
     /// Options from JavaScript.
     #[wasm_bindgen(typescript_type = "SorterOptions")]
     pub type SorterOptions;
+    #[wasm_bindgen(method, getter, catch)]
+    fn starter(this: &SorterOptions) -> Result<Option<GivenStarter>, JsValue>;
     /// Trays for JavaScript.
     #[wasm_bindgen(typescript_type = "Tray[]")]
     pub type Trays;
@@ -132,9 +121,12 @@ pub struct Sorter(pub(super) sorter::Sorter);
 impl Sorter {
     /// A sorter with an empty pile and no trays.
     ///
-    /// Throws "options" when they are incomplete and "dimension-out-of-range".
+    /// Throws "options" when they are incomplete, "dimension-out-of-range", and "other-encoder" or "starter-unreadable"
+    /// for a starter that was made for other embeddings.
     #[wasm_bindgen(constructor)]
     pub fn new(options: SorterOptions) -> Result<Sorter, JsValue> {
+        // What is no object has no starter either, and is refused below.
+        let starter = options.starter().unwrap_or_default().map(|given| given.get()).transpose()?;
         let options: Options = serde_wasm_bindgen::from_value(options.into())
             .map_err(|error| js_error("options", &format!("the sorter's options can't be used: {error}")))?;
         if !(options.seed >= 0.0 && options.seed.fract() == 0.0 && options.seed <= 9_007_199_254_740_991.0) {
@@ -142,7 +134,11 @@ impl Sorter {
         }
         let space = Space::new(options.dimension, options.non_negative).or_throw()?;
         let Options { encoder, learner, seed, .. } = options;
-        Ok(Self(sorter::Sorter::new(Settings { encoder, space, learner, seed: seed as u64 })))
+        let settings = Settings { encoder, space, learner, seed: seed as u64 };
+        match starter {
+            Some(starter) => sorter::Sorter::with_starter(settings, starter).map(Self).or_throw(),
+            None => Ok(Self(sorter::Sorter::new(settings))),
+        }
     }
 
     /// Adds an item by its embedding and gives its number: 0, 1, 2 … in order of arrival, never used again.
@@ -312,11 +308,28 @@ impl Sorter {
         self.0.state()
     }
 
-    /// The sorter that was saved, with the embeddings of all its items in order.
+    /// The identity of the starter, or `undefined`.
+    #[wasm_bindgen(getter)]
+    pub fn starter(&self) -> Option<String> {
+        self.0.starter().map(|starter| starter.identity())
+    }
+
+    /// Starts from another starter, or from none: same items, trays and answers, sorted anew. Takes the embeddings of all
+    /// items in order.
     ///
-    /// Embeddings beyond those that the state knows are items that arrived since. Throws "state-unreadable",
-    /// "state-newer" and what `addItem` throws.
-    pub fn restore(state: &str, embeddings: &[f32]) -> Result<Sorter, JsValue> {
-        sorter::Sorter::restore(state, embeddings, None).map(Self).or_throw()
+    /// Throws "other-encoder", "starter-unreadable", "embedding-count" and what `addItem` throws; nothing is changed then.
+    #[wasm_bindgen(js_name = changeStarter)]
+    pub fn change_starter(&mut self, embeddings: &[f32], starter: Option<GivenStarter>) -> Result<(), JsValue> {
+        let starter = starter.map(|given| given.get()).transpose()?;
+        self.0.change_starter(embeddings, starter).or_throw()
+    }
+
+    /// The sorter that was saved, with the embeddings of all its items in order, and with its starter if it had one.
+    ///
+    /// Embeddings beyond those that the state knows are items that arrived since. Throws "state-unreadable", also when the
+    /// starter is missing or another one, "state-newer", and what `addItem` throws.
+    pub fn restore(state: &str, embeddings: &[f32], starter: Option<GivenStarter>) -> Result<Sorter, JsValue> {
+        let starter = starter.map(|given| given.get()).transpose()?;
+        sorter::Sorter::restore(state, embeddings, starter).map(Self).or_throw()
     }
 }

@@ -7,11 +7,8 @@ import { mkdtempSync, readFileSync, rmSync, writeFileSync } from "node:fs";
 import { tmpdir } from "node:os";
 import { join } from "node:path";
 import { after, before, describe, test } from "node:test";
-import { fileURLToPath } from "node:url";
+import { core, npy, program, root } from "../native.mjs";
 
-const root = fileURLToPath(new URL("../..", import.meta.url));
-const target = process.env.CARGO_TARGET_DIR ?? join(root, "target");
-const program = join(target, "release", "kenspeckle");
 const { tasks } = JSON.parse(readFileSync(join(root, "tests/data/learners.json"), "utf8"));
 
 let Sorter;
@@ -19,21 +16,11 @@ let PhotoEncoder;
 let folder;
 
 before(async () => {
-  const module = await import(new URL("../../www/kit/wasm/kenspeckle.js", import.meta.url));
-  await module.default({ module_or_path: readFileSync(join(root, "www/kit/wasm/kenspeckle_bg.wasm")) });
-  ({ Sorter, PhotoEncoder } = module);
+  ({ Sorter, PhotoEncoder } = await core());
   folder = mkdtempSync(join(tmpdir(), "kenspeckle-"));
 });
 
 after(() => rmSync(folder, { recursive: true, force: true }));
-
-/** Rows of equal length as an NPY file, format 1.0, little-endian float32. */
-function npy(rows) {
-  const dictionary = `{'descr': '<f4', 'fortran_order': False, 'shape': (${rows.length}, ${rows[0].length}), }`;
-  const header = dictionary.padEnd(128 - 10 - 1) + "\n";
-  const start = Buffer.from([0x93, 0x4e, 0x55, 0x4d, 0x50, 0x59, 1, 0, header.length, 0]);
-  return Buffer.concat([start, Buffer.from(header, "latin1"), Buffer.from(Float32Array.from(rows.flat()).buffer)]);
-}
 
 function nativeSort(task, learner) {
   writeFileSync(join(folder, "pile.npy"), npy(task.queries));
