@@ -4,14 +4,16 @@ import { type Assets, bundledAssets, compileCore, fetchBytes } from './core';
 import type { ReadPhoto } from './encode-worker';
 import { type Arrival, Intake, type Progress, type Source } from './intake';
 import { EncodePool } from './pool';
+import type { FinishedPile } from './past';
 import type { Saved } from './saver';
 import { type Action, type Ranked, type Snapshot, type SortApi, Status } from './sort-worker';
 
 export { KenspeckleError, codeOf, messageOf } from './error';
+export { type FinishedPile, NOTHING, type PastPile, PastPiles, type StarterFacts } from './past';
 export type { Duplicate, Progress, Refused, Source } from './intake';
 export type { Saved } from './saver';
 export { Status };
-export type { Action, Ranked, Snapshot, Tray, Verdicts } from './sort-worker';
+export type { Action, PileStarter, Ranked, Snapshot, Tray, Verdicts } from './sort-worker';
 
 /** An item of the pile, by its number. */
 export interface Item {
@@ -142,6 +144,25 @@ export class PileClient extends EventTarget {
     const { snapshot, kind } = await this.#sort.act(action);
     this.#changed(snapshot);
     return kind;
+  }
+
+  /**
+   * Starts the pile from another starter (its key among past piles), from its own once more (`true`) or from nothing (`false`).
+   * Throws "starter-gone", "starter-of-this-pile", "other-encoder" and "starter-unreadable".
+   */
+  async changeStarter(to: string | boolean): Promise<void> {
+    this.#changed(await this.#sort.changeStarter(to));
+  }
+
+  /** The pile as `PastPiles.teach` takes it: the person's answers, not the sorter's guesses. */
+  async finished(): Promise<FinishedPile> {
+    return this.#sort.finished();
+  }
+
+  /** The identities of the encoders this page has: what starters must be for. Loads the encoder. */
+  async encoders(): Promise<string[]> {
+    await this.#pool.warm();
+    return [this.#pool.facts.identity];
   }
 
   /** All trays for an item, most probable first. */

@@ -1,7 +1,7 @@
 import init from './wasm/kenspeckle.js';
 import { KenspeckleError, messageOf } from './error';
 
-export { NoteEncoder, PhotoEncoder, Sorter, readNoteTable } from './wasm/kenspeckle.js';
+export { NoteEncoder, PastPiles, PhotoEncoder, readNoteTable, Sorter, Starter } from './wasm/kenspeckle.js';
 export type { NoteTable } from './wasm/kenspeckle.js';
 
 /** Where the heavy files are. All can be served from anywhere on the page's own origin. */
@@ -30,8 +30,18 @@ async function get(url: URL): Promise<Response> {
   return response;
 }
 
-/** Compiles the module off the main thread; the result can be posted to any number of workers. */
+const compiled = new Map<string, Promise<WebAssembly.Module>>();
+
+/** Compiles the module off the main thread, once; the result can be posted to any number of workers. */
 export async function compileCore(url: URL): Promise<WebAssembly.Module> {
+  const module = compiled.get(url.href) ?? compile(url);
+  compiled.set(url.href, module);
+  // The next one who asks tries again.
+  module.catch(() => compiled.delete(url.href));
+  return module;
+}
+
+async function compile(url: URL): Promise<WebAssembly.Module> {
   const response = await get(url);
   // Static servers that don't know .wasm would make the streaming compiler refuse it.
   if (response.headers.get('content-type')?.startsWith('application/wasm')) return WebAssembly.compileStreaming(response);

@@ -1,5 +1,5 @@
 import { messageOf } from './error';
-import type { Addition, Store, StoredState } from './store';
+import type { Addition, Store, NewState } from './store';
 
 export type Saved =
   | { ok: true }
@@ -19,7 +19,7 @@ export class Saver {
   readonly #store: Store;
   readonly #report: (saved: Saved) => void;
   #additions: Addition[] = [];
-  #state: StoredState | undefined;
+  #state: NewState | undefined;
   #running: Promise<void> | undefined;
   #keepOriginals = true;
 
@@ -29,10 +29,15 @@ export class Saver {
   }
 
   /** Without a state, only the additions are written: the state that lies in the store stays good for the items before them. */
-  save(additions: readonly Addition[], state: StoredState | undefined): void {
+  save(additions: readonly Addition[], state: NewState | undefined): void {
     this.#additions.push(...additions);
     this.#state = state ?? this.#state;
     this.#running ??= this.#run().finally(() => (this.#running = undefined));
+  }
+
+  /** What could not be written yet. */
+  get unwritten(): readonly Addition[] {
+    return this.#additions;
   }
 
   /** Resolves when nothing is left to write, or when writing failed. */
@@ -66,7 +71,7 @@ export class Saver {
     }
   }
 
-  async #write(additions: readonly Addition[], state: StoredState | undefined): Promise<void> {
+  async #write(additions: readonly Addition[], state: NewState | undefined): Promise<void> {
     if (this.#keepOriginals) {
       try {
         await this.#store.write(additions, state);

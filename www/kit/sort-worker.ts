@@ -1,8 +1,10 @@
 import { expose } from './bridge';
 import * as Comlink from 'comlink';
-import { Sorter, startCore } from './core';
+import { Sorter, Starter, startCore } from './core';
 import type { EncoderFacts } from './encode-worker';
 import { KenspeckleError } from './error';
+import type { FinishedPile } from './learn-worker';
+import { type KeptStarter, PastStore } from './past-store';
 import { type Saved, Saver } from './saver';
 import { type Addition, Store, type StoredItem, type StoredPictures } from './store';
 
@@ -28,14 +30,29 @@ export interface Verdicts {
 
 export const Status = { sorted: 0, answered: 1, none: 2, skipped: 3, removed: 4 } as const;
 
+/** What past piles taught this pile. */
+export interface PileStarter {
+  /** Whether the pile starts from it. */
+  on: boolean;
+  identity: string;
+  categories: number;
+  /** The file it came from; absent for what this device's piles taught. */
+  name: string | undefined;
+}
+
 /** Everything that a change can change. */
 export interface Snapshot {
+  /** Names the pile among past piles. */
+  id: string;
+  /** Whose embeddings it sorts. */
+  encoder: string;
   trays: Tray[];
   verdicts: Verdicts;
   /** The item that the sorter asks about; `undefined`: nothing left to ask. */
   question: number | undefined;
   canUndo: boolean;
   canRedo: boolean;
+  starter: PileStarter | undefined;
 }
 
 export type Action =
@@ -76,8 +93,15 @@ export interface Opened {
 
 let sorter: Sorter | undefined;
 let facts: EncoderFacts | undefined;
+let id = '';
+let starter: KeptStarter | undefined;
 let store: Store | undefined;
+let past: PastStore | undefined;
 let saver: Saver | undefined;
+/** Embeddings of all items, only where the browser keeps nothing. */
+let unkept: Float32Array<ArrayBuffer>[] = [];
+/** Items wait while the starter changes. */
+let changing: Promise<unknown> = Promise.resolve();
 
 function pile(): Sorter {
   if (!sorter) throw new KenspeckleError('pile-empty', 'There is no pile yet: add photos first.');
@@ -88,11 +112,19 @@ function snapshot(): Snapshot {
   const pileNow = pile();
   const verdicts = pileNow.verdicts() as Verdicts;
   const all: Snapshot = {
+    id,
+    encoder: facts?.identity ?? '',
     trays: pileNow.trays() as Tray[],
     verdicts,
     question: pileNow.nextQuestion(),
     canUndo: pileNow.canUndo,
     canRedo: pileNow.canRedo,
+    starter: starter && {
+      on: pileNow.starter !== undefined,
+      identity: starter.identity,
+      categories: starter.categories,
+      name: starter.name,
+    },
   };
   return Comlink.transfer(
     all,
@@ -101,7 +133,53 @@ function snapshot(): Snapshot {
 }
 
 function save(additions: Addition[]): void {
-  if (facts) saver?.save(additions, { sorter: pile().state(), encoder: facts });
+  const now = pile();
+  if (facts) saver?.save(additions, { sorter: now.state(), encoder: facts, id, starts: now.starter !== undefined, starter });
+}
+
+/** Calls with the starter of a file, which is freed afterwards: the sorter keeps a share of its own. */
+function withStarter<T>(kept: KeptStarter | undefined, call: (starter: Starter | undefined) => T): T {
+  const read = kept && Starter.read(kept.file);
+  try {
+    return call(read);
+  } finally {
+    read?.free();
+  }
+}
+
+/** The embeddings of all items, by item number. */
+async function embeddings(): Promise<Float32Array<ArrayBuffer>[]> {
+  if (!store) return unkept;
+  await saver?.settled();
+  const all: Float32Array<ArrayBuffer>[] = [];
+  for (const { number, embedding } of await store.items()) all[number] = embedding;
+  for (const { item } of saver?.unwritten ?? []) all[item.number] = item.embedding;
+  return all;
+}
+
+function joined(rows: readonly Float32Array[]): Float32Array<ArrayBuffer> {
+  const dimension = rows[0]?.length ?? 0;
+  const all = new Float32Array(rows.length * dimension);
+  rows.forEach((row, index) => all.set(row, index * dimension));
+  return all;
+}
+
+function newId(): string {
+  return crypto.getRandomValues(new Uint32Array(4)).join('-');
+}
+
+/** A new pile starts from what the person chose; where that can't be used, from nothing. */
+async function begin(encoder: EncoderFacts): Promise<void> {
+  facts = encoder;
+  id = newId();
+  const options = { encoder: encoder.identity, dimension: encoder.dimension, nonNegative: encoder.nonNegative };
+  starter = await past?.forNext(encoder.identity).catch(() => undefined);
+  try {
+    sorter = withStarter(starter, (given) => new Sorter(given ? { ...options, starter: given } : options));
+  } catch {
+    starter = undefined;
+    sorter = new Sorter(options);
+  }
 }
 
 function apply(action: Action): string | undefined {
@@ -156,17 +234,16 @@ const api = {
     await Promise.all([startCore(module), own(name)]);
     try {
       store = await Store.open(name);
+      past = await PastStore.open(name);
     } catch (error) {
       return { items: [], snapshot: undefined, notKept: error instanceof Error ? error.message : String(error) };
     }
     saver = new Saver(store, report);
     const { items, thumbnails, state } = await store.load();
     if (state === undefined) return { items: [], snapshot: undefined, notKept: undefined };
-    const dimension = items[0]?.embedding.length ?? 0;
-    const embeddings = new Float32Array(items.length * dimension);
-    items.forEach((item, index) => embeddings.set(item.embedding, index * dimension));
-    facts = state.encoder;
-    sorter = Sorter.restore(state.sorter, embeddings);
+    const all = joined(items.map(({ embedding }) => embedding));
+    ({ encoder: facts, id = newId(), starter } = state);
+    sorter = withStarter(state.starts ? starter : undefined, (given) => Sorter.restore(state.sorter, all, given));
     const opened = items.map(({ embedding: _, ...item }) => ({ ...item, thumbnail: thumbnails.get(item.number) }));
     return { items: opened, snapshot: snapshot(), notKept: undefined };
   },
@@ -176,20 +253,21 @@ const api = {
    * once; only with `sort` is the pile sorted anew and the sorter's state stored as well. A state that knows fewer items
    * than the store holds takes up the others as new ones.
    */
-  add(items: NewItem[], encoder: EncoderFacts, sort: boolean): { first: number; snapshot: Snapshot | undefined } {
-    facts ??= encoder;
-    if (facts.identity !== encoder.identity) {
+  async add(items: NewItem[], encoder: EncoderFacts, sort: boolean): Promise<{ first: number; snapshot: Snapshot | undefined }> {
+    const isFirst = sorter === undefined;
+    changing = changing.then(() => (sorter ? undefined : begin(encoder)));
+    await changing;
+    const to = pile();
+    if (facts?.identity !== encoder.identity) {
       throw new KenspeckleError(
         'encoder-changed',
         'This pile was read by another version of the encoder, so nothing can be added. Take the result, then start over.',
       );
     }
-    const isFirst = sorter === undefined;
-    sorter ??= new Sorter({ encoder: facts.identity, dimension: facts.dimension, nonNegative: facts.nonNegative });
-    const to = sorter;
     const additions = items.map(({ pictures, ...item }): Addition => {
       return { item: { ...item, number: to.addItem(item.embedding) }, pictures };
     });
+    if (!store) unkept.push(...items.map(({ embedding }) => embedding));
     if (sort || isFirst) save(additions);
     else saver?.save(additions, undefined);
     return { first: additions[0]?.item.number ?? 0, snapshot: sort || isFirst ? snapshot() : undefined };
@@ -208,6 +286,44 @@ const api = {
     return { snapshot: snapshot(), kind };
   },
 
+  /**
+   * Starts the pile from a starter of past piles by its key; from its own copy with `true`; from nothing with `false`. Items,
+   * trays and answers stay.
+   */
+  async changeStarter(to: string | boolean): Promise<Snapshot> {
+    const work = changing.then(async () => {
+      const other = typeof to === 'string' ? await past?.starter(to) : to ? starter : undefined;
+      if (to !== false && !other) throw new KenspeckleError('starter-gone', 'This starter is not kept here any more.');
+      if (typeof to === 'string' && other?.piles.includes(id)) {
+        throw new KenspeckleError('starter-of-this-pile', 'This pile itself taught that, so it can’t tell this pile anything new. It is for the next one.');
+      }
+      const all = joined(await embeddings());
+      withStarter(other, (given) => pile().changeStarter(all, given));
+      starter = other ?? starter;
+      save([]);
+    });
+    changing = work.catch(() => undefined);
+    await work;
+    return snapshot();
+  },
+
+  /** The pile as it teaches: the person's answers alone. */
+  async finished(): Promise<FinishedPile> {
+    const now = pile();
+    save([]);
+    const all = await embeddings();
+    const { tray, status } = now.verdicts() as Verdicts;
+    const answered = [...all.keys()].filter((item) => status[item] === Status.answered);
+    if (!facts) throw new KenspeckleError('pile-empty', 'There is no pile yet: add photos first.');
+    const finished = {
+      id,
+      encoder: facts,
+      embeddings: joined(answered.map((item) => all[item] ?? new Float32Array(0))),
+      labels: Int32Array.from(answered, (item) => tray[item] ?? -1),
+    };
+    return Comlink.transfer(finished, [finished.embeddings.buffer, finished.labels.buffer]);
+  },
+
   ranking(item: number): Ranked[] {
     return pile().ranking(item) as Ranked[];
   },
@@ -224,9 +340,13 @@ const api = {
 
   /** Forgets the pile, here and in the store. */
   async clear(): Promise<void> {
+    await changing;
     sorter?.free();
     sorter = undefined;
     facts = undefined;
+    id = '';
+    starter = undefined;
+    unkept = [];
     await saver?.clear();
   },
 };

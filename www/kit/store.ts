@@ -1,5 +1,6 @@
 import { type DBSchema, type IDBPDatabase, openDB } from 'idb';
 import type { EncoderFacts } from './encode-worker';
+import type { KeptStarter } from './past-store';
 
 /** One item of the pile as it lies in the store. `number` is its number in the sorter. */
 export interface StoredItem {
@@ -26,6 +27,15 @@ export interface Addition {
 export interface StoredState {
   sorter: string;
   encoder: EncoderFacts;
+  /** Names the pile among past piles; absent in what an older page kept. */
+  id?: string;
+  /** Whether the sorter starts from the pile's starter. */
+  starts?: boolean;
+}
+
+/** What a change leaves to be written. The starter is written only when it is another one than before. */
+export interface NewState extends StoredState {
+  starter: KeptStarter | undefined;
 }
 
 interface Schema extends DBSchema {
@@ -33,11 +43,17 @@ interface Schema extends DBSchema {
   thumbnails: { key: number; value: Blob };
   originals: { key: number; value: Blob };
   state: { key: 'pile'; value: StoredState };
+  /** The pile's own copy of what it starts from. */
+  starter: { key: 'pile'; value: KeptStarter };
 }
+
+const STORES = ['items', 'thumbnails', 'originals', 'state', 'starter'] as const;
 
 /** The pile on this device: IndexedDB, one database, every change in one transaction. */
 export class Store {
   readonly #database: IDBPDatabase<Schema>;
+  /** The identity of the starter that lies in the store. */
+  #starter: string | undefined;
 
   private constructor(database: IDBPDatabase<Schema>) {
     this.#database = database;
@@ -45,25 +61,29 @@ export class Store {
 
   static async open(name: string): Promise<Store> {
     return new Store(
-      await openDB<Schema>(name, 1, {
-        upgrade(database) {
-          database.createObjectStore('items', { keyPath: 'number' });
-          database.createObjectStore('thumbnails');
-          database.createObjectStore('originals');
-          database.createObjectStore('state');
+      await openDB<Schema>(name, 2, {
+        upgrade(database, from) {
+          if (from < 1) {
+            database.createObjectStore('items', { keyPath: 'number' });
+            database.createObjectStore('thumbnails');
+            database.createObjectStore('originals');
+            database.createObjectStore('state');
+          }
+          database.createObjectStore('starter');
         },
       }),
     );
   }
 
   /** All items in order of their numbers, and the sorter's state; the state is missing for an empty store. */
-  async load(): Promise<{ items: StoredItem[]; thumbnails: Map<number, Blob>; state: StoredState | undefined }> {
-    const transaction = this.#database.transaction(['items', 'thumbnails', 'state']);
-    const [items, keys, blobs, state] = await Promise.all([
+  async load(): Promise<{ items: StoredItem[]; thumbnails: Map<number, Blob>; state: NewState | undefined }> {
+    const transaction = this.#database.transaction(['items', 'thumbnails', 'state', 'starter']);
+    const [items, keys, blobs, state, starter] = await Promise.all([
       transaction.objectStore('items').getAll(),
       transaction.objectStore('thumbnails').getAllKeys(),
       transaction.objectStore('thumbnails').getAll(),
       transaction.objectStore('state').get('pile'),
+      transaction.objectStore('starter').get('pile'),
       transaction.done,
     ]);
     const thumbnails = new Map<number, Blob>();
@@ -71,7 +91,13 @@ export class Store {
       const blob = blobs[index];
       if (blob) thumbnails.set(key, blob);
     });
-    return { items, thumbnails, state };
+    this.#starter = starter?.identity;
+    return { items, thumbnails, state: state && { ...state, starter } };
+  }
+
+  /** All items in order of their numbers. */
+  async items(): Promise<StoredItem[]> {
+    return this.#database.getAll('items');
   }
 
   async original(number: number): Promise<Blob | undefined> {
@@ -79,22 +105,27 @@ export class Store {
   }
 
   /** Adds items and replaces the state, if there is a new one: all of it or nothing. */
-  async write(additions: readonly Addition[], state: StoredState | undefined): Promise<void> {
-    const transaction = this.#database.transaction(['items', 'thumbnails', 'originals', 'state'], 'readwrite');
+  async write(additions: readonly Addition[], state: NewState | undefined): Promise<void> {
+    const transaction = this.#database.transaction(STORES, 'readwrite');
     const requests: Promise<unknown>[] = [];
     for (const { item, pictures } of additions) {
       requests.push(transaction.objectStore('items').put(item));
       requests.push(transaction.objectStore('thumbnails').put(pictures.thumbnail, item.number));
       if (pictures.original) requests.push(transaction.objectStore('originals').put(pictures.original, item.number));
     }
-    if (state) requests.push(transaction.objectStore('state').put(state, 'pile'));
+    if (state) {
+      const { starter, ...plain } = state;
+      requests.push(transaction.objectStore('state').put(plain, 'pile'));
+      if (starter && starter.identity !== this.#starter) requests.push(transaction.objectStore('starter').put(starter, 'pile'));
+    }
     await Promise.all([...requests, transaction.done]);
+    if (state?.starter) this.#starter = state.starter.identity;
   }
 
   async clear(): Promise<void> {
-    const names = ['items', 'thumbnails', 'originals', 'state'] as const;
-    const transaction = this.#database.transaction(names, 'readwrite');
-    await Promise.all([...names.map((name) => transaction.objectStore(name).clear()), transaction.done]);
+    const transaction = this.#database.transaction(STORES, 'readwrite');
+    await Promise.all([...STORES.map((store) => transaction.objectStore(store).clear()), transaction.done]);
+    this.#starter = undefined;
   }
 
   close(): void {
