@@ -99,6 +99,11 @@ export const appStyles = css`
     /* Below this nothing gives way any more, and the whole part scrolls. */
     min-height: 21rem;
   }
+  .side {
+    display: grid;
+    gap: 6px;
+    min-width: 0;
+  }
   .said {
     flex: none;
     min-height: 1.5em;

@@ -14,11 +14,14 @@ import './reading';
 import type { Shelves } from './shelves';
 import './shelves';
 import { handOver } from './result';
+import { isStarter, Past } from './past';
+import './past-panel';
+import './starter-line';
 import { shared } from './styles';
 import './welcome';
 import { words } from './words';
 
-type Opened = { panel: 'help' | 'start-over' | 'camera' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
+type Opened = { panel: 'help' | 'start-over' | 'camera' | 'past' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
 
 const SINGLE_KEYS = 'single-keys';
 /** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
@@ -31,6 +34,7 @@ const brand = html`<svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="1
 export class Bench extends LitElement {
   static override properties = {
     desk: { state: true },
+    past: { state: true },
     failed: { state: true },
     opened: { state: true },
     dropping: { state: true },
@@ -39,6 +43,7 @@ export class Bench extends LitElement {
   };
 
   declare desk: Desk | undefined;
+  declare past: Past | undefined;
   declare failed: unknown;
   declare opened: Opened | undefined;
   declare dropping: boolean;
@@ -74,7 +79,10 @@ export class Bench extends LitElement {
 
   async #open(): Promise<Desk> {
     const client = await PileClient.open();
-    const desk = await Desk.lay(client, () => this.requestUpdate());
+    const redraw = () => this.requestUpdate();
+    const [desk, past] = await Promise.all([Desk.lay(client, redraw), Past.open(redraw)]);
+    past?.serve(this.renderRoot, desk);
+    this.past = past;
     this.desk = desk;
     // The encoder comes while the person still looks at the page.
     setTimeout(() => void client.warm().catch(() => undefined), 300);
@@ -94,10 +102,34 @@ export class Bench extends LitElement {
     const desk = await this.#ready;
     if (!desk) return;
     for (const problem of problems) desk.complain(problem);
-    if (sources.length === 0) return;
+    void this.#openStarters(desk, sources.filter(isStarter));
+    const photos = sources.filter((source) => !isStarter(source));
+    if (photos.length === 0) return;
     localStorage.setItem(HAS_PILE, 'yes');
     void navigator.storage?.persist?.();
-    await desk.add(sources);
+    await desk.add(photos);
+  }
+
+  async #openStarters(desk: Desk, starters: readonly Source[]): Promise<void> {
+    if (starters.length === 0) return;
+    if (!this.past) return desk.complain(words.notKept);
+    this.#openPast();
+    await this.past.take(starters, desk);
+  }
+
+  #openPast(): void {
+    if (this.opened?.panel === 'past' || !this.past) return;
+    this.past.hush();
+    this.#openPanel({ panel: 'past' });
+  }
+
+  async #learn(): Promise<void> {
+    const { desk } = this;
+    if (!desk || !this.past) return;
+    if (this.opened?.panel === 'start-over') this.#openPast();
+    const said = await this.past.learn(desk);
+    if (said) desk.said = said;
+    this.requestUpdate();
   }
 
   async #demo(): Promise<void> {
@@ -188,6 +220,8 @@ export class Bench extends LitElement {
         return void desk.removeItem(item);
       case 'shelves':
         return this.#shelves?.resume();
+      case 'past':
+        return this.#openPast();
       case 'help':
         return this.#openPanel({ panel: 'help' });
     }
@@ -240,6 +274,7 @@ export class Bench extends LitElement {
     const { desk } = this;
     if (!desk) return;
     desk.said = words.resultTaken(handOver(desk));
+    this.past?.finish(desk.snapshot);
     this.requestUpdate();
   }
 
@@ -277,6 +312,8 @@ export class Bench extends LitElement {
     on<{ from: number; into: number }>('merge-trays', ({ from, into }) => void this.#changeTray(this.desk?.mergeTrays(from, into)));
     on<{ tray: number }>('remove-tray', ({ tray }) => void this.#changeTray(this.desk?.removeTray(tray)));
     on('clear', () => void this.#clear());
+    on('past', () => this.#openPast());
+    on('learn', () => void this.#learn());
   }
 
   protected override createRenderRoot(): HTMLElement | DocumentFragment {
@@ -320,6 +357,7 @@ export class Bench extends LitElement {
         <p class="row">
           <strong>${words.private}</strong>
           <button class="plain" @click=${() => this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
+          ${this.past ? html`<button class="plain" @click=${() => this.#openPast()}>${words.past}</button>` : nothing}
           ${bench
             ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
             : nothing}
@@ -361,7 +399,12 @@ export class Bench extends LitElement {
 
   #welcome(): TemplateResult {
     if (!this.desk && localStorage.getItem(HAS_PILE)) return html`<main class="failure"><p>${words.opening}</p></main>`;
-    return html`<ken-welcome ?loading=${this.demoLoading} ?hasCamera=${hasCamera()}></ken-welcome>`;
+    return html`<ken-welcome ?loading=${this.demoLoading} ?hasCamera=${hasCamera()}>${this.#starterLine()}</ken-welcome>`;
+  }
+
+  #starterLine(): TemplateResult | typeof nothing {
+    if (!this.past) return nothing;
+    return html`<ken-starter-line .view=${this.past.view(this.desk?.snapshot)}></ken-starter-line>`;
   }
 
   #bench(desk: Desk): TemplateResult {
@@ -379,13 +422,16 @@ export class Bench extends LitElement {
         ></ken-question>
         <p class="said" aria-hidden="true">${desk.said}</p>
       </div>
-      <ken-shelves
-        .view=${desk.view}
-        .snapshot=${desk.snapshot}
-        .items=${desk.items}
-        .hand=${desk.hand}
-        .movedItems=${desk.movedItems}
-      ></ken-shelves>
+      <div class="side">
+        ${this.#starterLine()}
+        <ken-shelves
+          .view=${desk.view}
+          .snapshot=${desk.snapshot}
+          .items=${desk.items}
+          .hand=${desk.hand}
+          .movedItems=${desk.movedItems}
+        ></ken-shelves>
+      </div>
     </main>`;
   }
 
@@ -404,13 +450,18 @@ export class Bench extends LitElement {
     const { desk, opened } = this;
     if (opened?.panel === 'help') return html`<ken-help class="panel" ?singleKeys=${this.singleKeys}></ken-help>`;
     if (opened?.panel === 'camera') return html`<ken-camera class="panel"></ken-camera>`;
+    if (opened?.panel === 'past') {
+      return this.past ? html`<ken-past-panel class="panel" .view=${this.past.view(desk?.snapshot)}></ken-past-panel>` : nothing;
+    }
     if (!opened || !desk) return nothing;
     switch (opened.panel) {
       case 'zoom':
         return html`<ken-zoom class="panel" .picture=${this.#zoomed} .name=${desk.items[opened.item]?.name ?? ''}></ken-zoom>`;
       case 'start-over': {
         const loss = words.startOverLoss(desk.view?.tally.items ?? 0, desk.snapshot?.trays.length ?? 0, desk.answers);
-        return html`<ken-start-over class="panel" loss=${loss}></ken-start-over>`;
+        const pile = this.past?.view(desk.snapshot).pile;
+        const canTeach = pile?.teachable === true && pile.taught?.items !== pile.answers;
+        return html`<ken-start-over class="panel" loss=${loss} ?canTeach=${canTeach}></ken-start-over>`;
       }
       case 'tray': {
         const tray = desk.snapshot?.trays.find((one) => one.tray === opened.tray);

@@ -1,6 +1,6 @@
 export type Command =
   | { do: 'tray'; place: number }
-  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' };
+  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' };
 
 const single: Record<string, Command> = {
   enter: { do: 'guess' },
@@ -11,6 +11,7 @@ const single: Record<string, Command> = {
   u: { do: 'undo' },
   z: { do: 'zoom' },
   q: { do: 'back' },
+  p: { do: 'past' },
   delete: { do: 'remove' },
   backspace: { do: 'remove' },
   '?': { do: 'help' },

@@ -191,13 +191,18 @@ export class TrayPanel extends Panel {
 }
 
 export class StartOverPanel extends Panel {
-  static override properties = { loss: { type: String } };
+  static override properties = { loss: { type: String }, canTeach: { type: Boolean } };
   declare loss: string;
+  declare canTeach: boolean;
   protected readonly label = words.startOverTitle;
 
   protected content(): TemplateResult {
     return html`<h2>${words.startOverTitle}</h2>
       <p>${this.loss}</p>
+      ${this.canTeach
+        ? html`<p>${words.startOverTeach}</p>
+            <div class="row"><button @click=${() => tell(this, 'learn', {})}>${words.learn}</button></div>`
+        : nothing}
       <div class="row end">
         <button autofocus @click=${() => this.close()}>${words.cancel}</button>
         <button class="alarm" @click=${() => tell(this, 'clear', {})}>${words.startOverDo}</button>

@@ -107,22 +107,6 @@ export class Reading extends LitElement {
       }
       progress {
         flex: 1 1 10rem;
-        height: 12px;
-        appearance: none;
-        border: 0;
-        border-radius: 6px;
-        background: var(--quiet);
-        overflow: hidden;
-        accent-color: var(--ink);
-      }
-      progress::-webkit-progress-bar {
-        background: var(--quiet);
-      }
-      progress::-webkit-progress-value {
-        background: var(--ink);
-      }
-      progress::-moz-progress-bar {
-        background: var(--ink);
       }
       summary {
         cursor: pointer;

@@ -19,12 +19,17 @@ function rows(desk: Desk): string[][] {
 /** Saves the result as a table. Returns the file's name. */
 export function handOver(desk: Desk): string {
   const table = csv([['item', 'tray', 'probability'], ...rows(desk)]);
-  const url = URL.createObjectURL(new Blob([table], { type: 'text/csv' }));
+  save(new Blob([table], { type: 'text/csv' }), FILE);
+  return FILE;
+}
+
+/** Gives the person a file. */
+export function save(file: Blob, name: string): void {
+  const url = URL.createObjectURL(file);
   const link = document.createElement('a');
   link.href = url;
-  link.download = FILE;
+  link.download = name;
   link.click();
   // The browser reads it after the click; how long after is its own affair.
   setTimeout(() => URL.revokeObjectURL(url), 60_000);
-  return FILE;
 }

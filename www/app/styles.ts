@@ -124,6 +124,24 @@ export const shared = css`
     line-height: 1.25;
     margin-bottom: 0.75rem;
   }
+  progress {
+    height: 12px;
+    appearance: none;
+    border: 0;
+    border-radius: 6px;
+    background: var(--quiet);
+    overflow: hidden;
+    accent-color: var(--ink);
+  }
+  progress::-webkit-progress-bar {
+    background: var(--quiet);
+  }
+  progress::-webkit-progress-value {
+    background: var(--ink);
+  }
+  progress::-moz-progress-bar {
+    background: var(--ink);
+  }
   .row {
     display: flex;
     flex-wrap: wrap;

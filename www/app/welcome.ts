@@ -59,6 +59,7 @@ export class Welcome extends LitElement {
           ${this.hasCamera ? html`<button @click=${() => tell(this, 'camera', {})}>${words.camera}</button>` : null}
         </div>
         <p class="soft drop">${words.dropHint}</p>
+        <slot></slot>
         <p class="private"><strong>${words.private}</strong> ${words.privateLong}</p>
       </div>
       <div class="heap" aria-hidden="true" @click=${() => tell(this, 'demo', {})}>

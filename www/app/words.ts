@@ -14,6 +14,17 @@ function answers(n: number): string {
   return n === 1 ? '1 answer' : `${count(n)} answers`;
 }
 
+function trays(n: number): string {
+  return n === 1 ? '1 tray' : `${count(n)} trays`;
+}
+
+function piles(n: number): string {
+  return n === 1 ? '1 pile' : `${count(n)} piles`;
+}
+
+const moment = new Intl.DateTimeFormat('en-GB', { dateStyle: 'medium', timeStyle: 'short' });
+const date = (at: number): string => moment.format(at);
+
 function timeLeft(seconds: number): string {
   if (seconds < 5) return 'a few seconds left';
   if (seconds < 90) return `about ${count(Math.ceil(seconds / 5) * 5)} s left`;
@@ -167,10 +178,71 @@ export const words = {
   // Start over
   startOver: 'Start over',
   startOverTitle: 'Start over?',
-  startOverLoss: (items: number, trays: number, given: number) =>
-    `This deletes ${photos(items)}, ${trays === 1 ? '1 tray' : `${count(trays)} trays`} and ${answers(given)} from this page. It can’t be undone. The files on your disk stay as they are.`,
+  startOverLoss: (items: number, of: number, given: number) =>
+    `This deletes ${photos(items)}, ${trays(of)} and ${answers(given)} from this page. It can’t be undone. The files on your disk stay as they are.`,
+  startOverTeach: 'Another pile of this kind to come? What your answers taught can go with it, but only before this pile is deleted.',
   startOverDo: 'Delete the pile',
   cancel: 'Keep it',
+
+  // Past piles
+  past: 'Past piles',
+  pastTitle: 'What past piles taught',
+  pastWhat:
+    'Piles already done can teach the sorter in which ways the things of one tray differ anyway. It then looks past these, and the next pile of the same kind needs fewer answers.',
+  pastThis: 'This pile',
+  startsFrom: (file: string | undefined, of: number) => `Starts from what past piles taught${file ? ` (${file})` : ''}: ${trays(of)}.`,
+  startsOff: 'What past piles taught is switched off for this pile.',
+  startsNow: 'This pile now starts from what past piles taught. It was sorted anew.',
+  switchOff: 'Switch off',
+  switchOn: 'Switch on',
+  useHere: (file: string | undefined) => `Start this pile from ${file ?? 'your past piles'} too`,
+  learn: 'Learn from this pile',
+  learnAgain: 'Learn again',
+  learnOffer: 'Another pile of this kind to come? This one can teach it.',
+  canTeach: (given: number, of: number) =>
+    `Your ${answers(given)} in ${trays(of)} can teach the next pile. Only what you answered counts: the sorter’s guesses would teach their mistakes as well.`,
+  tooLittle: 'Too little to learn from yet: it takes answers in two trays, and two in one of them.',
+  taught: (learned: number, now: number) =>
+    learned === now ? `It has taught its ${answers(now)}.` : `It taught ${answers(learned)}, and has ${answers(now)} now.`,
+  learningShort: 'Learning',
+  learning: (done: number) => `Learning: ${percent(done)}`,
+  learned: (given: number, of: number) => `Learned from ${answers(given)} in ${trays(of)}. The next pile starts from it.`,
+  learningStopped: 'Stopped. Nothing was learned, and nothing was changed.',
+  nextTitle: 'The next pile starts from',
+  nextOf: (encoder: string) => `The next pile starts from (${encoder})`,
+  nextNothing: 'Nothing yet: no pile has taught, and no starter was opened.',
+  nextStartsFrom: (file: string | undefined, of: number) => `The next pile starts from what past piles taught${file ? ` (${file})` : ''}: ${trays(of)}.`,
+  ownStarter: 'Your past piles',
+  nothing: 'Nothing',
+  starterFacts: (file: string | undefined, of: number, items: number, from: number, at: number) =>
+    file === undefined
+      ? `${trays(of)}, ${answers(items)} in ${piles(from)}; learned ${date(at)}`
+      : `${trays(of)}, ${count(items)} items; opened ${date(at)}`,
+  saveStarter: 'Save as a file',
+  starterSaved: (file: string) => `Saved as ${file}. It tells what the past piles were like on the whole: think before you give it to others.`,
+  tooFewToShare: (of: number) =>
+    `This comes from ${trays(of)}, and less than 8 are not saved as a file: from so few it could tell what the trays were. It works on this device as it is; more past piles make it fit to be shared.`,
+  openStarter: 'Open a starter file',
+  openStarterHint: 'A file that this page or the program kenspeckle wrote. You can also drop it anywhere on the page.',
+  starterTaken: (file: string, of: number) => `${file} is kept: ${trays(of)}. The next pile starts from it.`,
+  starterDeleted: 'Deleted. A pile that started from it keeps its copy.',
+  delete: 'Delete',
+  deleteStarter: (file: string) => `Delete ${file}`,
+  starterProblems: {
+    'starter-unreadable': (file) => `${file} is not a starter, or it is damaged. Take it once more from where it came from.`,
+    'starter-newer': (file) => `${file} was written by a newer version. Reload this page while there is a network, then open it again.`,
+    'other-encoder': (file) => `${file} was learned from other material than this page reads, so it can teach nothing here.`,
+  } as Record<string, (file: string) => string>,
+  keptTitle: 'Kept on this device',
+  kept: 'Of a past pile only sums are kept: the average of the numbers that its photos became, and how these differed within trays. No photo, no name, no single answer. Sums can still tell what a pile was like on the whole; those of very few photos can tell what was in it.',
+  keptNothing: 'Nothing is kept yet.',
+  pastPile: (at: number, of: number, given: number) => `${date(at)}: ${trays(of)}, ${answers(given)}`,
+  forget: 'Forget',
+  forgetPile: (at: number) => `Forget the pile of ${date(at)}`,
+  forgetAll: 'Forget all',
+  forgetSure: 'Forget for good?',
+  forgot: 'Forgotten. What the other piles taught was learned anew without it.',
+  forgotAll: 'All past piles and starters are forgotten.',
 
   // Camera
   cameraTitle: 'Take pictures into the pile',
@@ -191,6 +263,7 @@ export const words = {
     'The pile sorts itself after every answer. Sure ones stand at the back of a shelf, unsure ones come forward to the edge.',
     'See one in the wrong place? Click it and answer, or drag it onto the right shelf.',
     'Good enough? Take the result: a table with one line an item.',
+    'Another pile of this kind to come? Let this one teach it: then it needs fewer answers.',
   ],
   keysTitle: 'Keys',
   keys: [
@@ -205,12 +278,13 @@ export const words = {
     ['Arrows', 'between items on the shelves; a tray’s number answers the item, Enter takes it in hand'],
     ['Delete', 'take the item out of the pile'],
     ['Q', 'back to the question'],
+    ['P', 'what past piles taught'],
     ['?', 'this panel'],
   ] as const,
   singleKeys: 'Single keys act (switch off if you use speech input)',
   privacyTitle: 'Privacy',
   privacy:
-    'Photos, trays and answers stay in this browser’s storage on this device until you start over or clear the data of this site. The page sends nothing: its own rules forbid it to talk to any other server.',
+    'Photos, trays and answers stay in this browser’s storage on this device until you start over or clear the data of this site. What past piles taught stays until you forget it. The page sends nothing: its own rules forbid it to talk to any other server.',
   limitsTitle: 'Limits',
   limits: 'The figures say how sure the sorter is from the few examples it has seen. They are not a promise: look along the edges before you rely on a shelf.',
   caution:
