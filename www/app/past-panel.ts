@@ -33,7 +33,7 @@ export class PastPanel extends Panel {
           : html`<p class="soft">${words.nextNothing}</p>`}
         <div class="row">
           <button @click=${() => tell(this, 'choose-starter', {})}>${words.openStarter}</button>
-          <span class="soft hint">${words.openStarterHint}</span>
+          <span class="soft hint">${words.openStarterHint[0]} <span class="drop">${words.openStarterHint[1]}</span></span>
         </div>
       </section>
       <section aria-labelledby="kept">
@@ -185,6 +185,11 @@ export class PastPanel extends Panel {
       }
       .hint {
         flex: 1 1 14rem;
+      }
+      @media (hover: none) {
+        .drop {
+          display: none;
+        }
       }
       .figures {
         font-variant-numeric: tabular-nums;

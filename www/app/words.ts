@@ -223,7 +223,7 @@ export const words = {
   tooFewToShare: (of: number) =>
     `This comes from ${trays(of)}, and less than 8 are not saved as a file: from so few it could tell what the trays were. It works on this device as it is; more past piles make it fit to be shared.`,
   openStarter: 'Open a starter file',
-  openStarterHint: 'A file that this page or the program kenspeckle wrote. You can also drop it anywhere on the page.',
+  openStarterHint: ['A file that this page or the program kenspeckle wrote.', 'You can also drop it anywhere on the page.'],
   starterTaken: (file: string, of: number) => `${file} is kept: ${trays(of)}. The next pile starts from it.`,
   starterDeleted: 'Deleted. A pile that started from it keeps its copy.',
   delete: 'Delete',
