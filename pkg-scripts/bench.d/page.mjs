@@ -115,6 +115,7 @@ try {
   result.notes = await other.evaluate((options) => window.measure.notes(options), job.notes);
   await other.close();
   result.answers = await page.evaluate((options) => window.measure.answers(options), job.answers);
+  result.learning = await page.evaluate((options) => window.measure.learning(options), job.learning);
   server.close();
   const dist = join(root, "www/app/dist");
   if (existsSync(dist)) result.firstVisit = await firstVisit(browser, dist);

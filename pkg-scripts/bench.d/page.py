@@ -16,12 +16,14 @@ import sets
 
 PACKAGES = {"playwright-core": "1.65.1", "onnxruntime-web": "1.30.0"}
 PILE, TRAYS, ANSWERS_PER_TRAY = 400, 10, 10
+PAST_CATEGORIES, PAST_ITEMS = 580, 8
 ROUNDS, WARM_UP = 60, 8
 FOLDER = sets.DATA / "bench" / "page"
 NOTE_TOKENS = 32
 # A phone's camera gives about 12 million pixels.
 PHONE = (4032, 3024)
 MOST_MILLISECONDS_TO_SORT = 50
+MOST_SECONDS_TO_LEARN = 60
 
 
 def pile():
@@ -54,9 +56,20 @@ def notes():
     return found[:20]
 
 
+def past():
+    """A past pile of 580 drawn icons with up to 8 pictures of each: vectors and, for each item, its category."""
+    of = {}
+    for row, category in enumerate(sets.read_categories("icons-learn")):
+        of.setdefault(category, []).append(row)
+    chosen = [rows[:PAST_ITEMS] for rows in of.values() if len(rows) >= 2][:PAST_CATEGORIES]
+    labels = [category for category, rows in enumerate(chosen) for _ in rows]
+    return sets.read_vectors("icons-learn")[[row for rows in chosen for row in rows]], labels
+
+
 def prepare(say):
     """Writes what the page's measurements read into FOLDER."""
     embed.vectors_of("stamps", say)
+    embed.vectors_of("icons-learn", say)
     clients.install_node_packages(PACKAGES)
     FOLDER.mkdir(parents=True, exist_ok=True)
     network = FOLDER / "photo-f32.onnx"
@@ -67,6 +80,8 @@ def prepare(say):
         subprocess.run([sets.ROOT / "pkg-scripts" / "make-encoder", "text", "--float", network], check=True)
     vectors, labels = pile()
     vectors.astype("<f4").tofile(FOLDER / "pile.f32")
+    past_vectors, past_labels = past()
+    past_vectors.astype("<f4").tofile(FOLDER / "past.f32")
     # Photos that scikit-image carries; each wide enough to fill the encoder's square.
     names = ["chelsea", "coffee", "astronaut", "rocket"]
     for name in names:
@@ -81,6 +96,7 @@ def prepare(say):
         },
         "notes": {"notes": notes(), "rounds": ROUNDS, "warmUp": WARM_UP},
         "answers": {"labels": labels, "trays": TRAYS, "answersPerTray": ANSWERS_PER_TRAY},
+        "learning": {"labels": past_labels},
     }
     (FOLDER / "job.json").write_text(json.dumps(job))
 
@@ -126,6 +142,7 @@ def run(say):
         "answer_to_sorted_last_turn": summarise(answers["sort"][-TRAYS:]),
         "next_question": summarise(answers["question"]),
         "right_after_all_answers": answers["right"][-1],
+        "learning": raw["learning"],
         "first_visit": visit,
     }
     return numbers, table(numbers)
@@ -140,6 +157,10 @@ def table(numbers):
     text += times(f"the same, the last {TRAYS} of these answers", numbers["answer_to_sorted_last_turn"])
     text += times("choosing the next question", numbers["next_question"])
     text += f"\nAt most {MOST_MILLISECONDS_TO_SORT} ms was asked for the first line.\n"
+    learning = numbers["learning"]
+    text += f"\n## Learning from a past pile of {learning['categories']} categories and {learning['items']} items\n\n"
+    text += f"{learning['gather'] / 1000:.1f} s to gather it and {learning['learn'] / 1000:.1f} s to learn; the starter has {learning['bytes']:,} bytes. "
+    text += f"At most {MOST_SECONDS_TO_LEARN} s was asked for both. In the page this runs in a worker.\n"
     text += f"\n## Time per photo beside {numbers['libraries']}, turn by turn\n\n"
     text += "| | Kenspeckle | onnxruntime-web | ratio (95 % interval) |\n| --- | --- | --- | --- |\n"
     for name, both in {"network alone, 224 × 224 pixels": numbers["network"], **numbers["files"]}.items():

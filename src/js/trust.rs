@@ -3,10 +3,7 @@
 use serde::{Deserialize, Serialize, de::DeserializeOwned};
 use wasm_bindgen::prelude::*;
 
-use super::{
-    js_error,
-    sorter::{OrThrow, Sorter},
-};
+use super::{OrThrow, js_error, sorter::Sorter};
 use crate::trust::{
     Terms,
     spot_check::{self, Judgement, Plan},

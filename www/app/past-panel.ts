@@ -157,13 +157,13 @@ export class PastPanel extends Panel {
       }
       .option {
         justify-content: space-between;
-        flex-wrap: nowrap;
+        gap: 0 0.6rem;
       }
       .option button {
         flex: none;
       }
       .check {
-        flex: 1;
+        flex: 1 1 16rem;
         overflow-wrap: anywhere;
       }
       .check input {

@@ -234,7 +234,7 @@ export const words = {
     'other-encoder': (file) => `${file} was learned from other material than this page reads, so it can teach nothing here.`,
   } as Record<string, (file: string) => string>,
   keptTitle: 'Kept on this device',
-  kept: 'Of a past pile only sums are kept: the average of the numbers that its photos became, and how these differed within trays. No photo, no name, no single answer. Sums can still tell what a pile was like on the whole; those of very few photos can tell what was in it.',
+  kept: 'Of a past pile are kept: how the numbers that its photos became differed within trays and between them, and these numbers themselves for up to 12 photos a tray, without photo or name. Whoever has such numbers can tell much of what a photo shows. So they stay on this device, and a starter file has none of them.',
   keptNothing: 'Nothing is kept yet.',
   pastPile: (at: number, of: number, given: number) => `${date(at)}: ${trays(of)}, ${answers(given)}`,
   forget: 'Forget',

@@ -17,8 +17,8 @@ export interface FinishedPile {
 /** How much is done, 0 to 1. */
 type Report = (done: number) => void;
 
-/** The share of the work that learning is; before it sums are gathered and added up. */
-const LEARNING = 0.9;
+/** The share of the work that learning is; before it, piles are gathered and put together. */
+const LEARNING = 0.8;
 
 /** The largest file that is looked into: a starter of the most dimensions stays far below. */
 const LARGEST_STARTER = 16 << 20;
@@ -37,12 +37,11 @@ function learned(from: PastPiles, key: string, encoder: string, piles: readonly 
   return { key, identity, encoder, name: undefined, date: Date.now(), categories, items, piles, file: starter.bytes(2) as Uint8Array<ArrayBuffer> };
 }
 
-/** Adds the kept sums of piles. Order decides the last bits, so it is that of the list. */
-async function mergeAll(into: PastPiles, piles: readonly PastPile[], report: Report): Promise<void> {
-  for (const [index, { id }] of piles.entries()) {
-    const sums = await past().sums(id);
-    if (sums) into.merge(sums);
-    report(((1 - LEARNING) * (index + 1)) / (piles.length + 1));
+/** Adds what was kept of piles. Order decides the last bits, so it is that of the list. */
+async function mergeAll(into: PastPiles, piles: readonly PastPile[]): Promise<void> {
+  for (const { id } of piles) {
+    const gathered = await past().gathered(id);
+    if (gathered) into.merge(gathered);
   }
 }
 
@@ -56,14 +55,14 @@ const api = {
   async teach(pile: FinishedPile, report: Report): Promise<void> {
     const { identity: encoder, dimension, nonNegative } = pile.encoder;
     const own = new PastPiles({ encoder, dimension, nonNegative });
-    own.addPile(pile.embeddings, pile.labels);
-    const sums = own.sums() as Uint8Array<ArrayBuffer>;
+    own.addPile(pile.embeddings, pile.labels, (done) => report((1 - LEARNING) * done));
+    const gathered = own.bytes() as Uint8Array<ArrayBuffer>;
     const { categories, items } = own;
     const others = (await past().lists()).piles.filter((one) => one.encoder === encoder && one.id !== pile.id);
-    await mergeAll(own, others, report);
+    await mergeAll(own, others);
     const piles = [...others.map(({ id }) => id), pile.id];
     const starter = learned(own, ownKey(encoder), encoder, piles, report);
-    await past().teach({ id: pile.id, date: Date.now(), encoder, categories, items }, sums, starter);
+    await past().teach({ id: pile.id, date: Date.now(), encoder, categories, items }, gathered, starter);
   },
 
   /** Forgets a past pile and learns from the others as if it had never been. */
@@ -73,10 +72,10 @@ const api = {
     if (!pile) return;
     const [first, ...rest] = piles.filter((one) => one.encoder === pile.encoder && one.id !== id);
     const key = ownKey(pile.encoder);
-    const sums = first && (await past().sums(first.id));
-    if (!sums) return past().forget(id, key, undefined);
-    const left = PastPiles.read(sums);
-    await mergeAll(left, rest, report);
+    const gathered = first && (await past().gathered(first.id));
+    if (!gathered) return past().forget(id, key, undefined);
+    const left = PastPiles.read(gathered);
+    await mergeAll(left, rest);
     let starter: KeptStarter | undefined;
     try {
       starter = learned(left, key, pile.encoder, [first.id, ...rest.map((one) => one.id)], report);

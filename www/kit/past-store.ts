@@ -1,6 +1,6 @@
 import { type DBSchema, type IDBPDatabase, openDB } from 'idb';
 
-/** A pile that taught. Nothing of its items is kept but sums over them. */
+/** A pile that taught. What was gathered from it lies apart. */
 export interface PastPile {
   id: string;
   /** When it taught, in milliseconds since 1970. */
@@ -42,16 +42,17 @@ export function ownKey(encoder: string): string {
 
 interface Schema extends DBSchema {
   piles: { key: string; value: PastPile };
-  sums: { key: string; value: Uint8Array<ArrayBuffer> };
+  /** By pile: sums, and the embeddings of some items. */
+  gathered: { key: string; value: Uint8Array<ArrayBuffer> };
   starters: { key: string; value: StarterFacts };
   files: { key: string; value: Uint8Array<ArrayBuffer> };
   /** By encoder: the key of the starter that the next pile starts from, or `NOTHING`. */
   choices: { key: string; value: string };
 }
 
-const STORES = ['piles', 'sums', 'starters', 'files', 'choices'] as const;
+const STORES = ['piles', 'gathered', 'starters', 'files', 'choices'] as const;
 
-/** What past piles taught, on this device. Sums and files lie apart from what is known of them, so that lists are read fast. */
+/** What past piles taught, on this device. What is large lies apart from what is known of it, so that lists are read fast. */
 export class PastStore {
   readonly #database: IDBPDatabase<Schema>;
 
@@ -65,7 +66,7 @@ export class PastStore {
       await openDB<Schema>(`${name} past`, 1, {
         upgrade(database) {
           database.createObjectStore('piles', { keyPath: 'id' });
-          database.createObjectStore('sums');
+          database.createObjectStore('gathered');
           database.createObjectStore('starters', { keyPath: 'key' });
           database.createObjectStore('files');
           database.createObjectStore('choices');
@@ -87,8 +88,8 @@ export class PastStore {
     return { piles: piles.sort((a, b) => a.date - b.date), starters: starters.sort((a, b) => a.date - b.date), choices };
   }
 
-  async sums(pile: string): Promise<Uint8Array<ArrayBuffer> | undefined> {
-    return this.#database.get('sums', pile);
+  async gathered(pile: string): Promise<Uint8Array<ArrayBuffer> | undefined> {
+    return this.#database.get('gathered', pile);
   }
 
   async starter(key: string): Promise<KeptStarter | undefined> {
@@ -111,13 +112,13 @@ export class PastStore {
     await this.#database.put('choices', key, encoder);
   }
 
-  /** Keeps a pile's sums and the starter learned with them, and starts the next pile from it: all of it or nothing. */
-  async teach(pile: PastPile, sums: Uint8Array<ArrayBuffer>, starter: KeptStarter): Promise<void> {
+  /** Keeps what was gathered from a pile and the starter learned with it, and starts the next pile from it: all of it or nothing. */
+  async teach(pile: PastPile, gathered: Uint8Array<ArrayBuffer>, starter: KeptStarter): Promise<void> {
     const transaction = this.#database.transaction(STORES, 'readwrite');
     const { file, ...facts } = starter;
     await Promise.all([
       transaction.objectStore('piles').put(pile),
-      transaction.objectStore('sums').put(sums, pile.id),
+      transaction.objectStore('gathered').put(gathered, pile.id),
       transaction.objectStore('starters').put(facts),
       transaction.objectStore('files').put(file, facts.key),
       transaction.objectStore('choices').put(facts.key, facts.encoder),
@@ -128,7 +129,7 @@ export class PastStore {
   /** Forgets a pile, and replaces what was learned with it, or deletes that if nothing is left to learn from. */
   async forget(pile: string, key: string, starter: KeptStarter | undefined): Promise<void> {
     const transaction = this.#database.transaction(STORES, 'readwrite');
-    const requests: Promise<unknown>[] = [transaction.objectStore('piles').delete(pile), transaction.objectStore('sums').delete(pile)];
+    const requests: Promise<unknown>[] = [transaction.objectStore('piles').delete(pile), transaction.objectStore('gathered').delete(pile)];
     if (starter) {
       const { file, ...facts } = starter;
       requests.push(transaction.objectStore('starters').put(facts), transaction.objectStore('files').put(file, key));

@@ -67,7 +67,7 @@ export class PastPiles {
     await this.#inWorker((worker) => worker.teach(Comlink.transfer(pile, [pile.embeddings.buffer, pile.labels.buffer]), report), signal);
   }
 
-  /** Forgets a past pile: its sums are deleted, and what was learned with it is learned anew without it. */
+  /** Forgets a past pile: what was gathered from it is deleted, and what was learned with it is learned anew without it. */
   async forget(pile: string, { signal, onProgress }: Watched = {}): Promise<void> {
     const report = Comlink.proxy((done: number) => onProgress?.(done));
     await this.#inWorker((worker) => worker.forget(pile, report), signal);

@@ -1,5 +1,5 @@
 // Runs in the browser: times the built wasm module, beside onnxruntime-web in the same run. One thread for both.
-import init, { NoteEncoder, PhotoEncoder, Sorter } from "/kit/wasm/kenspeckle.js";
+import init, { NoteEncoder, PastPiles, PhotoEncoder, Sorter } from "/kit/wasm/kenspeckle.js";
 import * as ort from "/ort/ort.wasm.min.mjs";
 
 const SIDE = 224;
@@ -158,5 +158,18 @@ export async function answers({ labels, trays, answersPerTray }) {
     }
   }
   sorter.free();
+  return result;
+}
+
+/** Times learning a starter from one large past pile: gathering it, then learning. Milliseconds, and the file's bytes. */
+export async function learning({ labels }) {
+  await init({ module_or_path: "/kit/wasm/kenspeckle_bg.wasm" });
+  const values = new Float32Array((await bytesOf("/data/past.f32")).buffer);
+  const past = new PastPiles({ encoder: "benchmark", dimension: values.length / labels.length, nonNegative: true });
+  const [gather] = timed(() => past.addPile(values, Int32Array.from(labels)));
+  const [learn, starter] = timed(() => past.learn());
+  const result = { gather, learn, bytes: starter.bytes().length, categories: past.categories, items: past.items };
+  starter.free();
+  past.free();
   return result;
 }
