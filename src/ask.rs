@@ -1,109 +1,202 @@
 //! Which item to ask about next.
 //!
 //! Facility location: ask about the item that most improves how well every item is represented by one that was asked
-//! about, Σ_i max over asked k of s(i, k)₊, with s the cosine seen from the pile's centre (Wei, Iyer, Bilmes 2015,
-//! proceedings.mlr.press/v37/wei15). Once there are three answers for two trays, similarities are cubed, which asks for
-//! finer cover, and an item's gain is weighted by how unsure the sorter is of it.
+//! about, Σ_i u_i · max over asked k of s(i, k), which greedy choice does to within 1 − 1/e of the best (Wei, Iyer, Bilmes
+//! 2015, proceedings.mlr.press/v37/wei15). s is how closely the pile's graph of look-alikes joins two items,
+//! K_ik / √(K_ii K_kk) with K = I + 0.9 S + (0.9 S)², walks of up to two steps: a group of look-alikes counts as one
+//! wherever it lies. (Three and four steps, and all of them, ask no better.) u_i is how unsure the sorter is of item i, once it has something to go by; before, every item counts
+//! the same, which is what finds trays that nobody has met yet. Neither depends on the order of earlier questions.
 //!
-//! Items beyond [`ANCHORS`] are represented by a seeded sample of that size. A question costs O(n · anchors); an item's
-//! arrival costs O(anchors · d).
+//! A question costs O(n k²) for k neighbours an item.
 
-use rand::{SeedableRng, seq::index};
-use rand_chacha::ChaCha8Rng;
-
-use crate::{pile::Pile, space::Centre};
-
-/// How many items stand for the whole pile.
-pub const ANCHORS: usize = 512;
+use crate::pile::graph::{Graph, SPREAD};
 
 /// What the sorter knows of the items that may be asked about.
 pub struct Situation<'a> {
+    /// Who is like whom.
+    pub graph: &'a Graph,
     /// Items with an answer of any kind: they need no question and cover what is like them.
     pub answered: &'a [usize],
-    /// Items that may be asked about, each with how unsure the sorter is of it (0 sure … 1 can't tell).
-    pub candidates: &'a [(usize, f64)],
+    /// Items that may be asked about, in order.
+    pub candidates: &'a [usize],
+    /// How unsure the sorter is of each item number, 0 sure … 1 can't tell; 0 for items that are not in the pile.
+    pub unsure: &'a [f64],
     /// How many trays have an answer.
     pub trays: usize,
 }
 
-/// Chooses questions; keeps the inner products between items and anchors.
-#[derive(Debug, Clone)]
-pub struct Asker {
-    seed: u64,
-    anchors: Vec<usize>,
-    /// One row an item: inner products with the anchors.
-    products: Vec<Vec<f32>>,
-    chosen_at: usize,
+impl Situation<'_> {
+    /// Whether there are answers enough for the sorter's doubts to mean something.
+    fn has_a_clue(&self) -> bool {
+        self.trays >= 2 && 2 * self.answered.len() >= 3 * self.trays
+    }
+
+    /// The items whose answers help most, each chosen as if those before it were answered; the first of several that
+    /// help the same. Fewer than `count` if there are no more candidates.
+    pub fn choose(&self, count: usize) -> Vec<usize> {
+        let n = self.graph.len();
+        let mut walk = Walk::new(n);
+        let root: Vec<f64> = (0..n).map(|item| self.graph.returning(item).sqrt()).collect();
+        let mut cover = vec![0.0_f64; n];
+        let take_in = |walk: &mut Walk, cover: &mut [f64], item: usize| {
+            walk.from(self.graph, item);
+            for &near in &walk.touched {
+                let near = near as usize;
+                cover[near] = cover[near].max(walk.sum[near] / (root[near] * root[item]));
+            }
+        };
+        for &item in self.answered {
+            take_in(&mut walk, &mut cover, item);
+        }
+        let clue = self.has_a_clue();
+        // Gains only fall while others are chosen, so an old gain bounds the new one from above.
+        let mut bounds: Vec<(usize, f64)> = self.candidates.iter().map(|&item| (item, f64::INFINITY)).collect();
+        let mut chosen = Vec::new();
+        while chosen.len() < count {
+            let mut best: Option<(usize, f64)> = None;
+            for (place, (item, bound)) in bounds.iter_mut().enumerate() {
+                if best.is_some_and(|(_, most)| *bound <= most) {
+                    continue;
+                }
+                walk.from(self.graph, *item);
+                let gain: f64 = walk
+                    .touched
+                    .iter()
+                    .map(|&near| {
+                        let near = near as usize;
+                        let more = (walk.sum[near] / (root[near] * root[*item]) - cover[near]).max(0.0);
+                        if clue { more * self.unsure[near] } else { more }
+                    })
+                    .sum();
+                *bound = gain;
+                if best.is_none_or(|(_, most)| gain > most) {
+                    best = Some((place, gain));
+                }
+            }
+            let Some((place, _)) = best else { break };
+            let (item, _) = bounds.remove(place);
+            take_in(&mut walk, &mut cover, item);
+            chosen.push(item);
+        }
+        chosen
+    }
 }
 
-impl Asker {
-    /// An asker whose sample of anchors is drawn with `seed`.
-    pub fn new(seed: u64) -> Self {
-        Self { seed, anchors: Vec::new(), products: Vec::new(), chosen_at: 0 }
+/// Walks of up to two steps from one item: its column of I + 0.9 S + (0.9 S)².
+struct Walk {
+    /// By item number.
+    sum: Vec<f64>,
+    /// The items with a sum, in the order they were reached.
+    touched: Vec<u32>,
+}
+
+impl Walk {
+    fn new(n: usize) -> Self {
+        Self { sum: vec![0.0; n], touched: Vec::new() }
     }
 
-    /// Takes in items that have arrived since.
-    fn catch_up(&mut self, pile: &Pile) {
-        let n = pile.len();
-        if n <= ANCHORS {
-            for item in self.products.len()..n {
-                for (other, row) in self.products.iter_mut().enumerate() {
-                    row.push(pile.product(other, item));
-                }
-                self.products.push((0..=item).map(|other| pile.product(item, other)).collect());
+    fn from(&mut self, graph: &Graph, item: usize) {
+        for &old in &self.touched {
+            self.sum[old as usize] = 0.0;
+        }
+        self.touched.clear();
+        self.reach(item, 1.0);
+        for (near, weight) in graph.neighbours(item) {
+            let weight = SPREAD * weight;
+            self.reach(near, weight);
+            for (far, onward) in graph.neighbours(near) {
+                self.reach(far, weight * SPREAD * onward);
             }
-            self.anchors = (0..n).collect();
-            self.chosen_at = n;
-        } else if n > self.chosen_at + self.chosen_at / 4 {
-            // A sample drawn while the pile was smaller would overlook what came last.
-            let mut rng = ChaCha8Rng::seed_from_u64(self.seed ^ n as u64);
-            self.anchors = index::sample(&mut rng, n, ANCHORS).into_vec();
-            self.anchors.sort_unstable();
-            self.products.clear();
-            self.chosen_at = n;
-        }
-        for item in self.products.len()..n {
-            self.products.push(self.anchors.iter().map(|&anchor| pile.product(item, anchor)).collect());
         }
     }
 
-    /// The item whose answer helps most, the first of several; `None` if there is no candidate.
-    pub fn next(&mut self, pile: &Pile, centre: &Centre, situation: &Situation) -> Option<usize> {
-        self.catch_up(pile);
-        let seen = |item: usize| pile.seen_from(centre, item);
-        let anchors: Vec<(usize, (f32, f32))> = self
-            .anchors
-            .iter()
-            .enumerate()
-            .filter(|&(_, &anchor)| pile.contains(anchor))
-            .map(|(column, &anchor)| (column, seen(anchor)))
-            .collect();
-        let fine = 2 * situation.answered.len() >= 3 * situation.trays.max(2);
-        let similarity = |item: usize, own: (f32, f32), (column, anchor): (usize, (f32, f32))| {
-            let cosine = f64::from(centre.cosine(self.products[item][column], own, anchor)).max(0.0);
-            if fine { cosine * cosine * cosine } else { cosine }
+    fn reach(&mut self, item: usize, weight: f64) {
+        if self.sum[item] == 0.0 {
+            self.touched.push(item as u32);
+        }
+        self.sum[item] += weight;
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::*;
+
+    /// K = I + 0.9 S + (0.9 S)² as a whole matrix, normalised.
+    fn kernel(graph: &Graph) -> Vec<Vec<f64>> {
+        let n = graph.len();
+        let mut s = vec![vec![0.0; n]; n];
+        for (item, row) in s.iter_mut().enumerate() {
+            graph.neighbours(item).for_each(|(other, weight)| row[other] = 0.9 * weight);
+        }
+        let square = |i: usize, j: usize| (0..n).map(|k| s[i][k] * s[k][j]).sum::<f64>();
+        let k = |i: usize, j: usize| f64::from(u8::from(i == j)) + s[i][j] + square(i, j);
+        (0..n).map(|i| (0..n).map(|j| k(i, j) / (k(i, i) * k(j, j)).sqrt()).collect()).collect()
+    }
+
+    fn worth(kernel: &[Vec<f64>], unsure: &[f64], asked: &[usize]) -> f64 {
+        let cover = |i: usize| asked.iter().map(|&k| kernel[i][k]).fold(0.0, f64::max);
+        (0..kernel.len()).map(|i| unsure[i] * cover(i)).sum()
+    }
+
+    proptest! {
+        /// Every choice adds as much as the best does by trying all, with the whole kernel written out.
+        #[test]
+        fn each_choice_is_the_best_by_brute_force(
+            cosines in prop::collection::vec(0.05_f32..1.0, 60),
+            unsure in prop::collection::vec(0.05_f64..1.0, 12),
+            first in 0_usize..12,
+            trays in 0_usize..3,
+        ) {
+            let nearest: Vec<Vec<(u32, f32)>> = (0..12_usize)
+                .map(|i| (1..4).map(|j| (((i * 5 + j * j) % 12) as u32, cosines[i * 5 + j])).collect())
+                .collect();
+            let graph = Graph::new(&nearest);
+            let kernel = kernel(&graph);
+            let candidates: Vec<usize> = (0..12).filter(|&item| item != first).collect();
+            let situation =
+                Situation { graph: &graph, answered: &[first], candidates: &candidates, unsure: &unsure, trays };
+            let chosen = situation.choose(5);
+            prop_assert_eq!(chosen.len(), 5);
+            // One answer is no clue yet: every item counts the same.
+            let weights = [1.0; 12];
+            let mut asked = vec![first];
+            for item in chosen {
+                let gain = |j: usize| {
+                    worth(&kernel, &weights, &[&asked[..], &[j]].concat()) - worth(&kernel, &weights, &asked)
+                };
+                let best = candidates.iter().filter(|j| !asked.contains(j)).map(|&j| gain(j)).fold(0.0, f64::max);
+                prop_assert!(gain(item) >= best - 1e-12);
+                asked.push(item);
+            }
+        }
+
+        #[test]
+        fn doubts_count_once_there_is_a_clue(unsure in prop::collection::vec(0.05_f64..1.0, 12)) {
+            let nearest: Vec<Vec<(u32, f32)>> =
+                (0..12_u32).map(|i| (1..4).map(|j| ((i + j) % 12, 0.9 - 0.1 * j as f32)).collect()).collect();
+            let graph = Graph::new(&nearest);
+            let kernel = kernel(&graph);
+            let answered = [0, 4, 8];
+            let candidates: Vec<usize> = (0..12).filter(|item| !answered.contains(item)).collect();
+            let situation =
+                Situation { graph: &graph, answered: &answered, candidates: &candidates, unsure: &unsure, trays: 2 };
+            let asked = situation.choose(1)[0];
+            let gain = |j: usize| worth(&kernel, &unsure, &[0, 4, 8, j]);
+            let best = candidates.iter().map(|&j| gain(j)).fold(0.0, f64::max);
+            prop_assert!(gain(asked) >= best - 1e-12);
+        }
+    }
+
+    #[test]
+    fn there_is_nothing_to_ask_without_candidates() {
+        let graph = Graph::new(&[vec![], vec![]]);
+        let ask = |candidates: &[usize]| {
+            Situation { graph: &graph, answered: &[], candidates, unsure: &[1.0, 1.0], trays: 0 }.choose(3)
         };
-
-        let mut cover = vec![0.0_f64; anchors.len()];
-        for &item in situation.answered {
-            let own = seen(item);
-            for (covered, &anchor) in cover.iter_mut().zip(&anchors) {
-                *covered = covered.max(similarity(item, own, anchor));
-            }
-        }
-        let mut best: Option<(usize, f64)> = None;
-        for &(item, unsure) in situation.candidates {
-            let own = seen(item);
-            let gain: f64 = cover
-                .iter()
-                .zip(&anchors)
-                .map(|(&covered, &anchor)| (similarity(item, own, anchor) - covered).max(0.0))
-                .sum();
-            let worth = if fine { gain * unsure } else { gain };
-            if best.is_none_or(|(_, most)| worth > most) {
-                best = Some((item, worth));
-            }
-        }
-        best.map(|(item, _)| item)
+        assert_eq!(ask(&[]), Vec::<usize>::new());
+        assert_eq!(ask(&[0, 1]), [0, 1], "items that are like nothing are asked about in order");
     }
 }

@@ -14,9 +14,10 @@
 //! | [`prior`] | what is known before the first example |
 //! | [`starter`] | what past piles taught, as one file |
 //! | [`whitening`] | how past categories scattered, taken out of the space |
-//! | [`pile`] | the items and their centre |
+//! | [`pile`] | the items, their centre, and what their likeness says |
 //! | [`trust`] | how far the result can be relied on |
 //! | [`ask`] | which item's answer helps most |
+//! | [`forecast`] | how much of the pile is sorted right, and what more answers would bring |
 //! | [`ledger`] | trays and answers, with undo and redo |
 //! | [`sorter`] | the façade |
 //! | [`meta`] | sums over past piles, small tasks drawn from labelled material, and rehearsing on them |
@@ -28,6 +29,7 @@ pub mod arithmetic;
 pub mod ask;
 pub mod encoder;
 mod error;
+pub mod forecast;
 pub mod head;
 pub mod learner;
 pub mod ledger;
@@ -47,6 +49,7 @@ pub mod whitening;
 mod js;
 
 pub use error::{Error, Result};
+pub use forecast::Outlook;
 pub use head::Head;
 pub use learner::LearnerKind;
 pub use prior::Prior;

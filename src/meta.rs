@@ -3,6 +3,7 @@
 
 pub mod episode;
 pub mod rehearse;
+pub mod replay;
 pub mod statistics;
 pub mod train;
 mod unroll;

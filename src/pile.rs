@@ -1,4 +1,8 @@
-//! The pile: every item's place in the space, and the pile's own centre.
+//! The pile: every item's place in the space, the pile's own centre, and its structure.
+
+pub mod graph;
+pub mod neighbours;
+pub mod propagation;
 
 use std::sync::Arc;
 
@@ -80,11 +84,11 @@ impl Pile {
     }
 
     /// Takes the items out of the pile that are `removed` and puts the others back. Cost O(n d) if anything changes: the
-    /// sum is taken anew, so that an item that went and came back leaves no trace in it.
-    pub(crate) fn set_removed(&mut self, removed: impl Fn(usize) -> bool) {
+    /// sum is taken anew, so that an item that went and came back leaves no trace in it. Tells whether anything changed.
+    pub(crate) fn set_removed(&mut self, removed: impl Fn(usize) -> bool) -> bool {
         let present: Vec<bool> = (0..self.len()).map(|item| !removed(item)).collect();
         if present == self.present {
-            return;
+            return false;
         }
         self.present = present;
         let mut sum = vec![0.0; self.space.dimension()];
@@ -92,6 +96,7 @@ impl Pile {
             sum.iter_mut().zip(self.place(item)).for_each(|(sum, &x)| *sum += f64::from(x));
         }
         self.sum = sum;
+        true
     }
 
     /// Whether the item is in the pile.

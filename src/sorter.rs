@@ -9,17 +9,23 @@ use serde::{Deserialize, Serialize};
 
 use crate::{
     arithmetic::{dot, row, softmax},
-    ask::{Asker, Situation},
+    ask::Situation,
     error::{Error, Result},
+    forecast::Outlook,
     head::Head,
     learner::{Learned, LearnerKind},
     ledger::{Action, Answer, Ledger},
-    pile::Pile,
+    pile::{
+        Pile,
+        graph::Graph,
+        neighbours::Neighbours,
+        propagation::{Propagation, Sight},
+    },
     prior::Prior,
     space::{CENTRE_CAUTION, Centre, Space},
     starter::Starter,
     support::Support,
-    trust::{Reason, Terms, neighbours::Neighbours},
+    trust::{Reason, Terms, neighbours::Neighbours as LookAlikes},
 };
 use trusting::Trusting;
 
@@ -119,11 +125,15 @@ pub struct Sorter {
     prior: Prior,
     pile: Pile,
     ledger: Ledger,
-    asker: Asker,
     terms: Terms,
-    neighbours: Neighbours,
+    look_alikes: LookAlikes,
     /// Who is near whom among the items that are in the pile now.
     nearest: Option<Vec<Vec<(usize, f64)>>>,
+    neighbours: Neighbours,
+    /// The graph of the items that are in the pile now.
+    graph: Option<Graph>,
+    propagation: Propagation,
+    one_by_one: bool,
     learnt: Option<Learnt>,
 }
 
@@ -134,10 +144,13 @@ impl Sorter {
             prior: Prior::default(),
             pile: Pile::new(settings.space),
             ledger: Ledger::default(),
-            asker: Asker::new(settings.seed),
             terms: Terms::default(),
-            neighbours: Neighbours::default(),
+            look_alikes: LookAlikes::default(),
             nearest: None,
+            neighbours: Neighbours::default(),
+            graph: None,
+            propagation: Propagation::default(),
+            one_by_one: false,
             learnt: None,
             settings,
         }
@@ -151,6 +164,14 @@ impl Sorter {
         let prior = starter.prior();
         let pile = Pile::with_starter(settings.space, starter)?;
         Ok(Self { prior, pile, ..Self::new(settings) })
+    }
+
+    /// The same sorter judging every item by itself, without what the pile's own structure says. For comparisons; the
+    /// saved state does not keep it.
+    pub fn one_by_one(mut self) -> Self {
+        self.one_by_one = true;
+        self.learnt = None;
+        self
     }
 
     /// What past piles taught, if anything.
@@ -175,6 +196,7 @@ impl Sorter {
         let same = self.ledger.add_item();
         debug_assert_eq!(item, same);
         self.nearest = None;
+        self.graph = None;
         self.learnt = None;
         Ok(item)
     }
@@ -263,14 +285,17 @@ impl Sorter {
     }
 
     fn follow_ledger(&mut self) {
-        self.pile.set_removed(|item| self.ledger.is_removed(item));
-        self.nearest = None;
+        if self.pile.set_removed(|item| self.ledger.is_removed(item)) {
+            self.nearest = None;
+            self.graph = None;
+        }
         self.learnt = None;
     }
 
     /// The verdict of every item number; `None` for removed items.
     ///
-    /// Learns anew if anything changed: O(n² d + n³) for n answers, and O(m C d) for m items and C trays.
+    /// Learns anew if anything changed: O(n² d + n³) for n answers, and O(m C d) for m items and C trays; and anew who is
+    /// near whom if the pile changed, O(m d) for each item that has arrived and O(m²).
     pub fn verdicts(&mut self) -> &[Option<Verdict>] {
         &self.learnt().verdicts
     }
@@ -292,20 +317,66 @@ impl Sorter {
         Ok(ranking)
     }
 
-    /// The item whose answer helps most; `None` when every item has an answer.
+    /// The item whose answer helps most; `None` when every item has an answer. Cost: that of [`Sorter::verdicts`] and of
+    /// [`crate::ask`].
     pub fn next_question(&mut self) -> Option<usize> {
-        self.learnt();
-        let learnt = self.learnt.as_ref()?;
-        let mut answered = Vec::new();
-        let mut candidates = Vec::new();
-        for item in self.pile.items() {
-            match (self.ledger.answer(item), learnt.verdicts[item]) {
-                (Answer::Open, Some(verdict)) => candidates.push((item, verdict.unsure())),
-                _ => answered.push(item),
-            }
+        self.next_questions(1).first().copied()
+    }
+
+    /// The items whose answers together help most, the most helpful first; fewer than `count` if fewer have no answer.
+    pub fn next_questions(&mut self, count: usize) -> Vec<usize> {
+        let open: Vec<usize> = self.pile.items().filter(|&item| self.ledger.answer(item) == Answer::Open).collect();
+        self.choose(&open, count)
+    }
+
+    /// Look-alikes to confirm at one go: up to `count` items without an answer that the sorter would rather put into this
+    /// tray than not, those whose answers together help most first. To confirm a strip the person must look at every
+    /// item of it, so each of them counts as an answer.
+    pub fn strip(&mut self, tray: usize, count: usize) -> Vec<usize> {
+        let fits = |verdict: &Verdict| {
+            verdict.answer == Answer::Open && verdict.tray == Some(tray) && verdict.probability > 0.5
+        };
+        let verdicts = self.verdicts();
+        let fitting: Vec<usize> =
+            (0..verdicts.len()).filter(|&item| verdicts[item].as_ref().is_some_and(fits)).collect();
+        self.choose(&fitting, count)
+    }
+
+    /// How much of what has no answer is expected to be sorted right, and what ten more answers would bring; `None` while
+    /// there are fewer than two trays with an answer or when every item has one.
+    pub fn outlook(&mut self) -> Option<Outlook> {
+        let verdicts = self.verdicts();
+        let sure: Vec<f64> = verdicts
+            .iter()
+            .flatten()
+            .filter(|verdict| matches!(verdict.answer, Answer::Open | Answer::Skipped) && verdict.tray.is_some())
+            .map(|verdict| verdict.probability)
+            .collect();
+        let trays = self.learnt().trays.len();
+        let answers = self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).count();
+        Outlook::new(&sure, answers, trays)
+    }
+
+    fn choose(&mut self, candidates: &[usize], count: usize) -> Vec<usize> {
+        if candidates.is_empty() {
+            return Vec::new();
         }
-        let situation = Situation { answered: &answered, candidates: &candidates, trays: learnt.trays.len() };
-        self.asker.next(&self.pile, &self.pile.centre(), &situation)
+        self.learnt();
+        self.graph();
+        let (Some(learnt), Some(graph)) = (&self.learnt, &self.graph) else { return Vec::new() };
+        let answered: Vec<usize> = self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).collect();
+        let unsure: Vec<f64> =
+            learnt.verdicts.iter().map(|verdict| verdict.as_ref().map_or(0.0, Verdict::unsure)).collect();
+        Situation { graph, answered: &answered, candidates, unsure: &unsure, trays: learnt.trays.len() }.choose(count)
+    }
+
+    /// The graph of the items in the pile, made anew if they changed.
+    fn graph(&mut self) -> &Graph {
+        self.neighbours.catch_up(&self.pile);
+        self.graph.get_or_insert_with(|| {
+            self.propagation = Propagation::default();
+            self.neighbours.graph(&self.pile)
+        })
     }
 
     fn learnt(&mut self) -> &Learnt {
@@ -323,8 +394,9 @@ impl Sorter {
         let (probabilities, trusting) = match self.support(&trays, &centre) {
             Some(support) => {
                 let learned = self.learned(&support);
-                let probabilities = self.probabilities(&learned.head, &centre);
-                let trusting = self.trusting(&trays, &centre, support, &learned, &probabilities);
+                let mut probabilities = self.probabilities(&learned.head, &centre);
+                let heard = self.hear_the_pile(&trays, &support, &learned, &mut probabilities);
+                let trusting = self.trusting(&trays, &centre, support, &learned, (&probabilities, heard));
                 (Some(probabilities), Some(trusting))
             }
             None => (None, None),
@@ -363,6 +435,42 @@ impl Sorter {
         let others = self.pile.items().count().saturating_sub(support.len()) as f64;
         let prior = Prior { centre_known: others / (others + CENTRE_CAUTION), ..self.prior.clone() };
         self.settings.learner.learn(support, &prior)
+    }
+
+    /// Mixes what the pile's own structure says into the probabilities of all items, as far as the answers bear it out; and
+    /// its share in the mix, 0 to 1.
+    fn hear_the_pile(
+        &mut self,
+        trays: &[usize],
+        support: &Support,
+        learned: &Learned,
+        probabilities: &mut Array2<f64>,
+    ) -> f64 {
+        if self.one_by_one {
+            return 0.0;
+        }
+        let mut members = vec![Vec::new(); trays.len()];
+        for ((item, _), &label) in self.ledger.answered().zip(support.labels()) {
+            members[label].push(item);
+        }
+        self.graph();
+        let Some(graph) = &self.graph else { return 0.0 };
+        self.propagation.update(graph, &members);
+        let sights =
+            self.ledger.answered().zip(support.labels()).enumerate().filter_map(|(example, ((item, _), &label))| {
+                let learner = softmax(learned.left_out.get(example)?)[label];
+                let pile = self.propagation.left_out(item, label)?[label];
+                Some(Sight { learner, pile })
+            });
+        let weight = Sight::weight(sights);
+        for item in self.pile.items() {
+            if let Some(said) = self.propagation.probabilities(item) {
+                for (probability, said) in probabilities.row_mut(item).iter_mut().zip(said) {
+                    *probability += weight * (said - *probability);
+                }
+            }
+        }
+        weight
     }
 
     /// Probabilities of all items, seen from the centre without moving any: W (u − μ)/‖u − μ‖ + b.

@@ -189,8 +189,8 @@ fn a_refused_item_leaves_the_sorter_as_it_was() {
 }
 
 #[test]
-fn piles_larger_than_the_sample_of_anchors_are_asked_about() {
-    let items = clouds(5, kenspeckle::ask::ANCHORS + 300, 9);
+fn piles_too_large_to_compare_all_pairs_are_asked_about() {
+    let items = clouds(5, kenspeckle::pile::neighbours::EXACT + 300, 9);
     let mut sorter = filled(LearnerKind::Auto, &items);
     answer(&mut sorter, &items, 15);
     assert!(share_right(&mut sorter, &items) > 0.9);

@@ -18,6 +18,15 @@ use crate::error::{Error, Result};
 /// In uneven episodes each category has this times as many items as the one before.
 const UNEVEN_RATIO: f64 = 0.66;
 
+/// The share of each of so many categories, the first the largest: equal, or each [`UNEVEN_RATIO`] times the one before.
+/// Products and sums only, so that rounding falls the same way everywhere.
+pub(super) fn shares(ways: usize, uneven: bool) -> Vec<f64> {
+    let ratio = if uneven { UNEVEN_RATIO } else { 1.0 };
+    let weights: Vec<f64> = std::iter::successors(Some(1.0), |weight| Some(weight * ratio)).take(ways).collect();
+    let whole: f64 = weights.iter().sum();
+    weights.into_iter().map(|weight| weight / whole).collect()
+}
+
 /// Items by category.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Labelled {
@@ -94,11 +103,8 @@ impl Design {
         if !self.uneven {
             return vec![mean; ways];
         }
-        // Products and sums only, so that rounding falls the same way everywhere.
-        let weights: Vec<f64> =
-            std::iter::successors(Some(1.0), |weight| Some(weight * UNEVEN_RATIO)).take(ways).collect();
-        let unit = (mean * ways) as f64 / weights.iter().sum::<f64>();
-        weights.iter().map(|weight| ((weight * unit).round() as usize).max(1)).collect()
+        let all = (mean * ways) as f64;
+        shares(ways, true).iter().map(|share| ((share * all).round() as usize).max(1)).collect()
     }
 }
 

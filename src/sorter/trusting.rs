@@ -140,14 +140,21 @@ impl Sorter {
         centre: &Centre,
         support: Support,
         learned: &Learned,
-        probabilities: &Array2<f64>,
+        (probabilities, heard): (&Array2<f64>, f64),
     ) -> Trusting {
         let items: Vec<usize> = self.ledger.answered().map(|(item, _)| item).collect();
         let mut evidence = Evidence::new(support.labels(), trays.len());
         for (example, logits) in learned.left_out.iter() {
-            evidence.set(example, softmax(logits).view());
+            let mut own = softmax(logits);
+            // As the item would be sorted: with the pile's share in it.
+            if let Some(said) = self.propagation.left_out(items[example], support.labels()[example])
+                && heard > 0.0
+            {
+                own.iter_mut().zip(said).for_each(|(own, said)| *own += heard * (said - *own));
+            }
+            evidence.set(example, own.view());
         }
-        let nearest = self.nearest.get_or_insert_with(|| self.neighbours.nearest(&self.pile));
+        let nearest = self.nearest.get_or_insert_with(|| self.look_alikes.nearest(&self.pile));
         let (pile, ledger) = (&self.pile, &self.ledger);
         let open = |&item: &usize| matches!(ledger.answer(item), Answer::Open | Answer::Skipped);
         let rows = pile.items().filter(open).map(|item| probabilities.row(item));
