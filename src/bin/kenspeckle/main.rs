@@ -3,6 +3,7 @@
 //! One file a command; [`material`] reads what is outside, through [`photos`], [`notes`], [`vectors`] and [`labelled`];
 //! [`output`] writes, [`console`] speaks to the person.
 
+mod ask;
 mod assess;
 mod console;
 mod embed;
@@ -15,6 +16,7 @@ mod parallel;
 mod photos;
 mod plot;
 mod rehearse;
+mod replay;
 mod report;
 mod sort;
 mod spot_check;
@@ -49,6 +51,7 @@ struct Arguments {
 #[derive(Subcommand)]
 enum Command {
     Sort(sort::Sort),
+    Ask(ask::Ask),
     Assess(assess::Assess),
     Embed(embed::Embed),
     Rehearse(rehearse::Rehearse),
@@ -61,6 +64,7 @@ fn main() -> ExitCode {
     console::watch_for_stop();
     let done = match arguments.command {
         Command::Sort(sort) => sort.run(),
+        Command::Ask(ask) => ask.run(),
         Command::Assess(assess) => assess.run(),
         Command::Embed(embed) => embed.run(),
         Command::Rehearse(rehearse) => rehearse.run(),

@@ -47,21 +47,63 @@ struct Point {
     high: f64,
 }
 
-/// The picture as an SVG file.
+/// A curve: a name, and for each number on the axis the mean with its interval, in %.
+pub struct Curve {
+    /// What it is called.
+    pub name: String,
+    /// (number, mean, low, high).
+    pub points: Vec<(usize, f64, f64, f64)>,
+}
+
+/// What is drawn, and what is written around it.
+pub struct Picture<'a> {
+    /// The heading.
+    pub title: &'a str,
+    /// One line below it.
+    pub subtitle: String,
+    /// The picture in words: every number that matters in it.
+    pub description: String,
+    /// What the numbers on the axis count.
+    pub axis: &'a str,
+    /// At most four curves over the same numbers.
+    pub curves: Vec<Curve>,
+}
+
+/// The picture of learners' shares over the number of examples.
 pub fn draw(report: &Report) -> String {
     let shots = report.design.shots();
-    let shown = shown(report.contenders.len());
-    let lines: Vec<Vec<Point>> = shown
+    let curve = |contender: usize| {
+        let point = |(at, &shot): (usize, &usize)| {
+            let found = report.summary.accuracy(contender, at);
+            let (mean, half) = (100.0 * found.mean, 100.0 * found.half_width);
+            (shot, mean, (mean - half).max(0.0), (mean + half).min(100.0))
+        };
+        Curve { name: report.contenders[contender].to_owned(), points: shots.iter().enumerate().map(point).collect() }
+    };
+    svg(&Picture {
+        title: "Sorted right, by number of examples",
+        subtitle: format!("{} draws of {} categories; bands are 95 % intervals", report.episodes, report.ways),
+        description: description(report),
+        axis: "examples of each category",
+        curves: shown(report.contenders.len()).into_iter().map(curve).collect(),
+    })
+}
+
+/// The picture as an SVG file.
+pub fn svg(picture: &Picture) -> String {
+    let numbers: Vec<usize> = picture.curves[0].points.iter().map(|&(number, ..)| number).collect();
+    let lines: Vec<Vec<Point>> = picture
+        .curves
         .iter()
         .enumerate()
-        .map(|(position, &contender)| {
-            let point = |(at, &shot): (usize, &usize)| {
-                let found = report.summary.accuracy(contender, at);
-                let (mean, half) = (100.0 * found.mean, 100.0 * found.half_width);
-                let x = across(shot, &shots, position, shown.len());
-                Point { x, mean, low: (mean - half).max(0.0), high: (mean + half).min(100.0) }
+        .map(|(position, curve)| {
+            let point = |&(number, mean, low, high): &(usize, f64, f64, f64)| Point {
+                x: across(number, &numbers, position, picture.curves.len()),
+                mean,
+                low,
+                high,
             };
-            shots.iter().enumerate().map(point).collect()
+            curve.points.iter().map(point).collect()
         })
         .collect();
     let points = || lines.iter().flatten();
@@ -73,20 +115,21 @@ pub fn draw(report: &Report) -> String {
     let mut svg = format!(
         "<svg xmlns=\"http://www.w3.org/2000/svg\" viewBox=\"0 0 {WIDTH} {HEIGHT}\" width=\"{WIDTH}\" \
          height=\"{HEIGHT}\" role=\"img\" aria-labelledby=\"title desc\">\n\
-         <title id=\"title\">Sorted right, by number of examples</title>\n\
+         <title id=\"title\">{}</title>\n\
          <desc id=\"desc\">{}</desc>\n\
          <style>\n{STYLE}</style>\n\
          <rect class=\"paper\" width=\"{WIDTH}\" height=\"{HEIGHT}\"/>\n\
-         <text class=\"title\" x=\"{LEFT}\" y=\"34\">Sorted right, by number of examples</text>\n\
-         <text class=\"faint\" x=\"{LEFT}\" y=\"56\">{} draws of {} categories; bands are 95 % intervals</text>\n",
-        escaped(&description(report)),
-        report.episodes,
-        report.ways,
+         <text class=\"title\" x=\"{LEFT}\" y=\"34\">{}</text>\n\
+         <text class=\"faint\" x=\"{LEFT}\" y=\"56\">{}</text>\n",
+        escaped(picture.title),
+        escaped(&picture.description),
+        escaped(picture.title),
+        escaped(&picture.subtitle),
     );
-    axes(&mut svg, &scale, &shots);
+    axes(&mut svg, &scale, &numbers, picture.axis);
     let heights = apart(lines.iter().map(|line| line.last().map_or(BOTTOM, |point| scale.down(point.mean))).collect());
     for (position, line) in lines.iter().enumerate().rev() {
-        let label = Label { name: report.contenders[shown[position]], height: heights[position] };
+        let label = Label { name: &picture.curves[position].name, height: heights[position] };
         contender_line(&mut svg, &scale, position, line, &label);
     }
     svg + "</svg>\n"
@@ -133,7 +176,7 @@ impl Scale {
     }
 }
 
-fn axes(svg: &mut String, scale: &Scale, shots: &[usize]) {
+fn axes(svg: &mut String, scale: &Scale, shots: &[usize], axis: &str) {
     let steps = ((scale.high - scale.low) / scale.step).round() as usize;
     for step in 0..=steps {
         let value = scale.low + scale.step * step as f64;
@@ -156,7 +199,7 @@ fn axes(svg: &mut String, scale: &Scale, shots: &[usize]) {
         }
     }
     let (x, y) = ((LEFT + RIGHT) / 2.0, BOTTOM + 48.0);
-    let _ = writeln!(svg, "<text x=\"{x}\" y=\"{y}\" text-anchor=\"middle\">examples of each category</text>");
+    let _ = writeln!(svg, "<text x=\"{x}\" y=\"{y}\" text-anchor=\"middle\">{}</text>", escaped(axis));
 }
 
 /// A contender's name, and where it stands at the right.

@@ -23,7 +23,7 @@ use kenspeckle::{
 use crate::{
     console::{self, Failure},
     material::{self, Labelled as Read, Reading},
-    output, plot,
+    output, plot, replay,
     report::Report,
     sort::read_starter,
 };
@@ -73,6 +73,11 @@ pub struct Rehearse {
     /// starter than for the rehearsal: on what it was learned from it looks better than it is.
     #[arg(long, value_name = "FILE.starter")]
     starter: Option<PathBuf>,
+    /// Sort without what the pile's own structure says too, for comparison.
+    #[arg(long, conflicts_with = "starter")]
+    one_by_one: bool,
+    #[command(flatten)]
+    whole: replay::Whole,
     /// Seed of everything that is drawn: the same seed gives the same result.
     #[arg(long, default_value_t = 1)]
     seed: u64,
@@ -87,7 +92,8 @@ pub struct Rehearse {
     plot: Option<PathBuf>,
 }
 
-fn at_least<const LEAST: usize, const MOST: usize>(text: &str) -> Result<NonZeroUsize, String> {
+/// A whole number from `LEAST` to `MOST`, as typed.
+pub fn at_least<const LEAST: usize, const MOST: usize>(text: &str) -> Result<NonZeroUsize, String> {
     text.trim()
         .parse()
         .ok()
@@ -96,16 +102,21 @@ fn at_least<const LEAST: usize, const MOST: usize>(text: &str) -> Result<NonZero
 }
 
 /// Labelled material, checked and ready to be drawn from.
-struct Material {
-    encoder: String,
-    space: Space,
+pub struct Material {
+    /// The encoder's identity.
+    pub encoder: String,
+    /// The space of the embeddings.
+    pub space: Space,
     /// What its items are called.
-    noun: &'static str,
-    categories: Vec<String>,
-    embeddings: Vec<Vec<f32>>,
+    pub noun: &'static str,
+    /// Names, in order.
+    pub categories: Vec<String>,
+    /// One an item.
+    pub embeddings: Vec<Vec<f32>>,
     /// Each item's position among the categories.
-    labels: Vec<usize>,
-    troubles: usize,
+    pub labels: Vec<usize>,
+    /// How many items could not be read.
+    pub troubles: usize,
 }
 
 impl Rehearse {
@@ -119,6 +130,13 @@ impl Rehearse {
             .iter()
             .map(|&kind| Contender { name: kind.name().to_owned(), sorter: Sorter::new(settings(kind)) })
             .collect();
+        if self.one_by_one {
+            let alone = |contender: &Contender| Contender {
+                name: format!("{}, one by one", contender.name),
+                sorter: contender.sorter.clone().one_by_one(),
+            };
+            contenders.extend(contenders.iter().map(alone).collect::<Vec<_>>());
+        }
         if let Some(path) = &self.starter {
             let starter = Arc::new(read_starter(path)?);
             for kind in kinds {
@@ -141,6 +159,20 @@ impl Rehearse {
         let read = material::labelled(&self.labelled, self.labels.as_deref(), &self.reading, "examples")?;
         let material = self.gather(read)?;
         let labelled = Labelled::new(&material.labels, material.categories.len()).map_err(Failure::because)?;
+        if let Some(answers) = self.whole.answers {
+            let options = replay::Options {
+                answers,
+                uneven: self.uneven,
+                seed: self.seed,
+                learner: self.learner.first().copied().unwrap_or_default(),
+                starter: self.starter.as_deref(),
+                threads: self.threads,
+                json: self.json,
+                plot: self.plot.as_deref(),
+            };
+            self.whole.run(&material, labelled, &options)?;
+            return Ok(material.troubles);
+        }
         let sizes: Vec<usize> = (0..labelled.categories()).map(|category| labelled.members(category).len()).collect();
         let design = self.design(&material, &sizes)?;
         say_left_out(&material, &sizes, &design);
@@ -264,34 +296,42 @@ impl Rehearse {
 
     /// Plays every episode, several at a time; the result is in order whoever played it.
     fn play(&self, rehearsal: &Rehearsal) -> Result<Vec<Played>, Failure> {
-        let episodes = self.episodes.get();
-        let workers = self.threads.or_else(|| thread::available_parallelism().ok()).map_or(1, NonZeroUsize::get);
-        let bar = console::progress(episodes, "rehearsing");
-        let next = AtomicU64::new(0);
-        let work = || {
-            let mut done = Vec::new();
-            while !console::stopped() {
-                let number = next.fetch_add(1, Ordering::Relaxed);
-                if number >= episodes as u64 {
-                    break;
-                }
-                done.push((number, rehearsal.play(number)));
-                bar.inc(1);
-            }
-            done
-        };
-        let mut done: Vec<(u64, kenspeckle::Result<Played>)> = thread::scope(|scope| {
-            let workers: Vec<_> = (0..workers.min(episodes)).map(|_| scope.spawn(work)).collect();
-            workers
-                .into_iter()
-                .flat_map(|worker| worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
-                .collect()
-        });
-        bar.finish_and_clear();
-        console::go_on()?;
-        done.sort_by_key(|&(number, _)| number);
-        done.into_iter().map(|(_, played)| played.map_err(Failure::because)).collect()
+        play_all(self.episodes.get(), self.threads, |number| rehearsal.play(number))
     }
+}
+
+/// Plays numbers 0, 1, 2 … several at a time; the result is in order whoever played it.
+pub fn play_all<T: Send>(
+    episodes: usize,
+    threads: Option<NonZeroUsize>,
+    play: impl Fn(u64) -> kenspeckle::Result<T> + Sync,
+) -> Result<Vec<T>, Failure> {
+    let workers = threads.or_else(|| thread::available_parallelism().ok()).map_or(1, NonZeroUsize::get);
+    let bar = console::progress(episodes, "rehearsing");
+    let next = AtomicU64::new(0);
+    let work = || {
+        let mut done = Vec::new();
+        while !console::stopped() {
+            let number = next.fetch_add(1, Ordering::Relaxed);
+            if number >= episodes as u64 {
+                break;
+            }
+            done.push((number, play(number)));
+            bar.inc(1);
+        }
+        done
+    };
+    let mut done: Vec<(u64, kenspeckle::Result<T>)> = thread::scope(|scope| {
+        let workers: Vec<_> = (0..workers.min(episodes)).map(|_| scope.spawn(work)).collect();
+        workers
+            .into_iter()
+            .flat_map(|worker| worker.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
+            .collect()
+    });
+    bar.finish_and_clear();
+    console::go_on()?;
+    done.sort_by_key(|&(number, _)| number);
+    done.into_iter().map(|(_, played)| played.map_err(Failure::because)).collect()
 }
 
 /// A number of examples, in words.
