@@ -4,7 +4,7 @@ use serde::{Deserialize, Serialize};
 use wasm_bindgen::prelude::*;
 
 use super::{OrThrow, js_error, starter::GivenStarter};
-use crate::{LearnerKind, Settings, Space, ledger::Answer, sorter, trust::Reason};
+use crate::{LearnerKind, Settings, Space, forecast, ledger::Answer, sorter, trust::Reason};
 
 fn to_js(value: &impl Serialize) -> JsValue {
     serde_wasm_bindgen::to_value(value).unwrap_or(JsValue::UNDEFINED)
@@ -59,6 +59,19 @@ export interface RankedTray {
   probability: number;
 }
 
+/** Shares from 0 to 1; the interval holds the truth in about 95 of 100 piles. */
+export interface ShareRange {
+  low: number;
+  expected: number;
+  high: number;
+}
+
+/** How much of what has no answer is sorted right, now and after ten more answers to the sorter's own questions. */
+export interface Outlook {
+  now: ShareRange;
+  afterTenMore: ShareRange;
+}
+
 export type ActionName =
   | "answer" | "none" | "skip" | "withdraw" | "add-tray" | "rename-tray" | "merge-trays" | "remove-tray" | "remove-item";
 "#;
@@ -79,6 +92,9 @@ extern "C" {
     /// A ranking for JavaScript.
     #[wasm_bindgen(typescript_type = "RankedTray[]")]
     pub type RankedTrays;
+    /// An outlook for JavaScript.
+    #[wasm_bindgen(typescript_type = "Outlook | undefined")]
+    pub type Outlook;
     /// An action's name.
     #[wasm_bindgen(typescript_type = "ActionName | undefined")]
     pub type ActionName;
@@ -111,6 +127,26 @@ struct Tray<'a> {
 struct RankedTray {
     tray: usize,
     probability: f64,
+}
+
+#[derive(Serialize)]
+struct ShareRange {
+    low: f64,
+    expected: f64,
+    high: f64,
+}
+
+impl From<forecast::Range> for ShareRange {
+    fn from(range: forecast::Range) -> Self {
+        Self { low: range.low, expected: range.expected, high: range.high }
+    }
+}
+
+#[derive(Serialize)]
+#[serde(rename_all = "camelCase")]
+struct OutlookShown {
+    now: ShareRange,
+    after_ten_more: ShareRange,
 }
 
 /// Sorts a pile by the answers given so far. Calls are synchronous: use it in a worker.
@@ -289,6 +325,27 @@ impl Sorter {
     #[wasm_bindgen(js_name = nextQuestion)]
     pub fn next_question(&mut self) -> Option<usize> {
         self.0.next_question()
+    }
+
+    /// The items whose answers together help most, the most helpful first; fewer than `count` if fewer have no answer.
+    #[wasm_bindgen(js_name = nextQuestions)]
+    pub fn next_questions(&mut self, count: usize) -> Vec<u32> {
+        self.0.next_questions(count).into_iter().map(|item| item as u32).collect()
+    }
+
+    /// Look-alikes to confirm at one go with `answerAll`: up to `count` items without an answer that the sorter would rather
+    /// put into this tray than not. The person must look at each of them, so each counts as an answer.
+    pub fn strip(&mut self, tray: usize, count: usize) -> Vec<u32> {
+        self.0.strip(tray, count).into_iter().map(|item| item as u32).collect()
+    }
+
+    /// When to stop: what is sorted right by now and what ten more answers would bring; `undefined` while there are fewer
+    /// than two trays with an answer, or when every item has one.
+    pub fn outlook(&mut self) -> Outlook {
+        let shown = |outlook: forecast::Outlook| {
+            to_js(&OutlookShown { now: outlook.now.into(), after_ten_more: outlook.after_more.into() })
+        };
+        self.0.outlook().map_or(JsValue::UNDEFINED, shown).into()
     }
 
     /// Trays with an answer, most probable first; empty while there are fewer than two.

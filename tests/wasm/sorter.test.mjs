@@ -123,6 +123,47 @@ describe("errors", () => {
   });
 });
 
+describe("asking", () => {
+  const { vectors, answers, chosen } = JSON.parse(readFileSync(join(root, "tests/data/propagation.json"), "utf8"));
+  const begin = () => {
+    const sorter = new Sorter({ encoder: "vectors", dimension: vectors[0].length, nonNegative: false });
+    for (const row of vectors) sorter.addItem(Float32Array.from(row));
+    return sorter;
+  };
+
+  test("questions are those that numpy chooses", () => {
+    const sorter = begin();
+    assert.deepEqual([...sorter.nextQuestions(chosen.length)], chosen);
+    assert.equal(sorter.nextQuestion(), chosen[0]);
+    assert.equal(sorter.outlook(), undefined);
+    sorter.free();
+  });
+
+  test("the same questions and probabilities as the program", () => {
+    const sorter = begin();
+    writeFileSync(join(folder, "asked.npy"), npy(vectors));
+    const wishes = answers.map(([item, tray]) => ({ do: "answer", tray: `t${tray}`, items: [String(item)] }));
+    const input = [...wishes, { do: "strip", tray: "t0", count: 5 }, { do: "stop" }].map((wish) => JSON.stringify(wish) + "\n").join("");
+    const output = execFileSync(program, ["ask", "asked.npy", "--json"], { cwd: folder, input, stdio: ["pipe", "pipe", "ignore"] });
+    const lines = output.toString().trim().split("\n").map((line) => JSON.parse(line));
+    const trays = new Map();
+    for (const [item, name] of answers) {
+      if (!trays.has(name)) trays.set(name, sorter.answerNew(item, `t${name}`));
+      else sorter.answer(item, trays.get(name));
+    }
+    const question = lines.at(-1);
+    assert.equal(String(sorter.nextQuestion()), question.ask);
+    const names = new Map(sorter.trays().map(({ tray, name }) => [tray, name]));
+    const ranked = sorter.ranking(sorter.nextQuestion()).map(({ tray, probability }) => ({ name: names.get(tray), probability }));
+    assert.deepEqual(ranked, question.trays);
+    const { now, afterTenMore } = sorter.outlook();
+    assert.deepEqual([now.low, now.expected, now.high], question.outlook.now);
+    assert.deepEqual([afterTenMore.low, afterTenMore.expected, afterTenMore.high], question.outlook.after_ten_more);
+    assert.deepEqual([...sorter.strip(trays.get(0), 5)].map(String), lines.at(-2).strip);
+    sorter.free();
+  });
+});
+
 test("the whole surface: answer, undo, save, restore", () => {
   const sorter = new Sorter({ encoder: "e", dimension: 2, nonNegative: false, seed: 3 });
   const rows = [[1, 0.1], [0.9, -0.1], [0.1, 1], [-0.2, 0.9], [1, -0.2]];
