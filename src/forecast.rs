@@ -35,9 +35,13 @@ pub const MORE: usize = 10;
 const Z: f64 = 1.959_963_984_540_054;
 
 impl Outlook {
-    /// From the probabilities of the items without an answer, the number of answers and that of the trays with one;
-    /// `None` for no item or fewer than two trays. Cost O(n).
-    pub fn new(sure: &[f64], answers: usize, trays: usize) -> Option<Self> {
+    /// From the probabilities of the items without an answer, the number of answers, that of the trays with one, and that of
+    /// the trays with just one; `None` for no item or fewer than two trays. Cost O(n).
+    ///
+    /// The share of answers that are the only one in their tray estimates how much of the pile belongs in trays that nobody
+    /// has met yet (Good 1953), and too highly, since questions go to what is unlike the rest: it counts for the lower end
+    /// alone.
+    pub fn new(sure: &[f64], answers: usize, trays: usize, single: usize) -> Option<Self> {
         if sure.is_empty() || trays < 2 || answers == 0 {
             return None;
         }
@@ -49,7 +53,8 @@ impl Outlook {
         // Even with probabilities that hold, as many items as these scatter.
         let scatter = 1.0 / (n * (share * (1.0 - share)).max(1e-3));
         let spread = Z * (SPREAD * SPREAD * (1.0 + 1.0 / shot) + scatter).sqrt();
-        let (low, high) = (from_log_odds(centre - spread), from_log_odds(centre + spread));
+        let met = 1.0 - single as f64 / answers as f64;
+        let (low, high) = (met * from_log_odds(centre - spread), from_log_odds(centre + spread));
         let growth = libm::log((answers + MORE) as f64 / answers as f64);
         let fall = |share: f64, power: f64| 1.0 - (1.0 - share) * libm::exp(-power * growth);
         let now = Range::whole(low, share, high, n);
@@ -95,8 +100,9 @@ mod tests {
             sure in prop::collection::vec(0.0_f64..=1.0, 1..60),
             answers in 2_usize..400,
             trays in 2_usize..30,
+            single in 0_usize..30,
         ) {
-            let outlook = Outlook::new(&sure, answers, trays).unwrap();
+            let outlook = Outlook::new(&sure, answers, trays, single.min(answers)).unwrap();
             for Range { low, expected, high } in [outlook.now, outlook.after_more] {
                 prop_assert!(0.0 <= low && low <= expected && expected <= high && high <= 1.0);
             }
@@ -107,16 +113,22 @@ mod tests {
     #[test]
     fn more_answers_make_it_surer() {
         let width = |answers| {
-            let Range { low, high, .. } = Outlook::new(&[0.7; 400], answers, 8).unwrap().now;
+            let Range { low, high, .. } = Outlook::new(&[0.7; 400], answers, 8, 0).unwrap().now;
             high - low
         };
         assert!(width(64) < width(32) && width(32) < width(16));
     }
 
     #[test]
+    fn trays_with_one_answer_tell_of_others() {
+        let low = |single| Outlook::new(&[0.9; 50], 3, 2, single).unwrap().now.low;
+        assert!(low(1) < 0.7 * low(0) && low(0) > 0.0);
+    }
+
+    #[test]
     fn there_is_nothing_to_expect_of_nothing() {
-        assert_eq!(Outlook::new(&[], 10, 3), None);
-        assert_eq!(Outlook::new(&[0.5], 10, 1), None);
-        assert_eq!(Outlook::new(&[0.5], 0, 2), None);
+        assert_eq!(Outlook::new(&[], 10, 3, 0), None);
+        assert_eq!(Outlook::new(&[0.5], 10, 1, 0), None);
+        assert_eq!(Outlook::new(&[0.5], 0, 2, 0), None);
     }
 }

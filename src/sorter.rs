@@ -352,9 +352,11 @@ impl Sorter {
             .filter(|verdict| matches!(verdict.answer, Answer::Open | Answer::Skipped) && verdict.tray.is_some())
             .map(|verdict| verdict.probability)
             .collect();
-        let trays = self.learnt().trays.len();
+        let trays = self.learnt().trays.clone();
+        let in_tray = |tray| self.ledger.answered().filter(|&(_, own)| own == tray).count();
+        let single = trays.iter().filter(|&&tray| in_tray(tray) == 1).count();
         let answers = self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).count();
-        Outlook::new(&sure, answers, trays)
+        Outlook::new(&sure, answers, trays.len(), single)
     }
 
     fn choose(&mut self, candidates: &[usize], count: usize) -> Vec<usize> {
