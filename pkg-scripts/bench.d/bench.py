@@ -8,6 +8,7 @@ from datetime import date
 
 import accuracy
 import adaptation
+import asking
 import page
 import sets
 import trust
@@ -24,6 +25,7 @@ def say(text):
 BENCHMARKS = {
     "accuracy": lambda asked: accuracy.run(asked.sets, asked.ways, asked.shots, asked.episodes, asked.seed, say),
     "adaptation": lambda asked: adaptation.run(say),
+    "asking": lambda asked: asking.run(asked.repeats, asked.seed, say),
     "trust": lambda asked: trust.run(asked.episodes, asked.seed, say),
     "page": lambda asked: page.run(say),
 }
@@ -62,6 +64,7 @@ def main():
     parser.add_argument("--ways", type=listed(int), default=accuracy.WAYS, help="accuracy: so many categories a task (default 5,20); a set with fewer takes all it has")
     parser.add_argument("--shots", type=listed(int), default=accuracy.SHOTS, help="accuracy: so many examples a category (default 1,2,5,10)")
     parser.add_argument("--episodes", type=int, default=EPISODES, help=f"accuracy: episodes a condition (default {EPISODES}; {accuracy.MANY} categories at once get at most {accuracy.EPISODES_OF_MANY})")
+    parser.add_argument("--repeats", type=int, default=20, help="asking: so many piles a condition (default 20)")
     parser.add_argument("--seed", type=int, default=SEED)
     arguments = parser.parse_args()
     unknown = [what for what in arguments.what if what not in BENCHMARKS]
