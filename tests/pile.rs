@@ -111,7 +111,7 @@ fn the_weight_follows_the_evidence() {
     assert_eq!(Sight::weight(sights(0.9, 0.9, 50)), 0.5);
     assert!(Sight::weight(sights(0.9, 0.1, 50)) < 0.1);
     assert!(Sight::weight(sights(0.1, 0.9, 50)) > 0.9);
-    assert!((0.3..0.5).contains(&Sight::weight(sights(0.9, 0.6, 4))));
+    assert!((0.3..0.5).contains(&Sight::weight(sights(0.9, 0.6, 12))));
 }
 
 proptest! {

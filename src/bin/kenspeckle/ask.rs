@@ -542,10 +542,11 @@ impl Session {
         let header = ["item", "tray", "probability", "answered"].map(str::to_owned).to_vec();
         let rows = self.known.iter().zip(&verdicts).filter_map(|(known, verdict)| {
             let verdict = (*verdict)?;
-            let tray = verdict.tray.and_then(|tray| trays.get(&tray)).map_or("", String::as_str);
+            let sorted = verdict.tray.filter(|_| verdict.set_aside.is_none());
+            let tray = sorted.and_then(|tray| trays.get(&tray)).map_or("", String::as_str);
             let answered = if matches!(verdict.answer, Answer::Tray(_) | Answer::None) { "yes" } else { "no" };
             Some(vec![
-                output::cell(name),
+                output::cell(&known.name),
                 output::cell(tray),
                 format!("{:.4}", verdict.probability),
                 answered.to_owned(),
