@@ -312,13 +312,13 @@ impl Ask {
                 text += &format!("  {:>2}  {}{sure}\n", place + 1, plain(name));
             }
             text += "Number or new name; - none of these, ? can't tell, = NUMBER several alike, u undo, q stop: ";
-            if let Some(program) = &self.open {
-                if Kind::of(&self.pile) == Kind::Photos {
-                    let path = self.pile.join(&session.known[item].name);
-                    // Left running: a viewer may stay open while the person answers.
-                    if let Err(error) = Command::new(program).arg(path).spawn() {
-                        console::say(&format!("{}: it can't be started ({error})", program.display()));
-                    }
+            if let Some(program) = &self.open
+                && Kind::of(&self.pile) == Kind::Photos
+            {
+                let path = self.pile.join(&session.known[item].name);
+                // Left running: a viewer may stay open while the person answers.
+                if let Err(error) = Command::new(program).arg(path).spawn() {
+                    console::say(&format!("{}: it can't be started ({error})", program.display()));
                 }
             }
         }
