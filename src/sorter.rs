@@ -523,6 +523,8 @@ impl Sorter {
             fresh.pile.add(embedding)?;
         }
         fresh.ledger = self.ledger.clone();
+        fresh.terms = self.terms;
+        fresh.one_by_one = self.one_by_one;
         fresh.follow_ledger();
         *self = fresh;
         Ok(())

@@ -2,7 +2,9 @@
 
 use std::sync::Arc;
 
-use kenspeckle::{LearnerKind, Settings, Sorter, Space, Starter, meta::statistics::Statistics, whitening::Whitening};
+use kenspeckle::{
+    LearnerKind, Settings, Sorter, Space, Starter, meta::statistics::Statistics, trust::Terms, whitening::Whitening,
+};
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
@@ -234,6 +236,7 @@ fn a_starter_changes_under_a_pile_and_back() {
             sorter.answer_new(item, &format!("category {item}")).unwrap();
         }
         sorter.remove_item(7).unwrap();
+        sorter.set_terms(Terms::new(0.8, 0.2, true).unwrap());
         sorter
     };
     let mut with = filled(Sorter::with_starter(settings(), starter.clone()).unwrap());
