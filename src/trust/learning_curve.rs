@@ -7,7 +7,7 @@
 //! arXiv:1712.00409), which such lines resemble while errors are few.
 //!
 //! The range of an answer count comes from the ends of the level's 95 % Wilson interval with slopes two standard errors flatter and
-//! steeper; the slope is held near one that was seen on photos and texts, as if from one more curve. Cost O(draws · shots · n²).
+//! steeper; the slope is held near a guessed one, as if from one more curve. Cost O(draws · shots · n²).
 
 use rand::{SeedableRng, seq::SliceRandom};
 use rand_chacha::ChaCha8Rng;
@@ -25,8 +25,8 @@ const DRAWS: u64 = 6;
 /// The most different numbers of answers that are tried.
 const MOST_SHOTS: usize = 6;
 
-/// Slope of log-odds over the logarithm of answers, and how sure that is, before there is a curve: by eye from icons, stamps
-/// and texts, where it lay between 0.5 and 1.1.
+/// Slope of log-odds over the logarithm of answers, and how sure that is, before there is a curve: a guess that nobody has
+/// measured yet.
 const USUAL_SLOPE: (f64, f64) = (0.8, 0.25);
 
 /// No projection goes beyond this many times the answers there are.
