@@ -2,6 +2,8 @@
 //!
 //! A [`Change`] holds what it needs to be undone; an entry of the log is the changes of one action by the person.
 
+use std::collections::BTreeMap;
+
 use serde::{Deserialize, Serialize};
 
 use crate::error::{Error, Result};
@@ -55,6 +57,10 @@ pub enum Action {
     RemoveTray,
     /// An item was taken out of the pile.
     RemoveItem,
+    /// A doubted answer was looked at again and stays.
+    Keep,
+    /// The items of a spot check got what the person said of them.
+    SpotCheck,
 }
 
 impl Action {
@@ -70,6 +76,8 @@ impl Action {
             Self::MergeTrays => "merge-trays",
             Self::RemoveTray => "remove-tray",
             Self::RemoveItem => "remove-item",
+            Self::Keep => "keep",
+            Self::SpotCheck => "spot-check",
         }
     }
 }
@@ -82,6 +90,7 @@ enum Change {
     TrayGone { tray: usize },
     Renamed { tray: usize, from: String, to: String },
     ItemGone { item: usize },
+    Kept { item: usize, from: Option<usize>, to: Option<usize> },
 }
 
 #[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
@@ -96,6 +105,9 @@ pub struct Ledger {
     trays: Vec<Tray>,
     answers: Vec<Answer>,
     removed: Vec<bool>,
+    /// Items whose answer was doubted and stays, with its tray.
+    #[serde(default, skip_serializing_if = "BTreeMap::is_empty")]
+    kept: BTreeMap<usize, usize>,
     done: Vec<Entry>,
     undone: Vec<Entry>,
 }
@@ -138,7 +150,7 @@ impl Ledger {
 
     /// Items whose answer names another tray than an earlier answer did, with the earlier tray; trays that are gone don't count.
     pub(crate) fn changed_answers(&self) -> Vec<(usize, usize)> {
-        let mut earlier = std::collections::BTreeMap::new();
+        let mut earlier = BTreeMap::new();
         for change in self.done.iter().filter(|entry| entry.action == Action::Answer).flat_map(|entry| &entry.changes) {
             if let Change::Answered { item, from: Answer::Tray(tray), .. } = change {
                 earlier.insert(*item, *tray);
@@ -148,6 +160,43 @@ impl Ledger {
             matches!(self.answers[item], Answer::Tray(now) if now != tray) && self.trays[tray].live
         };
         earlier.into_iter().filter(|&(item, _)| !self.removed[item]).filter(differs).collect()
+    }
+
+    /// Whether the person looked at the item's answer again and left it as it is.
+    pub fn is_kept(&self, item: usize) -> bool {
+        self.kept.get(&item).is_some_and(|&tray| self.answers[item] == Answer::Tray(tray))
+    }
+
+    /// The person looked at a doubted answer again and says where the item belongs; another answer later ends that. One
+    /// action, whether the answer changes or stays.
+    pub fn settle(&mut self, item: usize, tray: usize) -> Result<()> {
+        let (item, tray) = (self.present(item)?, self.live(tray)?);
+        let (from, to) = (self.answers[item], Answer::Tray(tray));
+        let kept = Change::Kept { item, from: self.kept.get(&item).copied(), to: Some(tray) };
+        if from != to {
+            self.record(Action::Answer, vec![Change::Answered { item, from, to }, kept]);
+        } else if !self.is_kept(item) {
+            self.record(Action::Keep, vec![kept]);
+        }
+        Ok(())
+    }
+
+    /// Gives several items an answer each, as one action that counts as done even if no answer is new.
+    pub(crate) fn put_each(&mut self, action: Action, answers: &[(usize, Answer)]) -> Result<()> {
+        for &(item, to) in answers {
+            self.present(item)?;
+            if let Answer::Tray(tray) = to {
+                self.live(tray)?;
+            }
+        }
+        let change = |&(item, to): &(usize, Answer)| Change::Answered { item, from: self.answers[item], to };
+        self.record(action, answers.iter().map(change).collect());
+        Ok(())
+    }
+
+    /// What was done last and not undone.
+    pub(crate) fn last(&self) -> Option<Action> {
+        self.done.last().map(|entry| entry.action)
     }
 
     fn live(&self, tray: usize) -> Result<usize> {
@@ -302,6 +351,10 @@ impl Ledger {
             Change::TrayGone { tray } => self.trays[*tray].live = !forward,
             Change::Renamed { tray, from, to } => self.trays[*tray].name.clone_from(if forward { to } else { from }),
             Change::ItemGone { item } => self.removed[*item] = forward,
+            Change::Kept { item, from, to } => match if forward { to } else { from } {
+                Some(tray) => drop(self.kept.insert(*item, *tray)),
+                None => drop(self.kept.remove(item)),
+            },
         }
     }
 
@@ -342,9 +395,11 @@ impl Ledger {
                 *tray < self.trays.len()
             }
             Change::ItemGone { item } => *item < self.answers.len(),
+            Change::Kept { item, .. } => *item < self.answers.len(),
         };
         let live_ok = |answer: &Answer| !matches!(answer, Answer::Tray(tray) if !self.trays[*tray].live);
         self.removed.len() == self.answers.len()
+            && self.kept.keys().all(|&item| item < self.answers.len())
             && self.answers.iter().all(|answer| tray_ok(answer) && live_ok(answer))
             && self.done.iter().chain(&self.undone).flat_map(|entry| &entry.changes).all(change_ok)
     }
@@ -356,9 +411,11 @@ mod tests {
 
     use super::*;
 
-    fn visible(ledger: &Ledger) -> (Vec<(usize, String)>, Vec<Answer>, Vec<bool>) {
+    type Visible = (Vec<(usize, String)>, Vec<Answer>, Vec<bool>, BTreeMap<usize, usize>);
+
+    fn visible(ledger: &Ledger) -> Visible {
         let trays = ledger.trays().map(|(number, name)| (number, name.to_owned())).collect();
-        (trays, ledger.answers.clone(), ledger.removed.clone())
+        (trays, ledger.answers.clone(), ledger.removed.clone(), ledger.kept.clone())
     }
 
     fn act(ledger: &mut Ledger, (what, a, b): (u8, usize, usize)) {
@@ -375,6 +432,8 @@ mod tests {
             7 => ledger.remove_tray(b).is_err(),
             8 => ledger.remove_item(a).is_err(),
             9 => ledger.put_in_new(a, &format!("n{b}")).is_err(),
+            10 => ledger.settle(a, b).is_err(),
+            11 => ledger.put_each(Action::SpotCheck, &[(a, Answer::Tray(b)), ((a + 1) % 6, Answer::Skipped)]).is_err(),
             _ => ledger.put_all(&[a, (a + 1) % 6], b).is_err(),
         };
         if refused {
@@ -384,7 +443,7 @@ mod tests {
 
     proptest! {
         #[test]
-        fn everything_can_be_undone_and_done_again(actions in prop::collection::vec((0_u8..=10, 0_usize..6, 0_usize..4), 1..40)) {
+        fn everything_can_be_undone_and_done_again(actions in prop::collection::vec((0_u8..=12, 0_usize..6, 0_usize..4), 1..40)) {
             let mut ledger = Ledger::default();
             (0..6).for_each(|_| { ledger.add_item(); });
             let mut steps = vec![visible(&ledger)];

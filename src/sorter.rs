@@ -255,6 +255,12 @@ impl Sorter {
         self.change(|ledger| ledger.put_in_new(item, name))
     }
 
+    /// The person looked at a doubted answer again and says where the item belongs, the same tray or another: it isn't doubted
+    /// again unless it is answered anew. One action.
+    pub fn settle_doubt(&mut self, item: usize, tray: usize) -> Result<()> {
+        self.change(|ledger| ledger.settle(item, tray))
+    }
+
     /// The person's answer: none of these.
     pub fn answer_none(&mut self, item: usize) -> Result<()> {
         self.change(|ledger| ledger.put_in_none(item))
@@ -388,7 +394,26 @@ impl Sorter {
         self.learnt.as_ref().expect("just learnt")
     }
 
+    /// What a spot check found teaches only with the next answer: until then the sorting is the one that it is a statement about.
     fn learn(&mut self) -> Learnt {
+        if self.ledger.last() != Some(Action::SpotCheck) {
+            return self.learn_from_answers();
+        }
+        self.ledger.undo();
+        let mut learnt = self.learn_from_answers();
+        self.ledger.redo();
+        for (item, verdict) in learnt.verdicts.iter_mut().enumerate() {
+            let Some(verdict) = verdict else { continue };
+            match self.ledger.answer(item) {
+                answer if answer == verdict.answer => {}
+                answer @ (Answer::Open | Answer::Skipped) => verdict.answer = answer,
+                Answer::Tray(_) | Answer::None => *verdict = self.judge(item, &[], None),
+            }
+        }
+        learnt
+    }
+
+    fn learn_from_answers(&mut self) -> Learnt {
         let mut trays: Vec<usize> = self.ledger.answered().map(|(_, tray)| tray).collect();
         trays.sort_unstable();
         trays.dedup();

@@ -2,12 +2,14 @@
 
 use kenspeckle::{
     LearnerKind, Settings, Sorter, Space, Support,
+    ledger::Answer,
     trust::{
         Reason, Terms,
         evidence::Evidence,
         interval::clopper_pearson,
         novelty::{Novelty, Scene},
         prediction_set::PredictionSets,
+        spot_check::{Judgement, Plan},
     },
 };
 use ndarray::{Array1, Array2};
@@ -296,4 +298,113 @@ fn the_learning_curve_grows_and_asks_for_more_where_more_is_wanted() {
         assert!(one.low <= likely && likely <= high, "{one:?}");
     }
     assert_eq!(targets[0].likely, Some(0.0));
+
+    // What is foreseen starts at the level, never falls, and agrees with the number of answers that a target is told to take.
+    let ahead = &curve.ahead;
+    assert_eq!((ahead.len(), ahead[0].more), (13, 0.0));
+    assert!((ahead[0].likely - curve.level[1]).abs() < 1e-12);
+    for pair in ahead.windows(2) {
+        assert!(pair[0].more < pair[1].more);
+        assert!(pair[0].low <= pair[1].low && pair[0].likely <= pair[1].likely && pair[0].high <= pair[1].high);
+    }
+    for one in ahead {
+        assert!(0.0 < one.low && one.low <= one.likely && one.likely <= one.high && one.high < 1.0);
+        let told = curve.more_answers(one.likely).likely.unwrap();
+        assert!((told - one.more).abs() <= 1.0, "{told} answers for {one:?}");
+    }
+}
+
+#[test]
+fn a_doubt_that_was_settled_is_not_raised_again() {
+    let mut rng = ChaCha8Rng::seed_from_u64(9);
+    let (mut sorter, categories) = pile(5, 0, 8, 10, 0.25, &mut rng);
+    for item in [3, 12] {
+        sorter.answer(item, (categories[item] + 1) % 5).unwrap();
+    }
+    let raised = |sorter: &mut Sorter, item| sorter.doubts().iter().any(|doubt| doubt.item == item);
+    assert!(raised(&mut sorter, 3) && raised(&mut sorter, 12));
+    // One is left as it is, the other is changed: that it was answered differently before is known by now.
+    sorter.settle_doubt(3, (categories[3] + 1) % 5).unwrap();
+    sorter.settle_doubt(12, categories[12]).unwrap();
+    assert!(!raised(&mut sorter, 3) && !raised(&mut sorter, 12));
+    assert_eq!(sorter.verdict(12).unwrap().tray, Some(categories[12]));
+    let embeddings: Vec<f32> = (0..sorter.items()).flat_map(|k| item(categories[k], 0.25, &mut rng)).collect();
+    let kept = Sorter::restore(&sorter.state(), &embeddings, None).unwrap();
+    assert!(kept.ledger().is_kept(3) && kept.ledger().is_kept(12));
+    assert_eq!(sorter.undo().unwrap().name(), "answer");
+    assert_eq!(sorter.undo().unwrap().name(), "keep");
+    assert!(raised(&mut sorter, 3) && raised(&mut sorter, 12));
+    sorter.redo();
+    // Answered anew, it can be doubted anew.
+    sorter.answer(3, (categories[3] + 2) % 5).unwrap();
+    assert!(raised(&mut sorter, 3));
+}
+
+#[test]
+fn a_spot_check_holds_the_sorting_still_until_the_next_answer() {
+    let mut rng = ChaCha8Rng::seed_from_u64(21);
+    let (mut sorter, _) = pile(4, 1, 3, 30, 0.5, &mut rng);
+    let before: Vec<_> = sorter.verdicts().to_vec();
+    let plan = Plan::new(0.05, 0.95, 0, false).unwrap();
+    let mut check = sorter.spot_check(plan, 5).unwrap();
+    assert!(!sorter.is_about_now(&check), "nothing was said yet");
+    let sample: Vec<_> = check.sample().map(|(sorted, _)| sorted).collect();
+    for (place, sorted) in sample.iter().enumerate() {
+        let judgement = match place % 7 {
+            0 => Judgement::Belongs((sorted.tray + 1) % 4),
+            1 => Judgement::Wrong,
+            2 => Judgement::Untold,
+            _ => Judgement::Right,
+        };
+        check.judge(sorted.item, Some(judgement)).unwrap();
+    }
+    sorter.answer_checked(&check).unwrap();
+    assert!(sorter.is_about_now(&check));
+    let corrected = check.corrected();
+    for (item, tray) in &corrected {
+        assert_eq!(sorter.verdict(*item).unwrap().tray, *tray);
+    }
+    // The items that nobody looked at are where they were, with the same figures.
+    let looked_at = |item: usize| sample.iter().any(|sorted| sorted.item == item);
+    let now = sorter.verdicts().to_vec();
+    assert!((0..now.len()).filter(|&item| !looked_at(item)).all(|item| now[item] == before[item]));
+    // So they are after a reload.
+    assert!(sorter.state().contains("spot-check"));
+
+    // With the next answer they teach, and the statement is about the earlier sorting.
+    let open = (0..now.len()).find(|&item| !looked_at(item) && now[item].unwrap().answer == Answer::Open).unwrap();
+    sorter.skip(open).unwrap();
+    assert!(!sorter.is_about_now(&check));
+    assert_ne!(sorter.verdicts(), &now[..]);
+    assert!(sorter.assessment().unwrap().answers > 12);
+    assert_eq!(sorter.undo().unwrap().name(), "skip");
+    assert!(sorter.is_about_now(&check));
+    assert_eq!(sorter.verdicts(), &now[..]);
+    assert_eq!(sorter.undo().unwrap().name(), "spot-check");
+    assert_eq!(sorter.verdicts(), &before[..]);
+    assert!(!sorter.is_about_now(&check));
+    sorter.redo();
+    assert!(sorter.is_about_now(&check));
+    // An item that arrives is sorted too, and no part of the statement.
+    sorter.add_item(&item(0, 0.2, &mut rng)).unwrap();
+    assert!(!sorter.is_about_now(&check));
+}
+
+#[test]
+fn what_a_spot_check_says_of_items_and_trays_that_are_gone_is_left_out() {
+    let mut rng = ChaCha8Rng::seed_from_u64(22);
+    let (mut sorter, _) = pile(4, 0, 3, 20, 0.3, &mut rng);
+    let mut check = sorter.spot_check(Plan::new(0.1, 0.9, 0, true).unwrap(), 5).unwrap();
+    let sample: Vec<_> = check.sample().map(|(sorted, _)| sorted).collect();
+    sample.iter().for_each(|sorted| check.judge(sorted.item, Some(Judgement::Right)).unwrap());
+    let gone = sample.iter().find(|sorted| sorted.tray == 0).unwrap().item;
+    sorter.remove_item(gone).unwrap();
+    sorter.remove_tray(3).unwrap();
+    sorter.answer_checked(&check).unwrap();
+    for sorted in &sample {
+        let answer = sorter.ledger().answer(sorted.item);
+        let left_out = sorted.item == gone || sorted.tray == 3;
+        assert_eq!(answer, if left_out { Answer::Open } else { Answer::Tray(sorted.tray) });
+    }
+    assert!(!sorter.is_about_now(&check));
 }

@@ -24,6 +24,7 @@ struct CalibrationValues {
     error: f64,
     brier: f64,
     log_loss: f64,
+    bins: Vec<(usize, f64, f64)>,
 }
 
 #[derive(Deserialize, Debug)]
@@ -109,5 +110,11 @@ fn calibration_is_that_of_scikit_learn() {
     assert!((ours.error - values.error).abs() < 1e-9, "{ours:?}");
     assert!((ours.brier - values.brier).abs() < 1e-9, "{ours:?}");
     assert!((ours.log_loss - values.log_loss).abs() < 1e-9, "{ours:?}");
+    assert_eq!(ours.bins.len(), values.bins.len());
+    for (ours, (items, said, right)) in ours.bins.iter().zip(values.bins) {
+        assert_eq!(ours.items, items);
+        assert!((ours.said - said).abs() < 1e-9 && (ours.right - right).abs() < 1e-9, "{ours:?}");
+        assert!((ours.from..=ours.to).contains(&said) && ours.wilson.low <= right && right <= ours.wilson.high);
+    }
     assert_eq!(calibration([]), None);
 }

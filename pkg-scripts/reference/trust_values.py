@@ -73,6 +73,7 @@ def calibration():
         "error": float((np.abs(true - mean) * counts[counts > 0]).sum() / len(top)),
         "brier": float(brier_score_loss(labels, probabilities, labels=range(4), scale_by_half=False)),
         "log_loss": float(log_loss(labels, probabilities, labels=range(4))),
+        "bins": [[int(count), float(said), float(share)] for count, said, share in zip(counts[counts > 0], mean, true)],
     }
 
 

@@ -73,7 +73,8 @@ export interface Outlook {
 }
 
 export type ActionName =
-  | "answer" | "none" | "skip" | "withdraw" | "add-tray" | "rename-tray" | "merge-trays" | "remove-tray" | "remove-item";
+  | "answer" | "none" | "skip" | "withdraw" | "add-tray" | "rename-tray" | "merge-trays" | "remove-tray" | "remove-item"
+  | "keep" | "spot-check";
 "#;
 
 #[wasm_bindgen]
@@ -231,6 +232,13 @@ impl Sorter {
     #[wasm_bindgen(js_name = answerNew)]
     pub fn answer_new(&mut self, item: usize, name: &str) -> Result<usize, JsValue> {
         self.0.answer_new(item, name).or_throw()
+    }
+
+    /// The person looked at a doubted answer again: the item belongs in this tray, the same or another, and isn't doubted again
+    /// unless it is answered anew.
+    #[wasm_bindgen(js_name = settleDoubt)]
+    pub fn settle_doubt(&mut self, item: usize, tray: usize) -> Result<(), JsValue> {
+        self.0.settle_doubt(item, tray).or_throw()
     }
 
     /// None of these: the person sets the item aside.

@@ -28,6 +28,8 @@ export interface Interval { low: number; high: number }
 export interface Share {
   right: number;
   judged: number;
+  /** The share itself; `null` if nothing was judged. */
+  value: number | null;
   /** 95 %, to look at (Wilson). */
   wilson: Interval;
   /** 95 %, to promise by (Clopper and Pearson). */
@@ -41,11 +43,22 @@ export interface Assessment {
   /** Answers of one tray that the others put into another, the most frequent first, with their item numbers. */
   confusions: { tray: number; takenFor: number; items: number[] }[];
   /** `null` if nothing could be judged. */
-  calibration: { error: number; brier: number; logLoss: number } | null;
+  calibration: Calibration | null;
   /** Trays with a single answer, of which nothing can be known yet. */
   unknown: number[];
   /** Accuracy by answers a tray; `null` while no tray has three. */
   curve: LearningCurve | null;
+}
+
+export interface Calibration {
+  /** Expected calibration error, 0 to 1. */
+  error: number;
+  /** 0 to 2. */
+  brier: number;
+  /** In nats. */
+  logLoss: number;
+  /** By probability of the first choice, those that hold an item: mean probability, share right with its 95 % interval. */
+  bins: { from: number; to: number; items: number; said: number; right: number; wilson: Interval }[];
 }
 
 export interface LearningCurve {
@@ -58,7 +71,12 @@ export interface LearningCurve {
   level: [number, number, number];
   /** Slope of log-odds over the logarithm of answers: flattest, likeliest, steepest. */
   slope: [number, number, number];
+  /** Accuracy after so many more answers in all, from now to four times the answers there are. */
+  ahead: { more: number; low: number; likely: number; high: number }[];
 }
+
+/** The plausible trays of all items, most probable first: those of item i are `trays[starts[i]]` to before `trays[starts[i + 1]]`. */
+export interface PlausibleSets { starts: Uint32Array; trays: Uint32Array }
 
 /** About how many more answers, over all trays, reach the target. */
 export interface Projection {
@@ -147,9 +165,15 @@ extern "C" {
     /// A statement for JavaScript.
     #[wasm_bindgen(typescript_type = "Statement")]
     pub type JsStatement;
+    /// Plausible sets for JavaScript.
+    #[wasm_bindgen(typescript_type = "PlausibleSets")]
+    pub type JsPlausibleSets;
     /// A corrected sorting for JavaScript.
     #[wasm_bindgen(typescript_type = "{ item: number; tray: number | null }[]")]
     pub type JsSorting;
+    /// A plan for JavaScript.
+    #[wasm_bindgen(typescript_type = "Required<SpotCheckPlan>")]
+    pub type JsPlanned;
 }
 
 /// Plain objects and arrays, with `null` for what isn't there.
@@ -199,6 +223,23 @@ impl Sorter {
         self.0.plausible(item).or_throw()
     }
 
+    /// The plausible trays of all items at once.
+    #[wasm_bindgen(js_name = plausibleSets)]
+    pub fn plausible_sets(&mut self) -> JsPlausibleSets {
+        let sets = self.0.plausible_sets();
+        let mut starts = vec![0_u32];
+        let mut trays = Vec::new();
+        for set in sets {
+            trays.extend(set.into_iter().map(|tray| tray as u32));
+            starts.push(trays.len() as u32);
+        }
+        let object = js_sys::Object::new();
+        // Setting a property on a fresh object can't fail.
+        let _ = js_sys::Reflect::set(&object, &"starts".into(), &js_sys::Uint32Array::from(&starts[..]));
+        let _ = js_sys::Reflect::set(&object, &"trays".into(), &js_sys::Uint32Array::from(&trays[..]));
+        JsValue::from(object).into()
+    }
+
     /// How well the answers sort each other; `undefined` while fewer than two trays have an answer.
     pub fn assessment(&mut self) -> JsAssessment {
         self.0.assessment().map_or(JsValue::UNDEFINED, |assessment| plain(&assessment)).into()
@@ -234,6 +275,19 @@ impl Sorter {
         let plan = self::plan(plan)?;
         self.0.spot_check(plan, seed as u64).map(SpotCheck).or_throw()
     }
+
+    /// Takes what the person said of the items of a spot check as answers: one action, undone as one. Items and trays that are
+    /// gone since are left out. Until anything else is answered, the rest of the pile stays sorted as it was.
+    #[wasm_bindgen(js_name = answerChecked)]
+    pub fn answer_checked(&mut self, check: &SpotCheck) -> Result<(), JsValue> {
+        self.0.answer_checked(&check.0).or_throw()
+    }
+
+    /// Whether a spot check is a statement about the sorting as it is now.
+    #[wasm_bindgen(js_name = isAboutNow)]
+    pub fn is_about_now(&mut self, check: &SpotCheck) -> bool {
+        self.0.is_about_now(&check.0)
+    }
 }
 
 /// A random sample of a sorting, what the person said of it, and the sentence that it backs.
@@ -262,6 +316,18 @@ impl SpotCheck {
     pub fn judge(&mut self, item: usize, judgement: JsJudgement) -> Result<(), JsValue> {
         let judgement: Option<Judgement> = read(judgement.into(), "the judgement")?;
         self.0.judge(item, judgement).or_throw()
+    }
+
+    /// What it is to show, and how.
+    #[wasm_bindgen(getter)]
+    pub fn plan(&self) -> JsPlanned {
+        plain(self.0.plan()).into()
+    }
+
+    /// How many sorted items it is about.
+    #[wasm_bindgen(getter)]
+    pub fn items(&self) -> usize {
+        self.0.items()
     }
 
     /// How many items are still to be looked at.

@@ -1,5 +1,7 @@
 //! The façade's part about trust: what is plausible, what is set aside, how well the answers sort each other, spot checks.
 
+use std::collections::BTreeSet;
+
 use ndarray::{Array2, ArrayView1};
 
 use super::{Learnt, Sorter, Verdict};
@@ -7,7 +9,7 @@ use crate::{
     arithmetic::{dot, row, softmax},
     error::Result,
     learner::Learned,
-    ledger::Answer,
+    ledger::{Action, Answer},
     space::Centre,
     support::Support,
     trust::{
@@ -18,7 +20,7 @@ use crate::{
         learning_curve::LearningCurve,
         novelty::{Novelty, Scene},
         prediction_set::PredictionSets,
-        spot_check::{Plan, Sorted, SpotCheck},
+        spot_check::{Judgement, Plan, Sorted, SpotCheck},
     },
 };
 
@@ -94,6 +96,11 @@ impl Sorter {
         })
     }
 
+    /// The plausible trays of every item number, as [`Sorter::plausible`] gives them; none for removed items. Cost O(m C).
+    pub fn plausible_sets(&mut self) -> Vec<Vec<usize>> {
+        (0..self.pile.len()).map(|item| self.plausible(item).unwrap_or_default()).collect()
+    }
+
     /// How well the answers sort each other; `None` while fewer than two trays have an answer.
     pub fn assessment(&mut self) -> Option<Assessment> {
         let seed = self.settings.seed;
@@ -104,13 +111,15 @@ impl Sorter {
         Some(assessment)
     }
 
-    /// Answers that may be wrong, the gravest first.
+    /// Answers that may be wrong, the gravest first, without those that the person looked at again.
     pub fn doubts(&mut self) -> Vec<Doubt> {
         let earlier = self.ledger.changed_answers();
         let Learnt { trays, trusting, .. } = self.learnt();
-        trusting.as_ref().map_or_else(Vec::new, |trusting| {
+        let mut doubts = trusting.as_ref().map_or_else(Vec::new, |trusting| {
             doubt::doubts(&trusting.evidence, &trusting.support, trays, &trusting.items, &earlier)
-        })
+        });
+        doubts.retain(|doubt| !self.ledger.is_kept(doubt.item));
+        doubts
     }
 
     /// The items that the sorter itself put into a tray, with the tray: neither answered nor set aside.
@@ -132,6 +141,50 @@ impl Sorter {
     /// corrections, not about what later answers change.
     pub fn spot_check(&mut self, plan: Plan, seed: u64) -> Result<SpotCheck> {
         SpotCheck::draw(plan, self.sorted(), seed)
+    }
+
+    /// Takes what the person said of the items of a spot check as answers, as one action: right and belonging elsewhere as the
+    /// tray, wrong as none of these, what can't be told as that. Items and trays that are gone since are left out.
+    ///
+    /// Until anything else is answered, the rest of the pile stays sorted as it was when the check was drawn, so that
+    /// the statement is about what is there.
+    pub fn answer_checked(&mut self, check: &SpotCheck) -> Result<()> {
+        let live: Vec<usize> = self.ledger.trays().map(|(tray, _)| tray).collect();
+        let answer = |(sorted, judgement): (Sorted, Option<Judgement>)| {
+            let answer = match judgement? {
+                Judgement::Right => Answer::Tray(sorted.tray),
+                Judgement::Belongs(tray) => Answer::Tray(tray),
+                Judgement::Wrong => Answer::None,
+                Judgement::Untold => Answer::Skipped,
+            };
+            let gone = matches!(answer, Answer::Tray(tray) if !live.contains(&tray));
+            (self.pile.contains(sorted.item) && !gone).then_some((sorted.item, answer))
+        };
+        let answers: Vec<(usize, Answer)> = check.sample().filter_map(answer).collect();
+        self.change(|ledger| ledger.put_each(Action::SpotCheck, &answers))
+    }
+
+    /// Whether a spot check is a statement about the sorting as it is now: every item that it is about is where the check left
+    /// it, no other is sorted, and nothing was answered since it was finished.
+    pub fn is_about_now(&mut self, check: &SpotCheck) -> bool {
+        if self.ledger.last() != Some(Action::SpotCheck) {
+            return false;
+        }
+        let judged: BTreeSet<usize> =
+            check.sample().filter(|(_, said)| said.is_some()).map(|(sorted, _)| sorted.item).collect();
+        let corrected = check.corrected();
+        let about: BTreeSet<usize> = corrected.iter().map(|&(item, _)| item).collect();
+        let others = self.sorted().iter().any(|sorted| !about.contains(&sorted.item));
+        let verdicts = self.verdicts();
+        let stays = |&(item, tray): &(usize, Option<usize>)| {
+            let verdict = verdicts.get(item).copied().flatten();
+            verdict.is_some_and(|verdict| {
+                let by_person = matches!(verdict.answer, Answer::Tray(_) | Answer::None);
+                let as_left = if judged.contains(&item) { verdict.answer != Answer::Open } else { !by_person };
+                verdict.tray == tray && verdict.set_aside.is_none() && as_left
+            })
+        };
+        !others && corrected.iter().all(stays)
     }
 
     pub(super) fn trusting(

@@ -22,6 +22,8 @@ pub struct Share {
     pub right: usize,
     /// How many were judged.
     pub judged: usize,
+    /// The share itself; `None` if nothing was judged.
+    pub value: Option<f64>,
     /// Wilson's interval, to look at.
     pub wilson: Interval,
     /// Clopper and Pearson's interval, to promise by.
@@ -33,14 +35,10 @@ impl Share {
         Self {
             right,
             judged,
+            value: (judged > 0).then(|| right as f64 / judged as f64),
             wilson: wilson(right, judged, CONFIDENCE),
             exact: clopper_pearson(right, judged, CONFIDENCE),
         }
-    }
-
-    /// The share itself; `None` if nothing was judged.
-    pub fn value(&self) -> Option<f64> {
-        (self.judged > 0).then(|| self.right as f64 / self.judged as f64)
     }
 }
 

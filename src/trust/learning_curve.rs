@@ -44,6 +44,19 @@ pub struct Point {
     pub sorted: usize,
 }
 
+/// What is foreseen after more answers.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct Foreseen {
+    /// More answers in all.
+    pub more: f64,
+    /// Accuracy, 0 to 1: if everything is on the slow side, most likely, and at best.
+    pub low: f64,
+    /// The likeliest accuracy.
+    pub likely: f64,
+    /// The highest accuracy.
+    pub high: f64,
+}
+
 /// How accuracy grows with answers.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 #[serde(rename_all = "camelCase")]
@@ -58,6 +71,8 @@ pub struct LearningCurve {
     pub level: [f64; 3],
     /// Slope of log-odds over the logarithm of answers: flattest, likeliest, steepest.
     pub slope: [f64; 3],
+    /// What is foreseen, from now to four times the answers there are.
+    pub ahead: Vec<Foreseen>,
 }
 
 /// About how many more answers it takes.
@@ -87,13 +102,24 @@ impl LearningCurve {
         // Half a case either way keeps a full score finite.
         let middle = (share.right as f64 + 0.5) / (share.judged as f64 + 1.0);
         let (slope, spread) = slope(&points);
-        Some(Self {
+        let mut curve = Self {
             points,
             shot: (support.shot() - 1.0).max(1.0),
             trays: support.categories(),
             level: [level.low.max(1e-3), middle, level.high.min(1.0 - 1e-3).max(middle)],
             slope: [(slope - 2.0 * spread).max(0.05), slope, slope + 2.0 * spread],
-        })
+            ahead: Vec::new(),
+        };
+        curve.ahead = (4..=16).map(|quarters| curve.foreseen(f64::from(quarters) / 4.0)).collect();
+        Some(curve)
+    }
+
+    /// With this many times the answers.
+    fn foreseen(&self, times: f64) -> Foreseen {
+        let accuracy =
+            |end: usize| 1.0 / (1.0 + libm::exp(-logit(self.level[end]) - self.slope[end] * libm::log(times)));
+        let more = (times - 1.0) * self.shot * self.trays as f64;
+        Foreseen { more, low: accuracy(0), likely: accuracy(1), high: accuracy(2) }
     }
 
     /// About how many more answers, over all trays, reach this accuracy (above 0, below 1).

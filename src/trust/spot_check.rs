@@ -269,6 +269,11 @@ impl SpotCheck {
         self.seed
     }
 
+    /// How many sorted items it is about.
+    pub fn items(&self) -> usize {
+        self.sorting.len()
+    }
+
     /// The items to look at, in order, with what was said of them.
     pub fn sample(&self) -> impl Iterator<Item = (Sorted, Option<Judgement>)> + '_ {
         self.sample.iter().map(|&position| self.sorting[position]).zip(self.judgements.iter().copied())

@@ -49,6 +49,11 @@ test("verdicts say what is plausible and what is set aside", () => {
   const first = open.find((item) => setAside[item] === 0);
   assert.equal(sorter.plausible(first)[0], tray[first]);
   assert.deepEqual([...sorter.plausible(0)], [0]);
+  const { starts, trays } = sorter.plausibleSets();
+  assert.ok(starts instanceof Uint32Array && trays instanceof Uint32Array && starts.length === tray.length + 1);
+  for (const item of tray.keys()) {
+    assert.deepEqual([...trays.subarray(starts[item], starts[item + 1])], [...sorter.plausible(item)]);
+  }
 
   assert.deepEqual(sorter.terms, { confidence: 0.9, setAsideShare: 0.05, onlySure: false });
   sorter.setTerms({ confidence: 0.8, setAsideShare: 0, onlySure: false });
@@ -89,6 +94,10 @@ test("the assessment and the doubts name what is wrong", () => {
   assert.ok(calibration.error >= 0 && calibration.brier >= 0 && calibration.logLoss >= 0);
   assert.deepEqual(unknown, []);
   assert.ok(curve.points.length >= 2);
+  assert.ok(curve.ahead.length > 2 && curve.ahead[0].more === 0 && curve.ahead.every(({ low, likely, high }) => low <= likely && likely <= high));
+  assert.equal(share.value, 23 / 24);
+  assert.equal(calibration.bins.reduce((sum, { items }) => sum + items, 0), 24);
+  assert.ok(Math.abs(calibration.bins.reduce((sum, { items, said, right }) => sum + items * Math.abs(said - right), 0) / 24 - calibration.error) < 1e-12);
   const more = sorter.moreAnswers(0.99);
   assert.equal(more.target, 0.99);
   assert.ok(more.low >= 0 && (more.likely === null || more.likely >= more.low));
@@ -98,6 +107,13 @@ test("the assessment and the doubts name what is wrong", () => {
   assert.equal(doubt.tray, 2);
   assert.equal(doubt.rather, 0);
   assert.equal(doubt.why, "contradicted");
+  sorter.settleDoubt(0, 2);
+  assert.ok(sorter.doubts().every(({ item }) => item !== 0));
+  assert.equal(sorter.undo(), "keep");
+  sorter.settleDoubt(0, 0);
+  assert.ok(sorter.doubts().every(({ item }) => item !== 0));
+  assert.equal(sorter.undo(), "answer");
+  assert.equal(sorter.doubts()[0].item, 0);
 });
 
 test("nothing is known yet of trays with a single answer", () => {
@@ -134,10 +150,22 @@ test("a spot check from the draw to the sentence", () => {
     assert.equal(statement.seed, 4711);
     assert.equal(statement.holds, false);
     assert.ok(Math.abs(statement.share - statement.atMost / statement.items) < 1e-12);
+    assert.equal(one.items, statement.items);
+    assert.deepEqual(one.plan, { tolerance: 0.05, confidence: 0.95, allowed: 0, byTray: false });
     assert.match(statement.sentence, /^At most \d+\.\d % of the \d+ sorted items are in the wrong tray \(95 % confidence, .* seed 4711, 2026-12-01\)$/);
   }
   assert.equal(check.corrected().find(({ item }) => item === sample[0].item).tray, 3 - sample[0].tray);
   assert.throws(() => check.judge(0, "right"), (error) => error.code === "not-in-sample");
+  const { tray } = sorter.verdicts();
+  assert.equal(sorter.isAboutNow(check), false);
+  sorter.answerChecked(check);
+  assert.equal(sorter.isAboutNow(check), true);
+  const now = sorter.verdicts();
+  for (const { item, tray: corrected } of check.corrected()) assert.equal(now.tray[item], corrected ?? -1);
+  assert.ok([...tray.keys()].every((item) => now.tray[item] === tray[item] || item === sample[0].item));
+  assert.deepEqual([now.status[sample[1].item], now.status[sample[2].item]], [3, 1]);
+  assert.equal(sorter.undo(), "spot-check");
+  assert.equal(sorter.isAboutNow(check), false);
   assert.throws(() => check.judge(sample[0].item, "perhaps"), (error) => error.code === "options");
   assert.throws(() => sorter.spotCheck({ tolerance: 2, confidence: 0.95 }, 1), (error) => error.code === "spot-check-plan");
   assert.throws(() => sorter.spotCheck(plan, -1), (error) => error.code === "options");

@@ -98,7 +98,7 @@ fn percent(share: f64) -> String {
 }
 
 fn share(share: &Share) -> String {
-    let Some(value) = share.value() else { return "not known yet".into() };
+    let Some(value) = share.value else { return "not known yet".into() };
     format!(
         "{} of {} right, {} (95 %: {} to {})",
         share.right,
