@@ -69,6 +69,16 @@ export const test = base.extend<{ site: Site; provoked: string | undefined; guar
 
 export { expect };
 
+/** A line of the result. */
+export interface Row {
+  tray: string;
+  probability: string;
+  plausible: string;
+  aside: string;
+  /** Only where a spot check is about the result. */
+  checked: string | undefined;
+}
+
 /** What the page shows, as a person would read it off. */
 export class Bench {
   readonly page: Page;
@@ -148,12 +158,13 @@ export class Bench {
   }
 
   /** The result as the page hands it over. */
-  async result(): Promise<Map<string, { tray: string; probability: string }>> {
+  async result(): Promise<Map<string, Row>> {
     const download = this.page.waitForEvent('download');
     await this.page.getByRole('button', { name: 'Take result' }).click();
     const rows = parseCsv(await textOf(await download));
-    expect(rows[0]).toEqual(['item', 'tray', 'probability']);
-    return new Map(rows.slice(1).map(([item = '', tray = '', probability = '']) => [item, { tray, probability }]));
+    expect(rows[0]?.slice(0, 5)).toEqual(['item', 'tray', 'probability', 'plausible', 'set aside']);
+    const named = ([item = '', tray = '', probability = '', plausible = '', aside = '', checked]: string[]) => [item, { tray, probability, plausible, aside, checked }] as const;
+    return new Map(rows.slice(1).map(named));
   }
 }
 

@@ -16,12 +16,16 @@ import './shelves';
 import { handOver } from './result';
 import { isStarter, Past } from './past';
 import './past-panel';
+import './spot-check';
 import './starter-line';
 import { shared } from './styles';
+import { Trust } from './trust';
+import './trust-line';
+import './trust-panel';
 import './welcome';
 import { words } from './words';
 
-type Opened = { panel: 'help' | 'start-over' | 'camera' | 'past' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
+type Opened = { panel: 'help' | 'start-over' | 'camera' | 'past' | 'trust' | 'spot-check' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
 
 const SINGLE_KEYS = 'single-keys';
 /** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
@@ -35,6 +39,7 @@ export class Bench extends LitElement {
   static override properties = {
     desk: { state: true },
     past: { state: true },
+    trust: { state: true },
     failed: { state: true },
     opened: { state: true },
     dropping: { state: true },
@@ -44,6 +49,7 @@ export class Bench extends LitElement {
 
   declare desk: Desk | undefined;
   declare past: Past | undefined;
+  declare trust: Trust | undefined;
   declare failed: unknown;
   declare opened: Opened | undefined;
   declare dropping: boolean;
@@ -82,6 +88,8 @@ export class Bench extends LitElement {
     const redraw = () => this.requestUpdate();
     const [desk, past] = await Promise.all([Desk.lay(client, redraw), Past.open(redraw)]);
     past?.serve(this.renderRoot, desk);
+    this.trust = new Trust(desk, redraw, () => this.#stated());
+    this.trust.serve(this.renderRoot);
     this.past = past;
     this.desk = desk;
     // The encoder comes while the person still looks at the page.
@@ -121,6 +129,26 @@ export class Bench extends LitElement {
     if (this.opened?.panel === 'past' || !this.past) return;
     this.past.hush();
     this.#openPanel({ panel: 'past' });
+  }
+
+  #openTrust(): void {
+    if (this.opened?.panel === 'trust' || !this.trust) return;
+    this.trust.open();
+    this.#openPanel({ panel: 'trust' });
+  }
+
+  /** Draws a spot check, and shows its items. */
+  async #startCheck(): Promise<void> {
+    if (await this.trust?.start()) this.#look();
+  }
+
+  #look(): void {
+    this.opened = { panel: 'spot-check' };
+  }
+
+  #stated(): void {
+    // The dialog goes without telling that it was closed.
+    if (this.opened?.panel === 'spot-check') this.opened = { panel: 'trust' };
   }
 
   async #learn(): Promise<void> {
@@ -222,6 +250,8 @@ export class Bench extends LitElement {
         return this.#shelves?.resume();
       case 'past':
         return this.#openPast();
+      case 'trust':
+        return this.#openTrust();
       case 'help':
         return this.#openPanel({ panel: 'help' });
     }
@@ -314,6 +344,13 @@ export class Bench extends LitElement {
     on('clear', () => void this.#clear());
     on('past', () => this.#openPast());
     on('learn', () => void this.#learn());
+    on('trust', () => this.#openTrust());
+    on('start-check', () => void this.#startCheck());
+    on('look', () => this.#look());
+    on<{ item: number }>('take-out', ({ item }) => {
+      this.#closePanel();
+      this.#take(item);
+    });
   }
 
   protected override createRenderRoot(): HTMLElement | DocumentFragment {
@@ -332,6 +369,7 @@ export class Bench extends LitElement {
   async #clear(): Promise<void> {
     this.#closePanel();
     this.#shelves?.tiles.clear();
+    this.trust?.forget();
     localStorage.removeItem(HAS_PILE);
     await this.desk?.clear();
   }
@@ -357,6 +395,7 @@ export class Bench extends LitElement {
         <p class="row">
           <strong>${words.private}</strong>
           <button class="plain" @click=${() => this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
+          ${bench && this.trust ? html`<button class="plain" @click=${() => this.#openTrust()}>${words.trust.open}</button>` : nothing}
           ${this.past ? html`<button class="plain" @click=${() => this.#openPast()}>${words.past}</button>` : nothing}
           ${bench
             ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
@@ -416,6 +455,8 @@ export class Bench extends LitElement {
           .trays=${desk.snapshot?.trays ?? []}
           .ranking=${desk.ranking}
           .guess=${desk.guess}
+          .plausible=${desk.plausible}
+          .setAside=${desk.setAside}
           .given=${desk.given}
           .status=${desk.handStatus}
           ?outOfTurn=${desk.outOfTurn}
@@ -424,6 +465,7 @@ export class Bench extends LitElement {
       </div>
       <div class="side">
         ${this.#starterLine()}
+        <ken-trust-line .known=${this.trust?.line()} .check=${desk.snapshot?.check}></ken-trust-line>
         <ken-shelves
           .view=${desk.view}
           .snapshot=${desk.snapshot}
@@ -455,6 +497,25 @@ export class Bench extends LitElement {
     }
     if (!opened || !desk) return nothing;
     switch (opened.panel) {
+      case 'trust': {
+        const view = this.trust?.view();
+        if (!view) return nothing;
+        return html`<ken-trust-panel class="panel" .view=${view} .items=${desk.items} .pictureOf=${this.#pictureOfItem} ?singleKeys=${this.singleKeys}></ken-trust-panel>`;
+      }
+      case 'spot-check': {
+        const { snapshot } = desk;
+        if (!snapshot?.check) return nothing;
+        return html`<ken-spot-check
+          class="panel"
+          .check=${snapshot.check}
+          .snapshot=${snapshot}
+          .items=${desk.items}
+          .pictureOf=${this.#pictureOfItem}
+          .originalOf=${this.#originalOfItem}
+          .problem=${this.trust?.problem ?? ''}
+          ?singleKeys=${this.singleKeys}
+        ></ken-spot-check>`;
+      }
       case 'zoom':
         return html`<ken-zoom class="panel" .picture=${this.#zoomed} .name=${desk.items[opened.item]?.name ?? ''}></ken-zoom>`;
       case 'start-over': {
@@ -471,6 +532,10 @@ export class Bench extends LitElement {
       }
     }
   }
+
+  readonly #pictureOfItem = (item: number): string | undefined => this.#shelves?.tiles.url(item);
+
+  readonly #originalOfItem = async (item: number): Promise<Blob | undefined> => this.desk?.client.original(item);
 
   #failure(): TemplateResult {
     const code = this.failed instanceof KenspeckleError ? this.failed.code : (this.failed as { code?: string }).code;

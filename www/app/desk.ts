@@ -1,5 +1,6 @@
 import {
   type Action,
+  Aside,
   type Item,
   messageOf,
   type PileClient,
@@ -10,7 +11,7 @@ import {
   type Source,
   Status,
 } from '../kit/client';
-import { type BenchView, changedAnswer, layOut, moved } from './view';
+import { asideOf, type BenchView, changedAnswer, layOut, moved, plausibleOf } from './view';
 import { words } from './words';
 
 /** What lies on the bench: the pile, the item in hand, and what has to be said. */
@@ -80,6 +81,17 @@ export class Desk {
     return of && of.tray >= 0 && of.status !== Status.answered ? of.tray : undefined;
   }
 
+  /** The trays that can't be ruled out for the item in hand, unless it is answered. */
+  get plausible(): readonly number[] | undefined {
+    if (this.hand === undefined || !this.snapshot || this.guess === undefined) return undefined;
+    return plausibleOf(this.snapshot, this.hand);
+  }
+
+  /** Why the sorter sets the item in hand aside, if it does. */
+  get setAside(): number {
+    return this.hand === undefined || !this.snapshot ? Aside.not : asideOf(this.snapshot.verdicts, this.hand);
+  }
+
   get outOfTurn(): boolean {
     return this.#held === 'person' && this.snapshot?.question !== undefined && this.snapshot.question !== this.hand;
   }
@@ -137,6 +149,11 @@ export class Desk {
   async answer(tray: number, item = this.hand): Promise<void> {
     if (item === undefined) return;
     await this.#act({ do: 'answer', item, tray }, item, words.placed(this.trayName(tray)));
+  }
+
+  /** The person looked at a doubted answer again. */
+  async settleDoubt(item: number, tray: number): Promise<void> {
+    await this.#act({ do: 'settle-doubt', item, tray }, undefined, words.placed(this.trayName(tray)));
   }
 
   async answerNew(name: string): Promise<void> {

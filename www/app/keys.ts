@@ -1,6 +1,6 @@
 export type Command =
   | { do: 'tray'; place: number }
-  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' };
+  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' | 'trust' };
 
 const single: Record<string, Command> = {
   enter: { do: 'guess' },
@@ -12,6 +12,7 @@ const single: Record<string, Command> = {
   z: { do: 'zoom' },
   q: { do: 'back' },
   p: { do: 'past' },
+  h: { do: 'trust' },
   delete: { do: 'remove' },
   backspace: { do: 'remove' },
   '?': { do: 'help' },

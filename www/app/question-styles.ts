@@ -134,6 +134,11 @@ export const questionStyles = css`
     font-size: 0.8rem;
     line-height: 1.3;
   }
+  .choice.plausible {
+    flex-wrap: wrap;
+    row-gap: 0;
+    border: 2px dashed var(--edge);
+  }
   .choice.given {
     box-shadow: inset 0 0 0 2px var(--ink);
   }

@@ -21,6 +21,8 @@ export class Question extends LitElement {
     trays: { attribute: false },
     ranking: { attribute: false },
     guess: { attribute: false },
+    plausible: { attribute: false },
+    setAside: { attribute: false },
     status: { attribute: false },
     given: { attribute: false },
     outOfTurn: { type: Boolean },
@@ -34,6 +36,10 @@ export class Question extends LitElement {
   declare ranking: Ranked[];
   /** The tray the sorter puts it in, if it dares. */
   declare guess: number | undefined;
+  /** The trays that can't be ruled out; absent where nothing is guessed. */
+  declare plausible: readonly number[] | undefined;
+  /** Why the sorter sets it aside; 0: it does not. */
+  declare setAside: number;
   declare status: number;
   /** The tray the person put it in. */
   declare given: number | undefined;
@@ -46,6 +52,7 @@ export class Question extends LitElement {
     this.trays = [];
     this.ranking = [];
     this.status = 0;
+    this.setAside = 0;
     this.outOfTurn = false;
     this.text = '';
     this.active = 0;
@@ -89,7 +96,7 @@ export class Question extends LitElement {
 
   /** The next question takes the keys: what was focused belonged to the last one. */
   override updated(changed: PropertyValues<this>): void {
-    if (changed.has('guess') || this.#isNext(changed)) this.#showGuess();
+    if (changed.has('guess') || changed.has('ranking') || this.#isNext(changed)) this.#showGuess();
     if (!this.#isNext(changed)) return;
     if (this.#hadFocus) this.settle();
     // Not for the first item: nothing has been answered yet.
@@ -184,7 +191,7 @@ export class Question extends LitElement {
           />
           <button class="zoom" @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
         </div>
-        ${this.#standing()}
+        ${this.#standing()} ${this.#doubtful()}
         ${this.trays.length > 0 && !typing ? this.#rows() : nothing}
         <div class="field">
           <input
@@ -240,6 +247,13 @@ export class Question extends LitElement {
     </p>`;
   }
 
+  /** What the sorter has to say against its own guess. */
+  #doubtful(): TemplateResult | typeof nothing {
+    const reason = words.reasons[this.setAside];
+    const text = reason ? words.setAsideSince(reason) : this.plausible?.length === 0 ? words.nothingPlausible : undefined;
+    return text ? html`<p class="standing">${text}</p>` : nothing;
+  }
+
   #rows(): TemplateResult {
     const probability = new Map(this.ranking.map((ranked) => [ranked.tray, ranked.probability]));
     return html`<ul class="rows" aria-label=${words.choices}>
@@ -249,10 +263,11 @@ export class Question extends LitElement {
         ({ tray, name }, place) => {
           const share = this.guess === undefined ? undefined : probability.get(tray);
           const guessed = tray === this.guess;
+          const plausible = !guessed && (this.plausible?.includes(tray) ?? false);
           const key = trayKey(place);
           return html`<li>
             <button
-              class="choice ${guessed ? 'guessed' : ''} ${tray === this.given ? 'given' : ''}"
+              class="choice ${guessed ? 'guessed' : ''} ${plausible ? 'plausible' : ''} ${tray === this.given ? 'given' : ''}"
               title=${name}
               ${fraction(share ?? 0)}
               @click=${() => tell(this, 'answer', { tray })}
@@ -263,6 +278,7 @@ export class Question extends LitElement {
               <span class="label">${name}</span>
               ${share === undefined ? nothing : html`<span class="figure">${percent(share)}</span>`}
               ${guessed ? html`<span class="guess">${words.guess} <kbd class="hint">Enter</kbd></span>` : nothing}
+              ${plausible ? html`<span class="guess">${words.plausible}</span>` : nothing}
             </button>
           </li>`;
         },

@@ -1,24 +1,51 @@
-import { Status } from '../kit/client';
+import { Aside, type CheckView, Status } from '../kit/client';
 import { csv } from '../kit/csv';
 import type { Desk } from './desk';
+import { asideOf, plausibleOf } from './view';
+import { words } from './words';
 
 const FILE = 'sorted-pile.csv';
 
+/** What the spot check said of each item it looked at, if its statement is about the pile as it is. */
+function checked(check: CheckView | undefined): Map<number, string> | undefined {
+  if (!check?.statement || !check.aboutNow) return undefined;
+  const said = words.trust.judged;
+  return new Map(check.sample.map(({ item, judgement }) => [item, typeof judgement === 'string' ? said[judgement] : said.belongs]));
+}
+
+/** The table's columns; the last one only where a spot check is about it. */
+function columns(check: CheckView | undefined): string[] {
+  const { plausible, aside, checked: spotCheck } = words.trust.columns;
+  return ['item', 'tray', 'probability', plausible, aside, ...(checked(check) ? [spotCheck] : [])];
+}
+
 /** One line an item; no tray for what is not sorted or set aside. */
 function rows(desk: Desk): string[][] {
-  if (!desk.snapshot) return [];
-  const { tray, probability, status } = desk.snapshot.verdicts;
+  const { snapshot } = desk;
+  if (!snapshot) return [];
+  const { tray, probability, status } = snapshot.verdicts;
+  const said = checked(snapshot.check);
   return desk.items
     .filter(({ number }) => status[number] !== Status.removed)
     .map(({ number, name }) => {
-      const placed = tray[number] ?? -1;
-      return placed < 0 ? [name, '', ''] : [name, desk.trayName(placed), (probability[number] ?? 0).toFixed(4)];
+      const reason = asideOf(snapshot.verdicts, number);
+      const placed = reason === Aside.not ? (tray[number] ?? -1) : -1;
+      const plausible = status[number] === Status.none ? '' : plausibleOf(snapshot, number).map((one) => desk.trayName(one)).join('; ');
+      const aside = status[number] === Status.none ? words.trust.byYou : (words.reasons[reason] ?? '');
+      return [
+        name,
+        placed < 0 ? '' : desk.trayName(placed),
+        placed < 0 ? '' : (probability[number] ?? 0).toFixed(4),
+        plausible,
+        aside,
+        ...(said ? [said.get(number) ?? ''] : []),
+      ];
     });
 }
 
 /** Saves the result as a table. Returns the file's name. */
 export function handOver(desk: Desk): string {
-  const table = csv([['item', 'tray', 'probability'], ...rows(desk)]);
+  const table = csv([columns(desk.snapshot?.check), ...rows(desk)]);
   save(new Blob([table], { type: 'text/csv' }), FILE);
   return FILE;
 }

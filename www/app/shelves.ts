@@ -149,8 +149,8 @@ export class Shelves extends LitElement {
       drawn.push({ tray: PILE, name: words.pile, place: -1, note: words.pileHint, back: view.pile, front: [] });
     }
     for (const shelf of view.shelves) drawn.push({ ...shelf, note: '' } satisfies ShelfView & Drawn);
-    if (view.aside.length > 0) {
-      drawn.push({ tray: ASIDE, name: words.aside, place: -1, note: words.asideHint, back: view.aside, front: [] });
+    if (view.aside.length + view.asideBySorter.length > 0) {
+      drawn.push({ tray: ASIDE, name: words.aside, place: -1, note: words.asideHint, back: view.aside, front: view.asideBySorter });
     }
     return drawn;
   }
@@ -196,14 +196,14 @@ export class Shelves extends LitElement {
     >
       <div class="rows">
         <div class="back" role="group" aria-label=${isTray ? words.sureOf(name) : name} ?hidden=${shelf.back.length === 0}></div>
-        <div class="front" role="group" aria-label=${words.unsureOf(name)} ?hidden=${shelf.front.length === 0}></div>
+        <div class="front" role="group" aria-label=${isTray ? words.unsureOf(name) : words.asideBySorter} ?hidden=${shelf.front.length === 0}></div>
         ${total === 0 ? html`<p class="soft empty">${words.emptyTray}</p>` : nothing}
       </div>
       <div class="plate">
         ${key && isTray ? html`<kbd class="hint" aria-hidden="true">${key}</kbd>` : nothing}
         <h3 title=${name}>${name}</h3>
         <span class="soft total">${count(total)}${shelf.note ? html`, ${shelf.note}` : nothing}</span>
-        ${shelf.front.length > 0 ? html`<span class="unsure">${count(shelf.front.length)} ${words.unsure}</span>` : nothing}
+        ${shelf.front.length > 0 ? html`<span class="unsure">${count(shelf.front.length)} ${isTray ? words.unsure : words.bySorter}</span>` : nothing}
         <span class="space"></span>
         ${hidden > 0 || open
           ? html`<button

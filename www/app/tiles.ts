@@ -1,6 +1,7 @@
 import { css } from 'lit';
-import { type Item, type Snapshot, Status } from '../kit/client';
+import { Aside, type Item, type Snapshot, Status } from '../kit/client';
 import { ITEM_TYPE } from './event';
+import { asideOf, plausibleOf } from './view';
 import { percent, words } from './words';
 
 interface Tile {
@@ -75,11 +76,22 @@ export class Tiles {
     const probability = verdicts?.probability[item] ?? 0;
     const status = verdicts?.status[item] ?? Status.sorted;
     const sorted = (verdicts?.tray[item] ?? -1) >= 0;
-    const kind = status === Status.answered ? 'answered' : status === Status.none ? 'aside' : sorted ? 'sorted' : 'unsorted';
+    const reason = verdicts ? asideOf(verdicts, item) : Aside.not;
+    const kind =
+      status === Status.answered
+        ? 'answered'
+        : status === Status.none
+          ? 'aside'
+          : reason !== Aside.not
+            ? 'unlike'
+            : sorted
+              ? 'sorted'
+              : 'unsorted';
     const how = {
       answered: words.howAnswered,
       aside: words.howAside,
-      sorted: words.howSure(probability),
+      unlike: words.reasons[reason] ?? '',
+      sorted: words.howSure(probability, this.#others(item)),
       unsorted: words.howUnsorted,
     }[kind];
     const { element, figure } = tile;
@@ -89,10 +101,18 @@ export class Tiles {
     if (element.ariaLabel !== label) {
       element.ariaLabel = label;
       element.title = label;
-      figure.textContent = kind === 'sorted' ? percent(probability) : '';
-      element.style.setProperty('--fraction', probability.toFixed(3));
+      figure.textContent = kind === 'sorted' ? percent(probability) : kind === 'unlike' ? (words.reasonsShort[reason] ?? '') : '';
+      element.style.setProperty('--fraction', kind === 'sorted' ? probability.toFixed(3) : '0');
     }
     return tile;
+  }
+
+  /** Names of the plausible trays other than the one it is in. */
+  #others(item: number): string[] {
+    if (!this.#snapshot) return [];
+    const { trays, verdicts } = this.#snapshot;
+    const others = plausibleOf(this.#snapshot, item).filter((tray) => tray !== verdicts.tray[item]);
+    return others.map((tray) => trays.find((one) => one.tray === tray)?.name ?? '');
   }
 
   #make(item: number): Tile {

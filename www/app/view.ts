@@ -1,4 +1,4 @@
-import { type Item, type Snapshot, Status } from '../kit/client';
+import { Aside, type Item, type Snapshot, Status, type Verdicts } from '../kit/client';
 
 /** From here on an item stands at the back of its shelf. Only for the look: nothing is decided by it. */
 export const SURE = 0.8;
@@ -25,10 +25,23 @@ export interface Tally {
   aside: number;
 }
 
+/** Why the sorter sets an item aside; `Aside.not` also for what the person spoke of. */
+export function asideOf(verdicts: Verdicts, item: number): number {
+  return verdicts.setAside[item] ?? Aside.not;
+}
+
+/** The trays that can't be ruled out for an item, most probable first. */
+export function plausibleOf({ plausible }: Snapshot, item: number): number[] {
+  return [...plausible.trays.subarray(plausible.starts[item] ?? 0, plausible.starts[item + 1] ?? 0)];
+}
+
 export interface BenchView {
   shelves: ShelfView[];
   pile: number[];
+  /** By the person. */
   aside: number[];
+  /** By the sorter, by reason. */
+  asideBySorter: number[];
   tally: Tally;
 }
 
@@ -41,6 +54,7 @@ export function layOut(snapshot: Snapshot, items: readonly Item[]): BenchView {
   const byTray = new Map(shelves.map((shelf) => [shelf.tray, shelf]));
   const pile: number[] = [];
   const aside: number[] = [];
+  const asideBySorter: number[] = [];
   const tally: Tally = { items: 0, answered: 0, sure: 0, unsure: 0, unsorted: 0, aside: 0 };
   for (let item = 0; item < Math.min(status.length, items.length); item++) {
     if (status[item] === Status.removed) continue;
@@ -48,6 +62,9 @@ export function layOut(snapshot: Snapshot, items: readonly Item[]): BenchView {
     const shelf = byTray.get(tray[item] ?? -1);
     if (status[item] === Status.none) {
       aside.push(item);
+      tally.aside++;
+    } else if (asideOf(snapshot.verdicts, item) !== Aside.not) {
+      asideBySorter.push(item);
       tally.aside++;
     } else if (!shelf) {
       pile.push(item);
@@ -71,7 +88,13 @@ export function layOut(snapshot: Snapshot, items: readonly Item[]): BenchView {
     shelf.back.sort(surer);
     shelf.front.sort((a, b) => -surer(a, b));
   }
-  return { shelves, pile, aside, tally };
+  asideBySorter.sort((a, b) => asideOf(snapshot.verdicts, a) - asideOf(snapshot.verdicts, b) || a - b);
+  return { shelves, pile, aside, asideBySorter, tally };
+}
+
+/** The shelf an item is on. */
+function placeOf(verdicts: Verdicts, item: number): number | 'aside' | undefined {
+  return asideOf(verdicts, item) === Aside.not ? verdicts.tray[item] : 'aside';
 }
 
 /** Items other than `except` that the sorter put elsewhere than before. */
@@ -80,7 +103,7 @@ export function moved(before: Snapshot | undefined, after: Snapshot, except: num
   if (!before) return result;
   const length = Math.min(before.verdicts.tray.length, after.verdicts.tray.length);
   for (let item = 0; item < length; item++) {
-    if (item !== except && before.verdicts.tray[item] !== after.verdicts.tray[item]) result.add(item);
+    if (item !== except && placeOf(before.verdicts, item) !== placeOf(after.verdicts, item)) result.add(item);
   }
   return result;
 }

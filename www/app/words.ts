@@ -42,6 +42,8 @@ const undone: Record<string, string> = {
   'merge-trays': 'putting two trays together',
   'remove-tray': 'taking a tray away',
   'remove-item': 'taking an item out',
+  keep: 'leaving a doubted answer',
+  'spot-check': 'the answers of a spot check',
 };
 
 export const words = {
@@ -67,6 +69,9 @@ export const words = {
   yourNone: 'You set it aside',
   askedEarlier: 'You couldn’t tell',
   guess: 'sorter’s guess',
+  plausible: 'plausible',
+  setAsideSince: (reason: string) => `Set aside by the sorter: ${reason}.`,
+  nothingPlausible: 'No tray is as probable as usual: it may be something new.',
   findTray: 'Name a new tray, or find one',
   firstTray: 'Name the tray it belongs in',
   firstTrayHint: 'Any name you would write on a label. Then Enter.',
@@ -86,7 +91,12 @@ export const words = {
   pile: 'The pile',
   pileHint: 'not sorted yet',
   aside: 'Set aside',
-  asideHint: 'none of the trays',
+  asideHint: 'in no tray',
+  asideBySorter: 'Set aside by the sorter',
+  bySorter: 'by the sorter',
+  /** By number of the reason. */
+  reasons: ['', 'unlike anything shown', 'between trays', 'too little to judge by'],
+  reasonsShort: ['', 'unlike', 'between', 'too little'],
   sureOf: (tray: string) => `${tray}: sure`,
   unsureOf: (tray: string) => `${tray}: unsure, least sure first`,
   unsure: 'unsure',
@@ -96,7 +106,8 @@ export const words = {
   fewer: 'Show fewer',
   tile: (name: string, tray: string, how: string) => `${name}, ${tray}, ${how}`,
   howAnswered: 'your answer',
-  howSure: (probability: number) => `${percent(probability)} sure`,
+  howSure: (probability: number, others: readonly string[]) =>
+    `${percent(probability)} sure${others.length > 0 ? `; ${others.join(', ')} plausible too` : ''}`,
   howUnsorted: 'not sorted',
   howAside: 'set aside by you',
   trayMenu: (tray: string) => `Rename, merge or remove ${tray}`,
@@ -244,6 +255,144 @@ export const words = {
   forgot: 'Forgotten. What the other piles taught was learned anew without it.',
   forgotAll: 'All past piles and starters are forgotten.',
 
+  // How far the sorting can be relied on
+  trust: {
+    title: 'How sure?',
+    tabs: { sure: 'How sure', doubts: 'Doubts', check: 'Spot check' },
+    line: (right: number, judged: number, low: number, high: number) =>
+      `Judged by the others, ${count(right)} of ${answers(judged)} fall where you put them (${percent(low)} to ${percent(high)})`,
+    lineDoubts: (n: number) => (n === 1 ? '1 doubt' : `${count(n)} doubts`),
+    lineCheck: (done: number, of: number) => `Spot check: ${count(done)} of ${count(of)} looked at`,
+    open: 'How sure?',
+    reckoning: 'Being reckoned …',
+    tooFew: 'It takes answers in two trays before anything can be said.',
+    range: (low: number, high: number) => `${percent(low)} to ${percent(high)}`,
+    asTable: 'As a table',
+    take: (name: string) => `Take ${name} in hand`,
+    now: 'now',
+
+    overall: 'How well your answers sort each other',
+    overallHow:
+      'Each answer is judged by the others, as if you had not given it. The line across a bar shows what so few can promise: in 95 of 100 piles the truth is within it. What was asked about is harder than most, so the rest is usually sorted better.',
+    notYet: (n: number) => `Nothing can be known yet from ${answers(n)}: it takes two in one tray.`,
+    shareWords: (right: number, judged: number, low: number, high: number) =>
+      `${count(right)} of ${answers(judged)} would have gone where you put them; from so few, anything from ${percent(low)} to ${percent(high)} is possible.`,
+    shareShort: (right: number, judged: number, low: number, high: number) =>
+      `${count(right)} of ${count(judged)}: ${percent(low)} to ${percent(high)}`,
+    byTray: 'The same by tray',
+    tray: 'Tray',
+    share: 'Answers that the others put there too',
+    single: 'one answer: can’t be known yet',
+    notJudged: 'not judged',
+
+    confused: 'What gets confused',
+    nothingConfused: 'Nothing so far: the others put every answer where you did.',
+    takenFor: (n: number, tray: string, other: string) => `${count(n)} of ${tray} taken for ${other}`,
+    looksLike: (tray: string) => `${tray}:`,
+
+    ahead: 'What more answers would bring',
+    target: 'Sorted right, as much as',
+    projection: ({ target, low, likely, high }: { target: number; low: number; likely: number | null; high: number | null }, left: number) => {
+      const goal = percent(target);
+      const beyond = likely !== null && likely > left ? ` The pile has only ${count(left)} more.` : '';
+      if (likely === 0 && high === 0) return `${goal} is reached, even if everything is on the slow side.`;
+      if (likely === 0 && high !== null) return `${goal} is probably reached; to be safe, up to ${count(high)} more answers.`;
+      if (likely === 0) return `${goal} is probably reached; how many more answers make it safe can’t be told yet.`;
+      if (likely === null) return `At least ${count(low)} more answers to reach ${goal}; how many can’t be told from these.`;
+      return `About ${count(likely)} more answers to reach ${goal}: at least ${count(low)}, ${high === null ? 'how many at most can’t be told yet' : `at most ${count(high)}`}.${beyond}`;
+    },
+    moreAnswers: 'more answers',
+    likely: 'likely',
+    possible: 'possible',
+    aheadHow: 'The line is the likeliest way on, the band what is possible, the dashed line what you want to reach. Judged by your answers alone, and a guess: look again when you get there.',
+    noCurve: 'Can’t be told yet: it takes three answers in one tray.',
+
+    calibration: 'Do the percentages keep their word?',
+    calibrationError: (error: number) => `They are off by ${percent(error)} on average.`,
+    calibrationHow: 'A dot on the dashed line: of what is called 80% sure, 80% was right. Below it the sorter was too sure of itself, above it too modest. Lines show how little so few answers can tell.',
+    said: 'sorter said',
+    came: 'was right',
+    answersColumn: 'answers',
+    scores: (brier: number, logLoss: number) => `Brier score ${brier.toFixed(3)} (0 to 2), log loss ${logLoss.toFixed(3)}; the less the better.`,
+
+    terms: 'How careful it should be',
+    confidence: 'Confidence of plausible trays',
+    confidenceHint: (share: number) => `The right tray is among the plausible ones for about ${percent(share)} of the items, as far as they are like your answers.`,
+    asideShare: 'How many known items may be set aside',
+    asideHint: 'What is unlike anything shown goes to no tray. The more of what does belong somewhere may be lost with it, the more strangers are found.',
+    onlySure: 'Sort only what has exactly one plausible tray; set the rest aside',
+    termsSet: 'The pile was sorted anew.',
+
+    doubtsHow: 'Answers that something else speaks against, the gravest first. Look at each: you may well be right.',
+    noDoubts: 'No doubts: nothing speaks against any of your answers.',
+    noDoubtsHint: 'Only trays with two answers or more can raise any.',
+    doubtOf: (name: string, tray: string, rather: string) => `${name}: ${tray}, or rather ${rather}?`,
+    why: {
+      contradicted: (rather: string) => `The other answers speak for ${rather}.`,
+      duplicate: (rather: string) => `All but the same lies in ${rather}.`,
+      changed: (rather: string) => `You put it in ${rather} before.`,
+    } as Record<string, (rather: string) => string>,
+    youSaid: (tray: string) => `You said ${tray}`,
+    othersSay: (tray: string) => `Rather ${tray}`,
+    twinIn: (tray: string) => `This one is in ${tray}`,
+    keep: (tray: string) => `Leave in ${tray}`,
+    move: (tray: string) => `Move to ${tray}`,
+    kept: (tray: string) => `Stays in ${tray}, and is not doubted again.`,
+    changed: (tray: string) => `Moved to ${tray}.`,
+
+    planning: 'Look at a random sample, and sign for the rest',
+    planningHow: 'All else here is judged by your own answers. A spot check needs no such faith: it draws items at random from what the sorter sorted, you say of each whether it is right, and it tells what that promises about all of them.',
+    tolerance: 'May be wrong in the end, at most',
+    checkConfidence: 'How sure you want to be of that',
+    allowed: 'Wrong ones allowed among those looked at',
+    none: 'none',
+    byTrayCheck: 'From each tray its share, tray by tray (a few more to look at)',
+    size: (of: number) => `to look at, of ${count(of)} that the sorter sorted.`,
+    start: (n: number) => `Start: look at ${count(n)}`,
+    nothingToCheck: 'The sorter has sorted nothing yet, so there is nothing to check.',
+    underWay: 'A spot check is under way',
+    lookedAt: 'looked at',
+    lookedAtOf: (done: number, of: number) => `${count(done)} of ${count(of)} looked at`,
+    goOn: 'Go on',
+    toTheEnd: 'To the end',
+    giveUp: 'Give it up',
+    giveUpHint: 'It stays as it is until you go on, also after a reload. Given up, it makes no statement; what you looked at stays answered.',
+    pause: 'Pause',
+    isIt: (tray: string) => `${tray}: is that right?`,
+    right: 'Right',
+    elsewhere: 'Wrong? It belongs in',
+    allLookedAt: 'All looked at',
+    tally: (right: number, wrong: number, untold: number) =>
+      `${count(right)} right, ${count(wrong)} wrong${untold > 0 ? `, ${count(untold)} can’t be told (they count as wrong)` : ''}.`,
+    allLookedAtHint: 'With the statement they all become answers, the wrong ones corrected. Undo leads back to the last one.',
+    state: 'Make the statement',
+    stated: 'Stated. What you looked at counts as answered.',
+    dropped: 'The spot check is given up. What you looked at stays answered.',
+    statementTitle: 'What it shows',
+    statementHow: 'True with the stated confidence, whatever the pile is, provided that you looked at every one and that the sort is used as it was drawn from. Items that you answered or that are set aside are no part of it.',
+    statementTrays: 'Tray by tray',
+    sortedColumn: 'sorted',
+    wrongColumn: 'wrong',
+    untoldColumn: 'can’t tell',
+    aboutNow: 'This is about the pile as it is sorted now.',
+    aboutEarlier: 'This is about the sort as it was: answers have come in since, and items may lie elsewhere now. For a statement about the pile as it is, check again.',
+    holds: (tolerance: number) => `That is within the ${percent(tolerance)} you tolerate.`,
+    holdsNot: (tolerance: number) =>
+      `That is more than the ${percent(tolerance)} you tolerate. Those found wrong are corrected; give some more answers, then check again.`,
+    copy: 'Copy the sentence',
+    copied: 'Copied.',
+    cantCopy: 'The browser does not let the page copy. Select the sentence and copy it.',
+    saveNote: 'Save a note to hand over',
+    noteTitle: 'Spot check',
+    noteRest: (given: number, aside: number) => `No part of it: ${answers(given)} by a person, and ${count(aside)} items set aside.`,
+    noteTray: (tray: string, sorted: string, looked: string, wrong: string, untold: string) =>
+      `${tray}: ${sorted} sorted, ${looked} looked at, ${wrong} wrong, ${untold} can't be told`,
+    again: 'Check again',
+    columns: { plausible: 'plausible', aside: 'set aside', checked: 'spot check' },
+    byYou: 'none of these',
+    judged: { right: 'right', wrong: 'taken out', untold: 'can’t tell', belongs: 'corrected' },
+  },
+
   // Camera
   cameraTitle: 'Take pictures into the pile',
   shoot: 'Take picture',
@@ -262,6 +411,7 @@ export const words = {
     'Say for the item in hand which tray it belongs in: press its number, or name a new tray.',
     'The pile sorts itself after every answer. Sure ones stand at the back of a shelf, unsure ones come forward to the edge.',
     'See one in the wrong place? Click it and answer, or drag it onto the right shelf.',
+    'How sure is it? See what gets confused, settle doubts, and look at a random sample to sign for the rest.',
     'Good enough? Take the result: a table with one line an item.',
     'Another pile of this kind to come? Let this one teach it: then it needs fewer answers.',
   ],
@@ -279,6 +429,7 @@ export const words = {
     ['Delete', 'take the item out of the pile'],
     ['Q', 'back to the question'],
     ['P', 'what past piles taught'],
+    ['H', 'how sure: doubts, spot check'],
     ['?', 'this panel'],
   ] as const,
   singleKeys: 'Single keys act (switch off if you use speech input)',
@@ -286,7 +437,7 @@ export const words = {
   privacy:
     'Photos, trays and answers stay in this browser’s storage on this device until you start over or clear the data of this site. What past piles taught stays until you forget it. The page sends nothing: its own rules forbid it to talk to any other server.',
   limitsTitle: 'Limits',
-  limits: 'The figures say how sure the sorter is from the few examples it has seen. They are not a promise: look along the edges before you rely on a shelf.',
+  limits: 'The figures say how sure the sorter is from the few examples it has seen. They are not a promise; the sentence of a spot check is one. Look along the edges before you rely on a shelf.',
   caution:
     'A sort is a guess from a few examples. Where a wrong one could hurt someone (what is eaten, medicine, safety, decisions about people) do not rely on it: leave each item to someone licensed to judge it, and to your local rules.',
 };

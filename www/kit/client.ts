@@ -6,14 +6,17 @@ import { type Arrival, Intake, type Progress, type Source } from './intake';
 import { EncodePool } from './pool';
 import type { FinishedPile } from './past';
 import type { Saved } from './saver';
-import { type Action, type Ranked, type Snapshot, type SortApi, Status } from './sort-worker';
+import type { Judgement, SpotCheckPlan, Terms } from './core';
+import { type Action, Aside, type Ranked, type Snapshot, type SortApi, Status, type Trust } from './sort-worker';
 
 export { KenspeckleError, codeOf, messageOf } from './error';
 export { type FinishedPile, NOTHING, type PastPile, PastPiles, type StarterFacts } from './past';
 export type { Duplicate, Progress, Refused, Source } from './intake';
 export type { Saved } from './saver';
-export { Status };
-export type { Action, PileStarter, Ranked, Snapshot, Tray, Verdicts } from './sort-worker';
+export { Aside, Status };
+export type { CheckView } from './checking';
+export type { Assessment, Doubt, Judgement, Projection, Share, SpotCheckPlan, Statement, Terms } from './core';
+export type { Action, PileStarter, Ranked, Snapshot, Tray, Trust, Verdicts } from './sort-worker';
 
 /** An item of the pile, by its number. */
 export interface Item {
@@ -163,6 +166,42 @@ export class PileClient extends EventTarget {
   async encoders(): Promise<string[]> {
     await this.#pool.warm();
     return [this.#pool.facts.identity];
+  }
+
+  /** Asks for another confidence or another share to set aside. */
+  async setTerms(terms: Terms): Promise<void> {
+    this.#changed(await this.#sort.setTerms(terms));
+  }
+
+  /** How far the sorting can be relied on, and about how many more answers reach the accuracy `target` (above 0, below 1). */
+  async trust(target: number): Promise<Trust> {
+    return this.#sort.trust(target);
+  }
+
+  /** How many items a spot check would be about, and how many of them it would look at. Throws "nothing-to-check". */
+  async spotCheckSize(plan: SpotCheckPlan): Promise<{ items: number; size: number }> {
+    return this.#sort.spotCheckSize(plan);
+  }
+
+  /** Draws a spot check from the pile as it is sorted now; `snapshot.check` is it from then on. */
+  async startCheck(plan: SpotCheckPlan, seed: number): Promise<void> {
+    this.#changed(await this.#sort.startCheck(plan, seed));
+  }
+
+  /** What the person says of an item of the spot check; `null` takes it back. */
+  async judge(item: number, judgement: Judgement | null): Promise<void> {
+    const check = await this.#sort.judge(item, judgement);
+    if (this.#snapshot) this.#changed({ ...this.#snapshot, check });
+  }
+
+  /** Ends the spot check with its statement; what was looked at becomes answers. */
+  async stateCheck(date: string): Promise<void> {
+    this.#changed(await this.#sort.stateCheck(date));
+  }
+
+  /** Ends the spot check without a statement, or forgets one that was made; what was looked at stays answered. */
+  async dropCheck(): Promise<void> {
+    this.#changed(await this.#sort.dropCheck());
   }
 
   /** All trays for an item, most probable first. */

@@ -1,6 +1,18 @@
 import { expose } from './bridge';
 import * as Comlink from 'comlink';
-import { Sorter, Starter, startCore } from './core';
+import { Checking, type CheckView } from './checking';
+import {
+  type Assessment,
+  type Doubt,
+  type Judgement,
+  type PlausibleSets,
+  type Projection,
+  Sorter,
+  type SpotCheckPlan,
+  Starter,
+  startCore,
+  type Terms,
+} from './core';
 import type { EncoderFacts } from './encode-worker';
 import { KenspeckleError } from './error';
 import type { FinishedPile } from './learn-worker';
@@ -26,9 +38,23 @@ export interface Verdicts {
   runnerUpProbability: Float32Array<ArrayBuffer>;
   /** A value of `Status`. */
   status: Uint8Array<ArrayBuffer>;
+  /** A value of `Aside`: why the sorter sets it aside, if it does; such an item is in no tray. */
+  setAside: Uint8Array<ArrayBuffer>;
 }
 
 export const Status = { sorted: 0, answered: 1, none: 2, skipped: 3, removed: 4 } as const;
+
+export const Aside = { not: 0, unlike: 1, between: 2, tooLittle: 3 } as const;
+
+/** How far the sorting can be relied on. */
+export interface Trust {
+  /** Absent while fewer than two trays have an answer. */
+  assessment: Assessment | undefined;
+  /** About how many more answers reach the target. */
+  projection: Projection | undefined;
+  /** The gravest first. */
+  doubts: Doubt[];
+}
 
 /** What past piles taught this pile. */
 export interface PileStarter {
@@ -53,10 +79,13 @@ export interface Snapshot {
   canUndo: boolean;
   canRedo: boolean;
   starter: PileStarter | undefined;
+  terms: Terms;
+  plausible: PlausibleSets;
+  check: CheckView | undefined;
 }
 
 export type Action =
-  | { do: 'answer'; item: number; tray: number }
+  | { do: 'answer' | 'settle-doubt'; item: number; tray: number }
   | { do: 'answer-new'; item: number; name: string }
   | { do: 'none' | 'skip' | 'withdraw' | 'remove-item'; item: number }
   | { do: 'add-tray'; name: string }
@@ -100,6 +129,7 @@ let past: PastStore | undefined;
 let saver: Saver | undefined;
 /** Embeddings of all items, only where the browser keeps nothing. */
 let unkept: Float32Array<ArrayBuffer>[] = [];
+const checking = new Checking();
 /** Items wait while the starter changes. */
 let changing: Promise<unknown> = Promise.resolve();
 
@@ -125,16 +155,19 @@ function snapshot(): Snapshot {
       categories: starter.categories,
       name: starter.name,
     },
+    terms: pileNow.terms,
+    plausible: pileNow.plausibleSets(),
+    check: checking.view(pileNow),
   };
   return Comlink.transfer(
     all,
-    [verdicts.tray, verdicts.probability, verdicts.runnerUp, verdicts.runnerUpProbability, verdicts.status].map((a) => a.buffer),
+    [verdicts.tray, verdicts.probability, verdicts.runnerUp, verdicts.runnerUpProbability, verdicts.status, verdicts.setAside].map((a) => a.buffer),
   );
 }
 
 function save(additions: Addition[]): void {
   const now = pile();
-  if (facts) saver?.save(additions, { sorter: now.state(), encoder: facts, id, starts: now.starter !== undefined, starter });
+  if (facts) saver?.save(additions, { sorter: now.state(), encoder: facts, id, starts: now.starter !== undefined, starter, check: checking.stored });
 }
 
 /** Calls with the starter of a file, which is freed afterwards: the sorter keeps a share of its own. */
@@ -187,6 +220,8 @@ function apply(action: Action): string | undefined {
   switch (action.do) {
     case 'answer':
       return void to.answer(action.item, action.tray);
+    case 'settle-doubt':
+      return void to.settleDoubt(action.item, action.tray);
     case 'answer-new':
       return void to.answerNew(action.item, action.name);
     case 'none':
@@ -244,6 +279,7 @@ const api = {
     const all = joined(items.map(({ embedding }) => embedding));
     ({ encoder: facts, id = newId(), starter } = state);
     sorter = withStarter(state.starts ? starter : undefined, (given) => Sorter.restore(state.sorter, all, given));
+    checking.open(state.check);
     const opened = items.map(({ embedding: _, ...item }) => ({ ...item, thumbnail: thumbnails.get(item.number) }));
     return { items: opened, snapshot: snapshot(), notKept: undefined };
   },
@@ -324,6 +360,57 @@ const api = {
     return Comlink.transfer(finished, [finished.embeddings.buffer, finished.labels.buffer]);
   },
 
+  /** What the person asks of the sorter's care. */
+  setTerms(terms: Terms): Snapshot {
+    pile().setTerms(terms);
+    save([]);
+    return snapshot();
+  },
+
+  /** How far the sorting can be relied on, and about how many more answers reach the accuracy `target`. */
+  trust(target: number): Trust {
+    const now = pile();
+    return { assessment: now.assessment(), projection: now.moreAnswers(target), doubts: now.doubts() };
+  },
+
+  /** How many items a spot check would be about, and how many of them it would look at. Throws "nothing-to-check". */
+  spotCheckSize(plan: SpotCheckPlan): { items: number; size: number } {
+    const trial = pile().spotCheck(plan, 0);
+    try {
+      return { items: trial.items, size: trial.left };
+    } finally {
+      trial.free();
+    }
+  },
+
+  /** Draws a spot check from the pile as it is sorted now; another one that was there is gone. */
+  startCheck(plan: SpotCheckPlan, seed: number): Snapshot {
+    checking.start(pile(), plan, seed);
+    save([]);
+    return snapshot();
+  },
+
+  /** What the person says of an item of the spot check; `null` takes it back. */
+  judge(item: number, judgement: Judgement | null): CheckView | undefined {
+    checking.judge(item, judgement);
+    save([]);
+    return checking.view(pile());
+  },
+
+  /** Ends the spot check with its statement: what was looked at becomes answers. */
+  stateCheck(date: string): Snapshot {
+    checking.state(pile(), date);
+    save([]);
+    return snapshot();
+  },
+
+  /** Ends the spot check without a statement, or forgets one that was made: what was looked at stays answered. */
+  dropCheck(): Snapshot {
+    checking.giveUp(pile());
+    save([]);
+    return snapshot();
+  },
+
   ranking(item: number): Ranked[] {
     return pile().ranking(item) as Ranked[];
   },
@@ -346,6 +433,7 @@ const api = {
     facts = undefined;
     id = '';
     starter = undefined;
+    checking.clear();
     unkept = [];
     await saver?.clear();
   },

@@ -1,5 +1,6 @@
 import { type DBSchema, type IDBPDatabase, openDB } from 'idb';
 import type { EncoderFacts } from './encode-worker';
+import type { StoredCheck } from './checking';
 import type { KeptStarter } from './past-store';
 
 /** One item of the pile as it lies in the store. `number` is its number in the sorter. */
@@ -31,6 +32,8 @@ export interface StoredState {
   id?: string;
   /** Whether the sorter starts from the pile's starter. */
   starts?: boolean;
+  /** The pile's spot check, if it has one. */
+  check?: StoredCheck | undefined;
 }
 
 /** What a change leaves to be written. The starter is written only when it is another one than before. */
