@@ -42,6 +42,8 @@ export class Trust {
   #known: Known | undefined;
   #knownOf: Snapshot | undefined;
   #asking = false;
+  /** How often something else was asked of the same pile. */
+  #asked = 0;
   #target = 0.95;
   #plan: Required<SpotCheckPlan> = { tolerance: 0.05, confidence: 0.95, allowed: 0, byTray: false };
   #size: { items: number; size: number } | undefined;
@@ -138,6 +140,7 @@ export class Trust {
   }
 
   #again(): void {
+    this.#asked++;
     this.#knownOf = undefined;
     this.#redraw();
   }
@@ -145,6 +148,7 @@ export class Trust {
   async #ask(snapshot: Snapshot): Promise<void> {
     if (this.#asking) return;
     this.#asking = true;
+    const asked = this.#asked;
     const { client } = this.#desk;
     try {
       const [known, size] = await Promise.all([
@@ -154,12 +158,12 @@ export class Trust {
       ]);
       this.#known = known;
       this.#size = size;
-      this.#knownOf = snapshot;
     } catch (error) {
       this.#problem = messageOf(error);
-      this.#knownOf = snapshot;
     } finally {
       this.#asking = false;
+      // What was asked meanwhile is asked again.
+      this.#knownOf = asked === this.#asked ? snapshot : undefined;
       this.#redraw();
     }
   }
