@@ -1,9 +1,9 @@
 /**
  * A cell that a spreadsheet would take for a formula gets an apostrophe in front, so that a file's name can't become a
- * command in the program that opens the table.
+ * command in the program that opens the table. A number with a sign is none.
  */
 function neutral(cell: string): string {
-  return /^[=+\-@\t\r]/.test(cell) ? `'${cell}` : cell;
+  return /^[=+\-@\t\r]/.test(cell) && !/^[+-]?\d+([.,]\d+)?$/.test(cell) ? `'${cell}` : cell;
 }
 
 function quoted(cell: string): string {
