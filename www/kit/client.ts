@@ -1,15 +1,22 @@
 import * as Comlink from 'comlink';
 import { deleteDB } from 'idb';
-import { type Assets, bundledAssets, compileCore, fetchBytes } from './core';
-import type { ReadPhoto } from './encode-worker';
-import { type Arrival, Intake, type Progress, type Source } from './intake';
-import { EncodePool } from './pool';
+import { type Kind, kindOf } from './core';
+import { KenspeckleError } from './error';
+import { type Arrival, Intake, type NoteArrival, type NoteSource, type PhotoArrival, type Progress, type Source } from './intake';
+import type { Fetched, NoteInFile } from './notes';
+import { Readers } from './readers';
 import type { FinishedPile } from './past';
 import type { Saved } from './saver';
+import type { NoteFile, NoteRow } from './store';
 import type { Judgement, SpotCheckPlan, Terms } from './core';
 import { type Action, Aside, type Ranked, type Snapshot, type SortApi, Status, type Trust } from './sort-worker';
 
+export { type Kind, kindOf } from './core';
 export { KenspeckleError, codeOf, messageOf } from './error';
+export { type Kit, Kits } from './kits';
+export type { Fetched, HandBack, NoteInFile, TableHead } from './notes';
+export { Readers } from './readers';
+export type { NoteFile } from './store';
 export { type FinishedPile, NOTHING, type PastPile, PastPiles, type StarterFacts } from './past';
 export type { Duplicate, Progress, Refused, Source } from './intake';
 export type { Saved } from './saver';
@@ -18,21 +25,41 @@ export type { CheckView } from './checking';
 export type { Assessment, Doubt, Judgement, Projection, Share, SpotCheckPlan, Statement, Terms } from './core';
 export type { Action, PileStarter, Ranked, Snapshot, Tray, Trust, Verdicts } from './sort-worker';
 
-/** An item of the pile, by its number. */
-export interface Item {
+interface AnyItem {
   number: number;
   name: string;
+}
+
+export interface PhotoItem extends AnyItem {
   width: number;
   height: number;
   thumbnail: Blob | undefined;
 }
 
+export interface NoteItem extends AnyItem {
+  text: string;
+  /** 1 unless the note was so long that it was read in parts and averaged. */
+  parts: number;
+  /** Rows with this text. */
+  rows: number;
+}
+
+/** An item of the pile, by its number. */
+export type Item = PhotoItem | NoteItem;
+
+/** A file that notes of the pile came from, and the item in each of its rows. */
+export interface FileOfNotes extends NoteFile {
+  /** By row; nothing for one that was not read. */
+  items: readonly (number | undefined)[];
+}
+
 export interface ClientOptions {
   /** The pile's name in this origin's storage. */
   name?: string;
-  assets?: Assets;
-  /** Longest side of the small pictures, in pixels. */
-  thumbnailSide?: number;
+  /** The name that past piles are kept beside. */
+  past?: string;
+  /** Shared among the kits of a page. */
+  readers?: Readers;
 }
 
 /** How often the pile is sorted anew while photos arrive, in milliseconds: sorting it for each would take quadratic time. */
@@ -43,6 +70,8 @@ interface ClientEvents {
   change: CustomEvent<Snapshot | undefined>;
   progress: CustomEvent<Progress>;
   saved: CustomEvent<Saved>;
+  /** How the text encoder arrives; `undefined` once that is over. */
+  fetched: CustomEvent<Fetched | undefined>;
 }
 
 /**
@@ -52,11 +81,16 @@ interface ClientEvents {
 export class PileClient extends EventTarget {
   readonly #sort: Comlink.Remote<SortApi>;
   readonly #worker: Worker;
-  readonly #pool: EncodePool;
+  readonly #readers: Readers;
   readonly #intake: Intake;
   #items: Item[] = [];
+  #files: (NoteFile & { items: (number | undefined)[] })[] = [];
   /** By item number. */
   #fingerprints: string[] = [];
+  /** Of notes: item numbers by fingerprint. */
+  readonly #numbers = new Map<string, number>();
+  /** What is being added before there is a snapshot to tell. */
+  #adding: Kind | undefined;
   #snapshot: Snapshot | undefined;
   #sortedAt = -Infinity;
   /** Set while items have arrived that the pile was not sorted with. */
@@ -67,38 +101,28 @@ export class PileClient extends EventTarget {
   /** Originals of this visit: files on disk, so they cost no memory. */
   readonly #originals = new Map<number, Blob>();
 
-  private constructor(worker: Worker, pool: EncodePool, thumbnailSide: number) {
+  private constructor(worker: Worker, readers: Readers) {
     super();
     this.#worker = worker;
     this.#sort = Comlink.wrap<SortApi>(worker);
-    this.#pool = pool;
+    this.#readers = readers;
+    readers.notes.onFetch = (fetched) => this.#emit('fetched', fetched);
     this.#intake = new Intake(
-      pool,
-      thumbnailSide,
+      readers,
       (arrival) => this.#arrive(arrival),
+      (arrival) => this.#again(arrival),
       () => this.#sortArrived(),
       (progress) => this.#emit('progress', progress),
     );
   }
 
   /** Starts the workers and takes up the pile that this device keeps under the name. */
-  static async open(options: ClientOptions = {}): Promise<PileClient> {
-    const assets = options.assets ?? bundledAssets;
-    const module = compileCore(assets.wasm);
-    let encoder: Promise<Uint8Array> | undefined;
-    const pool = new EncodePool(async () => {
-      encoder ??= fetchBytes(assets.photoEncoder);
-      try {
-        return { module: await module, encoder: await encoder };
-      } catch (error) {
-        encoder = undefined;
-        throw error;
-      }
-    });
+  static async open({ name = 'kenspeckle', past = 'kenspeckle', readers = new Readers() }: ClientOptions = {}): Promise<PileClient> {
+    const module = await readers.module;
     const worker = new Worker(new URL('./sort-worker.ts', import.meta.url), { type: 'module' });
-    const client = new PileClient(worker, pool, options.thumbnailSide ?? 384);
+    const client = new PileClient(worker, readers);
     try {
-      await client.#open(await module, options.name ?? 'kenspeckle');
+      await client.#open(module, name, past);
     } catch (error) {
       worker.terminate();
       throw error;
@@ -119,18 +143,65 @@ export class PileClient extends EventTarget {
     return this.#snapshot;
   }
 
+  /** What the items are; `undefined` for a pile without any. */
+  get kind(): Kind | undefined {
+    return this.#snapshot ? kindOf(this.#snapshot.encoder) : this.#adding;
+  }
+
+  /** What notes came from, in order. */
+  get files(): readonly FileOfNotes[] {
+    return this.#files;
+  }
+
+  /** Whether something is being read or waits to be. */
+  get busy(): boolean {
+    return this.#intake.busy;
+  }
+
   get notKept(): string | undefined {
     return this.#notKept;
   }
 
-  /** Loads the encoder ahead of the first photo. */
+  /** Loads the photo encoder ahead of the first photo. */
   async warm(): Promise<void> {
-    await this.#pool.warm();
+    await this.#readers.warm();
   }
 
-  /** Adds photos to the pile. Resolves when all are read, or reading was stopped; `progress` events tell the rest. */
+  /**
+   * Adds photos to the pile. Resolves when all are read, or reading was stopped; `progress` events tell the rest. Throws
+   * "other-kind" for a pile of notes.
+   */
   async add(sources: Iterable<Source>, signal?: AbortSignal): Promise<void> {
+    this.#claim('photos');
     await this.#intake.add(sources, signal);
+  }
+
+  /**
+   * Adds the notes in a file's column, which keeps the file. Rows that were read before are not read again. Resolves like
+   * `add`, to how many notes were not in the pile before. Throws "other-kind" for a pile of photos.
+   */
+  async addNotes(file: NoteFile, notes: readonly NoteInFile[], name: (note: NoteInFile) => string): Promise<number> {
+    this.#claim('notes');
+    let number = this.#files.findIndex(({ fingerprint, column }) => fingerprint === file.fingerprint && column === file.column);
+    if (number < 0) {
+      number = this.#files.length;
+      this.#files.push({ ...file, items: [] });
+      await this.#sort.keepFile(number, file);
+    }
+    const { items } = this.#files[number] ?? { items: [] };
+    const status = this.#snapshot?.verdicts.status;
+    // What was taken out of the pile may come in again.
+    const there = (row: number) => items[row] !== undefined && status?.[items[row]] !== Status.removed;
+    const sources = notes
+      .filter(({ row }) => !there(row))
+      .map((note): NoteSource => ({ name: name(note), text: note.text, file: number, row: note.row }));
+    await this.#intake.add(sources);
+    return sources.length;
+  }
+
+  #claim(kind: Kind): void {
+    if ((this.kind ?? kind) !== kind) throw new KenspeckleError('other-kind', 'This pile holds another kind of items. Start another kit for these.');
+    this.#adding = kind;
   }
 
   /** Stops reading; what is left can be read later with `goOn`. */
@@ -162,10 +233,26 @@ export class PileClient extends EventTarget {
     return this.#sort.finished();
   }
 
-  /** The identities of the encoders this page has: what starters must be for. Loads the encoder. */
+  /** The identities of the encoders this page has: what starters must be for. Loads that for photos. */
   async encoders(): Promise<string[]> {
-    await this.#pool.warm();
-    return [this.#pool.facts.identity];
+    return this.#readers.identities();
+  }
+
+  /** The files that the notes came from as one table, with the columns `names` for what `found` says of an item (`null`: leave it out). */
+  async handBack(names: readonly string[], found: (item: number) => readonly string[] | null): Promise<Blob> {
+    const files = this.#files.map(({ name, file, items }) => {
+      return { name, file, found: Array.from(items, (item) => (item === undefined ? undefined : found(item))) };
+    });
+    return this.#readers.notes.handBack(files, names);
+  }
+
+  /** The row that a note stands in, the first of several: its columns with their cells. */
+  async rowOf(item: number): Promise<[column: string, cell: string][]> {
+    for (const { name, file, items } of this.#files) {
+      const row = items.indexOf(item);
+      if (row >= 0) return this.#readers.notes.rowOf(file, name, row);
+    }
+    return [];
   }
 
   /** Asks for another confidence or another share to set aside. */
@@ -226,11 +313,17 @@ export class PileClient extends EventTarget {
     this.#intake.forget();
     this.#originals.clear();
     this.#items = [];
+    this.#files = [];
     this.#fingerprints = [];
+    this.#numbers.clear();
+    this.#adding = undefined;
     this.#changed(undefined);
   }
 
-  close(): void {
+  /** Lets go of the pile once all is written; what was not read yet is not. */
+  async close(): Promise<void> {
+    await this.#intake.cancel();
+    await this.settled();
     this.#worker.terminate();
   }
 
@@ -238,33 +331,70 @@ export class PileClient extends EventTarget {
     this.addEventListener(type, listener as EventListener);
   }
 
-  async #open(module: WebAssembly.Module, name: string): Promise<void> {
+  async #open(module: WebAssembly.Module, name: string, past: string): Promise<void> {
     const report = Comlink.proxy((saved: Saved) => this.#emit('saved', saved));
-    const { items, snapshot, notKept } = await this.#sort.open(module, name, report);
+    const { items, files, rows, snapshot, notKept } = await this.#sort.open(module, name, past, report);
     this.#notKept = notKept;
-    this.#items = items;
+    this.#files = files.map((file) => ({ ...file, items: [] }));
+    this.#items = items.map((item): Item => ('text' in item ? { ...item, rows: 0 } : item));
     this.#fingerprints = items.map(({ fingerprint }) => fingerprint);
+    for (const row of rows) this.#standsFor(row);
     this.#snapshot = snapshot;
     if (snapshot) this.#know(snapshot);
   }
 
-  async #arrive({ source, blob, read }: Arrival): Promise<void> {
-    const { name } = source;
-    const { embedding, width, height, fingerprint } = read satisfies ReadPhoto;
-    const thumbnail = new Blob([read.thumbnail], { type: 'image/jpeg' });
-    const item = { name, fingerprint, width, height, embedding, pictures: { thumbnail, original: blob } };
+  #standsFor({ file, row, item }: NoteRow): void {
+    const of = this.#files[file];
+    const note = this.#items[item];
+    if (of) of.items[row] = item;
+    if (note && 'text' in note) note.rows++;
+  }
+
+  async #arrive(arrival: Arrival): Promise<void> {
     const due = performance.now() - this.#sortedAt >= SORT_EVERY;
-    const { first, snapshot } = await this.#sort.add([item], this.#pool.facts, due);
-    this.#items.push({ number: first, name, width, height, thumbnail });
-    this.#fingerprints.push(fingerprint);
-    this.#originals.set(first, blob);
+    const snapshot = 'blob' in arrival ? await this.#addPhoto(arrival, due) : await this.#addNote(arrival, due);
     if (snapshot) {
       this.#sorted();
       this.#changed(snapshot);
     } else {
-      // The next photo may take its time.
+      // The next item may take its time.
       this.#sortSoon ??= setTimeout(() => void this.#sortArrived().catch(() => undefined), SORT_EVERY);
     }
+  }
+
+  async #addPhoto(arrival: PhotoArrival, due: boolean): Promise<Snapshot | undefined> {
+    const { source, blob, read } = arrival;
+    const { name } = source;
+    const { embedding, width, height, fingerprint } = read;
+    const thumbnail = new Blob([read.thumbnail], { type: 'image/jpeg' });
+    const item = { name, fingerprint, width, height, embedding, pictures: { thumbnail, original: blob } };
+    const { first, snapshot } = await this.#sort.add([item], this.#readers.facts(arrival), due);
+    this.#items.push({ number: first, name, width, height, thumbnail });
+    this.#fingerprints.push(fingerprint);
+    this.#originals.set(first, blob);
+    return snapshot;
+  }
+
+  async #addNote(arrival: NoteArrival, due: boolean): Promise<Snapshot | undefined> {
+    const { name, text, file, row } = arrival.source;
+    const { embedding, parts, fingerprint } = arrival.read;
+    const item = { name, fingerprint, text, parts, embedding, at: { file, row } };
+    const { first, snapshot } = await this.#sort.add([item], this.#readers.facts(arrival), due);
+    this.#items.push({ number: first, name, text, parts, rows: 0 });
+    this.#fingerprints.push(fingerprint);
+    this.#numbers.set(fingerprint, first);
+    this.#standsFor({ file, row, item: first });
+    return snapshot;
+  }
+
+  /** A note with the text of another is the same item: one answer is for both, and both rows are handed back. */
+  async #again(arrival: Arrival): Promise<void> {
+    if ('blob' in arrival) return;
+    const item = this.#numbers.get(arrival.read.fingerprint);
+    if (item === undefined) return;
+    const { file, row } = arrival.source;
+    this.#standsFor({ file, row, item });
+    await this.#sort.keepRow({ file, row, item });
   }
 
   #sorted(): void {
@@ -285,7 +415,9 @@ export class PileClient extends EventTarget {
     this.#intake.forget();
     for (const { number, name } of this.#items) {
       const fingerprint = this.#fingerprints[number];
-      if (fingerprint !== undefined && verdicts.status[number] !== Status.removed) this.#intake.know(fingerprint, name);
+      if (fingerprint === undefined || verdicts.status[number] === Status.removed) continue;
+      this.#intake.know(fingerprint, name);
+      this.#numbers.set(fingerprint, number);
     }
   }
 

@@ -1,12 +1,22 @@
 import type { ReadPhoto } from './encode-worker';
 import { codeOf, messageOf } from './error';
-import type { EncodePool } from './pool';
+import type { ReadNote } from './note-worker';
 
-/** One photo to be read. `name` may be a path. */
+/** One file to be read. `name` may be a path. */
 export interface Source {
   name: string;
   blob: Blob | (() => Promise<Blob>);
 }
+
+/** One note to be read: a row of a file that the pile keeps. `name` says where that is. */
+export interface NoteSource {
+  name: string;
+  text: string;
+  file: number;
+  row: number;
+}
+
+export type Unread = Source | NoteSource;
 
 export interface Refused {
   name: string;
@@ -31,34 +41,52 @@ export interface Progress {
   duplicates: readonly Duplicate[];
 }
 
-export interface Arrival {
+export interface PhotoArrival {
   source: Source;
   blob: Blob;
   read: ReadPhoto;
 }
 
+export interface NoteArrival {
+  source: NoteSource;
+  read: ReadNote;
+}
+
+export type Arrival = PhotoArrival | NoteArrival;
+
 interface Outcome {
-  source: Source;
+  source: Unread;
   arrival?: Arrival;
   refused?: Refused;
-  /** Not this photo's fault: nothing can be read. */
+  /** Not this item's fault: nothing can be read. */
   fatal?: unknown;
 }
 
+/** Who reads the items. */
+export interface Eyes {
+  /** How many are read at the same time. */
+  readonly size: number;
+  read(source: Unread): Promise<Arrival>;
+}
+
+/** How often progress is told while it goes on, in milliseconds: a page that showed every note would do little else. */
+const REPORT_EVERY = 100;
+
 /**
- * Reads photos through the pool and hands them on in the order they came, whichever worker is faster: the same files give
- * the same item numbers. At most two photos a worker are in memory at once.
+ * Reads items and hands them on in the order they came, whichever worker is faster: the same files give the same item
+ * numbers. At most two photos a worker are in memory at once.
  */
 export class Intake {
-  readonly #pool: EncodePool;
-  readonly #thumbnailSide: number;
+  readonly #eyes: Eyes;
   readonly #deliver: (arrival: Arrival) => Promise<void>;
+  /** Called with what the pile holds already. */
+  readonly #again: (arrival: Arrival) => Promise<void>;
   /** Called when nothing is left to read for now, before that is reported. */
   readonly #pause: () => Promise<void>;
   readonly #onProgress: (progress: Progress) => void;
   /** Names by fingerprint of all that the pile holds. */
   readonly #known = new Map<string, string>();
-  #queue: Source[] = [];
+  #queue: Unread[] = [];
   #running: Promise<void> | undefined;
   #inHand = 0;
   #stopped = false;
@@ -66,19 +94,21 @@ export class Intake {
   #added = 0;
   #refused: Refused[] = [];
   #duplicates: Duplicate[] = [];
-  #startedAt = 0;
+  /** Since when and from where the speed is measured: the first item may have waited for its encoder. */
+  #startedAt: number | undefined;
   #doneAtStart = 0;
+  #reportedAt = -Infinity;
 
   constructor(
-    pool: EncodePool,
-    thumbnailSide: number,
+    eyes: Eyes,
     deliver: (arrival: Arrival) => Promise<void>,
+    again: (arrival: Arrival) => Promise<void>,
     pause: () => Promise<void>,
     onProgress: (progress: Progress) => void,
   ) {
-    this.#pool = pool;
-    this.#thumbnailSide = thumbnailSide;
+    this.#eyes = eyes;
     this.#deliver = deliver;
+    this.#again = again;
     this.#pause = pause;
     this.#onProgress = onProgress;
   }
@@ -91,14 +121,19 @@ export class Intake {
     this.#known.clear();
   }
 
-  /** Queues photos. Resolves when the queue is empty or stopped. */
-  async add(sources: Iterable<Source>, signal?: AbortSignal): Promise<void> {
+  /** Whether anything is read or waits to be. */
+  get busy(): boolean {
+    return this.#running !== undefined || this.#queue.length > 0;
+  }
+
+  /** Queues items. Resolves when the queue is empty or stopped. */
+  async add(sources: Iterable<Unread>, signal?: AbortSignal): Promise<void> {
     signal?.throwIfAborted();
     const mine = [...sources];
     if (!this.#running && this.#queue.length === 0) this.#reset();
     this.#queue.push(...mine);
     signal?.addEventListener('abort', () => {
-      const leave = new Set(mine);
+      const leave = new Set<Unread>(mine);
       this.#queue = this.#queue.filter((source) => !leave.has(source));
       this.#report();
     });
@@ -134,15 +169,14 @@ export class Intake {
   async #run(): Promise<void> {
     // The caller has to see this run as running before its first report.
     await Promise.resolve();
-    this.#startedAt = performance.now();
-    this.#doneAtStart = this.#done;
+    this.#startedAt = undefined;
     const window: Promise<Outcome>[] = [];
-    const unread: Source[] = [];
+    const unread: Unread[] = [];
     let fatal: unknown;
     let delivered = false;
     this.#report();
     for (;;) {
-      while (!this.#stopped && window.length < 2 * this.#pool.size) {
+      while (!this.#stopped && window.length < 2 * this.#eyes.size) {
         const source = this.#queue.shift();
         if (!source) break;
         window.push(this.#read(source));
@@ -166,7 +200,11 @@ export class Intake {
         unread.push(outcome.source);
       }
       this.#inHand = window.length;
-      this.#report();
+      if (this.#startedAt === undefined) {
+        this.#startedAt = performance.now();
+        this.#doneAtStart = this.#done;
+      }
+      if (performance.now() - this.#reportedAt >= REPORT_EVERY) this.#report();
     }
     this.#queue.unshift(...unread);
     this.#running = undefined;
@@ -174,10 +212,9 @@ export class Intake {
     if (fatal !== undefined) throw fatal;
   }
 
-  async #read(source: Source): Promise<Outcome> {
+  async #read(source: Unread): Promise<Outcome> {
     try {
-      const blob = typeof source.blob === 'function' ? await source.blob() : source.blob;
-      return { source, arrival: { source, blob, read: await this.#pool.read(blob, source.name, this.#thumbnailSide) } };
+      return { source, arrival: await this.#eyes.read(source) };
     } catch (error) {
       const code = codeOf(error);
       if (code === 'asset-missing' || code === 'encoder-file') return { source, fatal: error };
@@ -191,14 +228,14 @@ export class Intake {
     if (!arrival) return;
     const { fingerprint } = arrival.read;
     const same = this.#known.get(fingerprint);
-    if (same !== undefined) {
-      this.#duplicates.push({ name: source.name, of: same });
-      return;
-    }
     try {
-      await this.#deliver(arrival);
+      await (same === undefined ? this.#deliver(arrival) : this.#again(arrival));
     } catch (error) {
       this.#refused.push({ name: source.name, code: codeOf(error) ?? 'unexpected', message: messageOf(error) });
+      return;
+    }
+    if (same !== undefined) {
+      this.#duplicates.push({ name: source.name, of: same });
       return;
     }
     this.#known.set(fingerprint, source.name);
@@ -208,11 +245,12 @@ export class Intake {
   #report(): void {
     const left = this.#inHand + this.#queue.length;
     const since = this.#done - this.#doneAtStart;
-    const elapsed = (performance.now() - this.#startedAt) / 1000;
+    const elapsed = (performance.now() - (this.#startedAt ?? 0)) / 1000;
+    this.#reportedAt = performance.now();
     this.#onProgress({
       done: this.#done,
       total: this.#done + left,
-      secondsLeft: since > 1 ? (elapsed / since) * left : undefined,
+      secondsLeft: this.#startedAt !== undefined && since > 1 ? (elapsed / since) * left : undefined,
       state: this.#running && !this.#stopped ? 'reading' : left > 0 ? 'stopped' : 'finished',
       added: this.#added,
       refused: [...this.#refused],

@@ -78,12 +78,14 @@ export class Saver {
         this.#report({ ok: true });
         return;
       } catch (error) {
-        if (!additions.some(({ pictures }) => pictures.original)) throw error;
+        if (!additions.some(({ pictures }) => pictures?.original)) throw error;
         // A file that was moved or deleted meanwhile fails as well; only a full device means no more originals.
         if (isFull(error)) this.#keepOriginals = false;
       }
     }
-    const small = additions.map(({ item, pictures }) => ({ item, pictures: { thumbnail: pictures.thumbnail } }));
+    const small = additions.map(
+      ({ pictures, ...rest }): Addition => (pictures ? { ...rest, pictures: { thumbnail: pictures.thumbnail } } : rest),
+    );
     await this.#store.write(small, state);
     this.#report(this.#keepOriginals ? { ok: true } : { ok: true, withoutOriginals: true });
   }

@@ -18,7 +18,8 @@ import { KenspeckleError } from './error';
 import type { FinishedPile } from './learn-worker';
 import { type KeptStarter, PastStore } from './past-store';
 import { type Saved, Saver } from './saver';
-import { type Addition, Store, type StoredItem, type StoredPictures } from './store';
+import { lockOf } from './kits';
+import { type Addition, type NoteFacts, type NoteFile, type NoteRow, type PhotoFacts, Store, type StoredPictures } from './store';
 
 export interface Tray {
   tray: number;
@@ -99,21 +100,24 @@ export interface Ranked {
   probability: number;
 }
 
-export interface NewItem extends Omit<StoredItem, 'number'> {
-  pictures: StoredPictures;
-}
+/** An item to be added. A note says in which row of which file it stands. */
+export type NewItem = {
+  name: string;
+  fingerprint: string;
+  embedding: Float32Array<ArrayBuffer>;
+} & ((PhotoFacts & { pictures: StoredPictures }) | (NoteFacts & { at: Omit<NoteRow, 'item'> }));
 
-export interface OpenedItem {
+export type OpenedItem = {
   number: number;
   name: string;
   fingerprint: string;
-  width: number;
-  height: number;
-  thumbnail: Blob | undefined;
-}
+} & ((PhotoFacts & { thumbnail: Blob | undefined }) | NoteFacts);
 
 export interface Opened {
   items: OpenedItem[];
+  /** What notes came from, by file number. */
+  files: NoteFile[];
+  rows: NoteRow[];
   /** Absent when there is no pile yet. */
   snapshot: Snapshot | undefined;
   /** Set when this browser keeps nothing for the page: the pile lasts until the tab is closed. */
@@ -134,7 +138,7 @@ const checking = new Checking();
 let changing: Promise<unknown> = Promise.resolve();
 
 function pile(): Sorter {
-  if (!sorter) throw new KenspeckleError('pile-empty', 'There is no pile yet: add photos first.');
+  if (!sorter) throw new KenspeckleError('pile-empty', 'There is no pile yet: add something first.');
   return sorter;
 }
 
@@ -186,7 +190,7 @@ async function embeddings(): Promise<Float32Array<ArrayBuffer>[]> {
   await saver?.settled();
   const all: Float32Array<ArrayBuffer>[] = [];
   for (const { number, embedding } of await store.items()) all[number] = embedding;
-  for (const { item } of saver?.unwritten ?? []) all[item.number] = item.embedding;
+  for (const { item } of saver?.unwritten ?? []) if (item) all[item.number] = item.embedding;
   return all;
 }
 
@@ -252,7 +256,7 @@ async function own(name: string): Promise<void> {
   const granted = await new Promise<boolean>((resolve) => {
     // The tab that was reloaded may hold the lock a moment longer than its page lives.
     navigator.locks
-      .request(`pile ${name}`, { signal: AbortSignal.timeout(2500) }, () => {
+      .request(lockOf(name), { signal: AbortSignal.timeout(2500) }, () => {
         resolve(true);
         return new Promise<never>(() => {});
       })
@@ -264,24 +268,26 @@ async function own(name: string): Promise<void> {
 }
 
 const api = {
-  /** Opens the store `name` and takes up the pile that lies in it. */
-  async open(module: WebAssembly.Module, name: string, report: (saved: Saved) => void): Promise<Opened> {
+  /** Opens the store `name` and takes up the pile that lies in it. `pastName`: of the store that past piles lie beside. */
+  async open(module: WebAssembly.Module, name: string, pastName: string, report: (saved: Saved) => void): Promise<Opened> {
     await Promise.all([startCore(module), own(name)]);
     try {
       store = await Store.open(name);
-      past = await PastStore.open(name);
+      past = await PastStore.open(pastName);
     } catch (error) {
-      return { items: [], snapshot: undefined, notKept: error instanceof Error ? error.message : String(error) };
+      return { items: [], files: [], rows: [], snapshot: undefined, notKept: error instanceof Error ? error.message : String(error) };
     }
     saver = new Saver(store, report);
-    const { items, thumbnails, state } = await store.load();
-    if (state === undefined) return { items: [], snapshot: undefined, notKept: undefined };
+    const { items, thumbnails, files, rows, state } = await store.load();
+    if (state === undefined) return { items: [], files: [], rows: [], snapshot: undefined, notKept: undefined };
     const all = joined(items.map(({ embedding }) => embedding));
     ({ encoder: facts, id = newId(), starter } = state);
     sorter = withStarter(state.starts ? starter : undefined, (given) => Sorter.restore(state.sorter, all, given));
     checking.open(state.check);
-    const opened = items.map(({ embedding: _, ...item }) => ({ ...item, thumbnail: thumbnails.get(item.number) }));
-    return { items: opened, snapshot: snapshot(), notKept: undefined };
+    const opened = items.map(({ embedding: _, ...item }): OpenedItem => {
+      return 'text' in item ? item : { ...item, thumbnail: thumbnails.get(item.number) };
+    });
+    return { items: opened, files, rows, snapshot: snapshot(), notKept: undefined };
   },
 
   /**
@@ -297,16 +303,33 @@ const api = {
     if (facts?.identity !== encoder.identity) {
       throw new KenspeckleError(
         'encoder-changed',
-        'This pile was read by another version of the encoder, so nothing can be added. Take the result, then start over.',
+        'This pile was read by another version of the encoder, so nothing can be added. Take the result, then start another kit.',
       );
     }
-    const additions = items.map(({ pictures, ...item }): Addition => {
-      return { item: { ...item, number: to.addItem(item.embedding) }, pictures };
+    const numbers = items.map(({ embedding }) => to.addItem(embedding));
+    const additions = items.map((item, index): Addition => {
+      const number = numbers[index] ?? 0;
+      if ('pictures' in item) {
+        const { pictures, ...facts } = item;
+        return { item: { ...facts, number }, pictures };
+      }
+      const { at, ...facts } = item;
+      return { item: { ...facts, number }, row: { ...at, item: number } };
     });
     if (!store) unkept.push(...items.map(({ embedding }) => embedding));
     if (sort || isFirst) save(additions);
     else saver?.save(additions, undefined);
-    return { first: additions[0]?.item.number ?? 0, snapshot: sort || isFirst ? snapshot() : undefined };
+    return { first: numbers[0] ?? 0, snapshot: sort || isFirst ? snapshot() : undefined };
+  },
+
+  /** Keeps a file that notes come from. */
+  keepFile(number: number, file: NoteFile): void {
+    saver?.save([{ file: { number, file } }], undefined);
+  },
+
+  /** Keeps that an item stands for one more row. */
+  keepRow(row: NoteRow): void {
+    saver?.save([{ row }], undefined);
   },
 
   /** Sorts the pile with all that was added, and stores the sorter's state. */
@@ -350,7 +373,7 @@ const api = {
     const all = await embeddings();
     const { tray, status } = now.verdicts() as Verdicts;
     const answered = [...all.keys()].filter((item) => status[item] === Status.answered);
-    if (!facts) throw new KenspeckleError('pile-empty', 'There is no pile yet: add photos first.');
+    if (!facts) throw new KenspeckleError('pile-empty', 'There is no pile yet: add something first.');
     const finished = {
       id,
       encoder: facts,

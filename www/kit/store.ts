@@ -3,15 +3,26 @@ import type { EncoderFacts } from './encode-worker';
 import type { StoredCheck } from './checking';
 import type { KeptStarter } from './past-store';
 
+/** What is kept of a photo beside its pictures: pixels of the original. */
+export interface PhotoFacts {
+  width: number;
+  height: number;
+}
+
+/** What is kept of a note. */
+export interface NoteFacts {
+  text: string;
+  /** 1 unless the note was so long that it was read in parts and averaged. */
+  parts: number;
+}
+
 /** One item of the pile as it lies in the store. `number` is its number in the sorter. */
-export interface StoredItem {
+export type StoredItem = {
   number: number;
   name: string;
   fingerprint: string;
-  width: number;
-  height: number;
   embedding: Float32Array<ArrayBuffer>;
-}
+} & (PhotoFacts | NoteFacts);
 
 export interface StoredPictures {
   thumbnail: Blob;
@@ -19,9 +30,29 @@ export interface StoredPictures {
   original?: Blob;
 }
 
+/** A file that notes came from, kept whole, so that all of its columns can be handed back. */
+export interface NoteFile {
+  /** Its ending says how it is read. */
+  name: string;
+  file: Blob;
+  /** The column that holds the notes. */
+  column: string;
+  /** The same for two files with the same content. */
+  fingerprint: string;
+}
+
+/** A row of a file and the item that stands for it: several rows with the same text are one item. */
+export interface NoteRow {
+  file: number;
+  row: number;
+  item: number;
+}
+
 export interface Addition {
-  item: StoredItem;
-  pictures: StoredPictures;
+  item?: StoredItem;
+  pictures?: StoredPictures;
+  row?: NoteRow;
+  file?: { number: number; file: NoteFile };
 }
 
 /** What the sorter was, in its own words, and whose embeddings it sorts. */
@@ -45,12 +76,23 @@ interface Schema extends DBSchema {
   items: { key: number; value: StoredItem };
   thumbnails: { key: number; value: Blob };
   originals: { key: number; value: Blob };
+  /** Of notes. */
+  files: { key: number; value: NoteFile };
+  rows: { key: [number, number]; value: NoteRow };
   state: { key: 'pile'; value: StoredState };
   /** The pile's own copy of what it starts from. */
   starter: { key: 'pile'; value: KeptStarter };
 }
 
-const STORES = ['items', 'thumbnails', 'originals', 'state', 'starter'] as const;
+interface Loaded {
+  items: StoredItem[];
+  thumbnails: Map<number, Blob>;
+  files: NoteFile[];
+  rows: NoteRow[];
+  state: NewState | undefined;
+}
+
+const STORES = ['items', 'thumbnails', 'originals', 'files', 'rows', 'state', 'starter'] as const;
 
 /** The pile on this device: IndexedDB, one database, every change in one transaction. */
 export class Store {
@@ -64,7 +106,7 @@ export class Store {
 
   static async open(name: string): Promise<Store> {
     return new Store(
-      await openDB<Schema>(name, 2, {
+      await openDB<Schema>(name, 3, {
         upgrade(database, from) {
           if (from < 1) {
             database.createObjectStore('items', { keyPath: 'number' });
@@ -72,19 +114,23 @@ export class Store {
             database.createObjectStore('originals');
             database.createObjectStore('state');
           }
-          database.createObjectStore('starter');
+          if (from < 2) database.createObjectStore('starter');
+          database.createObjectStore('files');
+          database.createObjectStore('rows', { keyPath: ['file', 'row'] });
         },
       }),
     );
   }
 
   /** All items in order of their numbers, and the sorter's state; the state is missing for an empty store. */
-  async load(): Promise<{ items: StoredItem[]; thumbnails: Map<number, Blob>; state: NewState | undefined }> {
-    const transaction = this.#database.transaction(['items', 'thumbnails', 'state', 'starter']);
-    const [items, keys, blobs, state, starter] = await Promise.all([
+  async load(): Promise<Loaded> {
+    const transaction = this.#database.transaction(['items', 'thumbnails', 'files', 'rows', 'state', 'starter']);
+    const [items, keys, blobs, files, rows, state, starter] = await Promise.all([
       transaction.objectStore('items').getAll(),
       transaction.objectStore('thumbnails').getAllKeys(),
       transaction.objectStore('thumbnails').getAll(),
+      transaction.objectStore('files').getAll(),
+      transaction.objectStore('rows').getAll(),
       transaction.objectStore('state').get('pile'),
       transaction.objectStore('starter').get('pile'),
       transaction.done,
@@ -95,7 +141,7 @@ export class Store {
       if (blob) thumbnails.set(key, blob);
     });
     this.#starter = starter?.identity;
-    return { items, thumbnails, state: state && { ...state, starter } };
+    return { items, thumbnails, files, rows, state: state && { ...state, starter } };
   }
 
   /** All items in order of their numbers. */
@@ -111,10 +157,12 @@ export class Store {
   async write(additions: readonly Addition[], state: NewState | undefined): Promise<void> {
     const transaction = this.#database.transaction(STORES, 'readwrite');
     const requests: Promise<unknown>[] = [];
-    for (const { item, pictures } of additions) {
-      requests.push(transaction.objectStore('items').put(item));
-      requests.push(transaction.objectStore('thumbnails').put(pictures.thumbnail, item.number));
-      if (pictures.original) requests.push(transaction.objectStore('originals').put(pictures.original, item.number));
+    for (const { item, pictures, row, file } of additions) {
+      if (item) requests.push(transaction.objectStore('items').put(item));
+      if (item && pictures) requests.push(transaction.objectStore('thumbnails').put(pictures.thumbnail, item.number));
+      if (item && pictures?.original) requests.push(transaction.objectStore('originals').put(pictures.original, item.number));
+      if (row) requests.push(transaction.objectStore('rows').put(row));
+      if (file) requests.push(transaction.objectStore('files').put(file.file, file.number));
     }
     if (state) {
       const { starter, ...plain } = state;
