@@ -30,11 +30,16 @@ const cspInPage: Plugin = {
 };
 
 const pile = resolve(import.meta.dirname, 'www/demo/pile');
+const log = resolve(import.meta.dirname, 'www/demo/notes/log.csv');
 
-/** The demo pile is made by a program, not kept in the page's folder: served from where it lies, copied when built. */
+/** The demo piles are not kept in the page's folder: served from where they lie, copied when built. */
 const demoPile: Plugin = {
   name: 'demo-pile',
   configureServer(server) {
+    server.middlewares.use('/demo/notes/log.csv', (_request, response) => {
+      response.setHeader('Content-Type', 'text/csv; charset=utf-8');
+      createReadStream(log).pipe(response);
+    });
     server.middlewares.use('/demo/pile', (request, response, next) => {
       const name = decodeURIComponent((request.url ?? '').split('?')[0] ?? '').slice(1);
       const file = join(pile, name);
@@ -44,6 +49,7 @@ const demoPile: Plugin = {
     });
   },
   generateBundle() {
+    this.emitFile({ type: 'asset', fileName: 'demo/notes/log.csv', source: readFileSync(log) });
     if (!existsSync(pile)) return;
     for (const name of readdirSync(pile).filter((name) => !name.startsWith('.'))) {
       this.emitFile({ type: 'asset', fileName: `demo/pile/${name}`, source: readFileSync(join(pile, name)) });
@@ -68,7 +74,7 @@ export default defineConfig({
       manifest: {
         name: 'Kenspeckle',
         short_name: 'Kenspeckle',
-        description: 'Sort a pile of photos into your own trays from a handful of answers. Nothing leaves the device.',
+        description: 'Sort a pile of photos or notes into your own trays from a handful of answers. Nothing leaves the device.',
         theme_color: '#e7ece8',
         background_color: '#e7ece8',
         display: 'standalone',
@@ -77,7 +83,7 @@ export default defineConfig({
       },
       workbox: {
         globPatterns: ['**/*.{html,js,css,wasm,onnx,svg}'],
-        // The text encoder is kept once the first note has fetched it; who sorts photos never does.
+        // The page keeps the text encoder itself once the first note has fetched it; who sorts photos never does.
         globIgnores: ['**/text-*.onnx'],
         maximumFileSizeToCacheInBytes: 16 * 1024 * 1024,
         cleanupOutdatedCaches: true,
@@ -85,12 +91,7 @@ export default defineConfig({
         // The first opening of the demo keeps it for the next one without a network.
         runtimeCaching: [
           {
-            urlPattern: ({ url, sameOrigin }) => sameOrigin && /\/text-[^/]*\.onnx$/.test(url.pathname),
-            handler: 'CacheFirst',
-            options: { cacheName: 'text-encoder', expiration: { maxEntries: 1 } },
-          },
-          {
-            urlPattern: ({ url, sameOrigin }) => sameOrigin && url.pathname.includes('/demo/pile/'),
+            urlPattern: ({ url, sameOrigin }) => sameOrigin && /\/demo\/(pile|notes)\//.test(url.pathname),
             handler: 'StaleWhileRevalidate',
             options: { cacheName: 'demo-pile' },
           },

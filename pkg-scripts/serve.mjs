@@ -8,6 +8,7 @@ import { brotliCompress, constants } from 'node:zlib';
 
 const types = {
   '.css': 'text/css',
+  '.csv': 'text/csv; charset=utf-8',
   '.html': 'text/html; charset=utf-8',
   '.jpg': 'image/jpeg',
   '.js': 'text/javascript',

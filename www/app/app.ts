@@ -1,11 +1,15 @@
 import { html, LitElement, nothing, type TemplateResult } from 'lit';
-import { KenspeckleError, messageOf, PileClient, type Source } from '../kit/client';
+import { KenspeckleError, type Kind, kindOf, messageOf, PileClient, Readers, type Source } from '../kit/client';
 import './band';
+import { BenchKits } from './bench-kits';
 import { hasCamera } from './camera';
 import { Desk } from './desk';
-import { demoSources, type Found, fromClipboard, fromList, fromTransfer } from './files';
+import { demoNotes, demoSources, type Found, fromClipboard, fromList, fromTransfer } from './files';
 import { commandOf, isTyping } from './keys';
 import { appStyles } from './app-styles';
+import './kits-panel';
+import { isNotes, NotesIn } from './notes-in';
+import './notes-panel';
 import { type Panel } from './panels';
 import './panels';
 import type { Question } from './question';
@@ -25,7 +29,15 @@ import './trust-panel';
 import './welcome';
 import { words } from './words';
 
-type Opened = { panel: 'help' | 'start-over' | 'camera' | 'past' | 'trust' | 'spot-check' } | { panel: 'zoom'; item: number } | { panel: 'tray'; tray: number; error?: string };
+/** What is to be added, sorted by what it is. */
+type Coming = { kind: 'photos'; sources: readonly Source[] } | { kind: 'notes'; sources: readonly Source[] } | { kind: 'notes'; lines: string };
+
+type Opened =
+  | { panel: 'help' | 'start-over' | 'camera' | 'past' | 'kits' | 'notes' | 'trust' | 'spot-check' }
+  | { panel: 'write'; text: string }
+  | { panel: 'other-kind'; coming: Coming }
+  | { panel: 'zoom'; item: number }
+  | { panel: 'tray'; tray: number; error?: string };
 
 const SINGLE_KEYS = 'single-keys';
 /** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
@@ -34,28 +46,45 @@ const HAS_PILE = 'has-pile';
 const brand = html`<svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg>
   <span>${words.brand}</span>`;
 
+/** What a kit is called that begins with these. */
+function nameFor(coming: Coming): string {
+  if ('lines' in coming) return words.newKitName.notes;
+  const { kind, sources } = coming;
+  const [first] = sources;
+  const folder = first?.name.includes('/') ? first.name.split('/')[0] : undefined;
+  if (folder && sources.every(({ name }) => name.startsWith(`${folder}/`))) return folder;
+  return kind === 'notes' && sources.length === 1 && first ? first.name.replace(/\.\w+$/, '') : words.newKitName[kind];
+}
+
 /** The page. */
 export class Bench extends LitElement {
   static override properties = {
     desk: { state: true },
     past: { state: true },
     trust: { state: true },
+    kits: { state: true },
     failed: { state: true },
     opened: { state: true },
     dropping: { state: true },
     demoLoading: { state: true },
+    row: { state: true },
     singleKeys: { state: true },
   };
 
   declare desk: Desk | undefined;
   declare past: Past | undefined;
   declare trust: Trust | undefined;
+  declare kits: BenchKits | undefined;
   declare failed: unknown;
   declare opened: Opened | undefined;
   declare dropping: boolean;
-  declare demoLoading: boolean;
+  declare demoLoading: Kind | undefined;
+  /** The row that the zoomed note stands in. */
+  declare row: [string, string][] | undefined;
   declare singleKeys: boolean;
   #ready: Promise<Desk | undefined> = Promise.resolve(undefined);
+  readonly #readers = new Readers();
+  readonly #notesIn = new NotesIn(this.#readers, () => this.#askAboutNotes());
   #zoomed: string | undefined;
   #pasted = 0;
   #returnTo: HTMLElement | undefined;
@@ -63,7 +92,6 @@ export class Bench extends LitElement {
   constructor() {
     super();
     this.dropping = false;
-    this.demoLoading = false;
     this.singleKeys = localStorage.getItem(SINGLE_KEYS) !== 'off';
   }
 
@@ -83,18 +111,47 @@ export class Bench extends LitElement {
     this.#ready.catch((error: unknown) => (this.failed = error));
   }
 
+  readonly #redraw = (): void => {
+    if (this.desk) this.kits?.watch(this.desk);
+    this.requestUpdate();
+  };
+
   async #open(): Promise<Desk> {
-    const client = await PileClient.open();
-    const redraw = () => this.requestUpdate();
-    const [desk, past] = await Promise.all([Desk.lay(client, redraw), Past.open(redraw)]);
-    past?.serve(this.renderRoot, desk);
-    this.trust = new Trust(desk, redraw, () => this.#stated());
-    this.trust.serve(this.renderRoot);
+    const [kits, past] = await Promise.all([BenchKits.open(this.#readers, this.#redraw), Past.open(this.#redraw)]);
+    this.kits = kits;
+    past?.serve(this.renderRoot, () => this.desk);
     this.past = past;
+    return this.#lay(kits);
+  }
+
+  async #lay(kits: BenchKits): Promise<Desk> {
+    const desk = await kits.lay();
+    if (desk.snapshot) localStorage.setItem(HAS_PILE, 'yes');
+    else localStorage.removeItem(HAS_PILE);
     this.desk = desk;
-    // The encoder comes while the person still looks at the page.
-    setTimeout(() => void client.warm().catch(() => undefined), 300);
+    if (this.trust) {
+      this.trust.change(desk);
+    } else {
+      this.trust = new Trust(desk, this.#redraw, () => this.#stated());
+      this.trust.serve(this.renderRoot);
+    }
+    // The photo encoder comes while the person still looks at the page; that of notes only with the first note.
+    if (desk.client.kind !== 'notes') setTimeout(() => void desk.client.warm().catch(() => undefined), 300);
     return desk;
+  }
+
+  /** Lays another kit on the bench, or with no identity a new one. Resolves to nothing when that fails, which the page then shows. */
+  async #changeKit(id?: string): Promise<Desk | undefined> {
+    const { kits, desk } = this;
+    if (!kits?.kept || id === kits.id) return desk;
+    this.#closePanel();
+    this.desk = undefined;
+    this.failed = undefined;
+    this.#shelves?.tiles.clear();
+    if (id === undefined) localStorage.removeItem(HAS_PILE);
+    else localStorage.setItem(HAS_PILE, 'yes');
+    this.#ready = kits.change(desk, id).then(() => this.#lay(kits));
+    return this.#ready.catch((error: unknown) => void (this.failed = error));
   }
 
   get #question(): Question | null {
@@ -111,11 +168,37 @@ export class Bench extends LitElement {
     if (!desk) return;
     for (const problem of problems) desk.complain(problem);
     void this.#openStarters(desk, sources.filter(isStarter));
-    const photos = sources.filter((source) => !isStarter(source));
-    if (photos.length === 0) return;
+    const items = sources.filter((source) => !isStarter(source));
+    const photos = items.filter((source) => !isNotes(source));
+    const notes = items.filter(isNotes);
+    if (photos.length > 0) await this.#bring({ kind: 'photos', sources: photos });
+    if (notes.length > 0) await this.#bring({ kind: 'notes', sources: notes });
+  }
+
+  /** Brings things to the kit on the bench; what is of another kind than the rest there has to go elsewhere. */
+  async #bring(coming: Coming, name?: string): Promise<void> {
+    const desk = await this.#ready;
+    if (!desk) return;
+    if ((desk.client.kind ?? coming.kind) !== coming.kind) return this.#openPanel({ panel: 'other-kind', coming });
     localStorage.setItem(HAS_PILE, 'yes');
     void navigator.storage?.persist?.();
-    await desk.add(photos);
+    this.kits?.suggest(name ?? nameFor(coming));
+    if ('lines' in coming) await this.#notesIn.takeLines(coming.lines, desk);
+    else if (coming.kind === 'notes') await this.#notesIn.take(coming.sources, desk);
+    else await desk.add(coming.sources);
+  }
+
+  async #bringInto(id: string | undefined, coming: Coming): Promise<void> {
+    if (this.desk?.client.busy) return this.desk.complain(words.kitBusy);
+    if (await this.#changeKit(id)) await this.#bring(coming);
+  }
+
+  #askAboutNotes(): void {
+    const { step } = this.#notesIn;
+    if (step && this.opened?.panel !== 'notes') this.#openPanel({ panel: 'notes' });
+    // Without its step the panel goes at once, and with it the event that it was closed.
+    if (!step && this.opened?.panel === 'notes') this.#closed();
+    this.requestUpdate();
   }
 
   async #openStarters(desk: Desk, starters: readonly Source[]): Promise<void> {
@@ -160,24 +243,30 @@ export class Bench extends LitElement {
     this.requestUpdate();
   }
 
-  async #demo(): Promise<void> {
+  async #demo(kind: Kind): Promise<void> {
     if (this.demoLoading) return;
-    this.demoLoading = true;
+    this.demoLoading = kind;
     try {
-      await this.#add({ sources: await demoSources(), problems: [] });
+      const sources = kind === 'photos' ? await demoSources() : [];
+      const desk = await this.#ready;
+      this.kits?.suggest(words.demoKitName[kind]);
+      localStorage.setItem(HAS_PILE, 'yes');
+      if (kind === 'photos') await this.#add({ sources, problems: [] });
+      else if (desk) await this.#notesIn.takeColumn(demoNotes.source, demoNotes.column, desk);
     } catch (error) {
       await this.#add({ sources: [], problems: [messageOf(error)] });
     } finally {
-      this.demoLoading = false;
+      this.demoLoading = undefined;
     }
   }
 
-  #choose(folder: boolean): void {
+  #choose(what: Kind | 'folder'): void {
+    const folder = what === 'folder';
     const input = document.createElement('input');
     input.type = 'file';
     input.multiple = true;
     if (folder) input.webkitdirectory = true;
-    else input.accept = 'image/*';
+    else input.accept = what === 'notes' ? '.txt,.csv,.tsv,.tab,.jsonl,.ndjson' : 'image/*';
     input.addEventListener('change', () => void this.#add(fromList(input.files ?? new DataTransfer().files, folder)));
     input.click();
     this.renderRoot.querySelector<HTMLElement>('[popover]')?.hidePopover();
@@ -197,10 +286,16 @@ export class Bench extends LitElement {
   }
 
   #onPaste(event: ClipboardEvent): void {
-    if (isTyping(event) || !event.clipboardData || event.clipboardData.files.length === 0) return;
+    if (isTyping(event) || !event.clipboardData || (this.opened && this.opened.panel !== 'write')) return;
+    if (event.clipboardData.files.length === 0) return this.#write(event.clipboardData.getData('text/plain'));
     const sources = fromClipboard(event.clipboardData, this.#pasted);
     this.#pasted += sources.length;
     void this.#add({ sources, problems: [] });
+  }
+
+  #write(text: string): void {
+    if (text.trim() === '' && !this.desk) return;
+    this.#openPanel({ panel: 'write', text });
   }
 
   #onKey(event: KeyboardEvent): void {
@@ -252,9 +347,15 @@ export class Bench extends LitElement {
         return this.#openPast();
       case 'trust':
         return this.#openTrust();
+      case 'kits':
+        return this.#openKits();
       case 'help':
         return this.#openPanel({ panel: 'help' });
     }
+  }
+
+  #openKits(): void {
+    if (this.opened?.panel !== 'kits') this.#openPanel({ panel: 'kits' });
   }
 
   /** Keys act on the item in hand again. */
@@ -266,7 +367,14 @@ export class Bench extends LitElement {
   async #zoom(item = this.desk?.hand): Promise<void> {
     const { desk } = this;
     if (!desk || item === undefined) return;
-    const picture = (await desk.client.original(item)) ?? desk.items[item]?.thumbnail;
+    const of = desk.items[item];
+    if (of && 'text' in of) {
+      this.row = undefined;
+      this.#openPanel({ panel: 'zoom', item });
+      this.row = await desk.client.rowOf(item).catch(() => []);
+      return;
+    }
+    const picture = (await desk.client.original(item)) ?? of?.thumbnail;
     this.#zoomed = picture && URL.createObjectURL(picture);
     this.#openPanel({ panel: 'zoom', item });
   }
@@ -279,12 +387,14 @@ export class Bench extends LitElement {
   }
 
   #closePanel(): void {
-    const panel = this.renderRoot.querySelector<Panel>('.panel');
-    if (panel) panel.close();
-    else this.#closed();
+    this.renderRoot.querySelector<Panel>('.panel')?.close();
+    // The panel tells it too, unless it is gone from the page by then.
+    this.#closed();
   }
 
   #closed(): void {
+    if (!this.opened) return;
+    if (this.opened?.panel === 'notes') this.#notesIn.settle(false);
     this.opened = undefined;
     if (this.#zoomed) URL.revokeObjectURL(this.#zoomed);
     this.#zoomed = undefined;
@@ -300,10 +410,14 @@ export class Bench extends LitElement {
     if (this.opened?.panel === 'tray') this.opened = { ...this.opened, error: problem };
   }
 
-  #takeResult(): void {
+  async #takeResult(): Promise<void> {
     const { desk } = this;
     if (!desk) return;
-    desk.said = words.resultTaken(handOver(desk));
+    try {
+      desk.said = words.resultTaken(await handOver(desk));
+    } catch (error) {
+      return desk.complain(messageOf(error));
+    }
     this.past?.finish(desk.snapshot);
     this.requestUpdate();
   }
@@ -311,9 +425,25 @@ export class Bench extends LitElement {
   #listeners(root: ShadowRoot): void {
     const on = <T>(type: string, act: (detail: T) => void) =>
       root.addEventListener(type, (event) => act((event as CustomEvent<T>).detail));
-    on('demo', () => void this.#demo());
-    on('choose-files', () => this.#choose(false));
-    on('choose-folder', () => this.#choose(true));
+    on('demo', () => void this.#demo('photos'));
+    on('demo-notes', () => void this.#demo('notes'));
+    on('choose-files', () => this.#choose('photos'));
+    on('choose-notes', () => this.#choose('notes'));
+    on('choose-folder', () => this.#choose('folder'));
+    on('write-notes', () => this.#openPanel({ panel: 'write', text: '' }));
+    on<{ text: string }>('written', ({ text }) => void this.#bring({ kind: 'notes', lines: text }));
+    on<{ column?: number; each?: boolean }>('notes-choose', (change) => this.#notesIn.choose(change));
+    on('notes-settle', () => this.#notesIn.settle(true));
+    on<{ id: string }>('open-kit', ({ id }) => void this.#changeKit(id));
+    on('new-kit', () => void this.#changeKit());
+    on<{ id: string; name: string }>('rename-kit', ({ id, name }) => void this.kits?.rename(id, name));
+    on<{ id: string }>('delete-kit', ({ id }) => void this.#deleteKit(id));
+    on<{ id?: string }>('into-kit', ({ id }) => {
+      if (this.opened?.panel !== 'other-kind') return;
+      const { coming } = this.opened;
+      this.#closePanel();
+      void this.#bringInto(id, coming);
+    });
     on('camera', () => this.#openPanel({ panel: 'camera' }));
     on<{ sources: Source[] }>('pictures', ({ sources }) => void this.#add({ sources, problems: [] }));
     on<{ tray: number }>('answer', ({ tray }) => void this.desk?.answer(tray));
@@ -372,11 +502,28 @@ export class Bench extends LitElement {
     this.trust?.forget();
     localStorage.removeItem(HAS_PILE);
     await this.desk?.clear();
+    await this.kits?.forget();
+  }
+
+  async #deleteKit(id: string): Promise<void> {
+    const { kits, desk } = this;
+    if (!kits) return;
+    if (id === kits.id) return this.#clear();
+    const name = kits.list.find((kit) => kit.id === id)?.name ?? '';
+    try {
+      await kits.delete(id);
+      if (desk) desk.said = words.kitDeleted(name);
+    } catch (error) {
+      desk?.complain(messageOf(error));
+    }
+    this.requestUpdate();
   }
 
   async #discard(): Promise<void> {
     localStorage.removeItem(HAS_PILE);
-    await PileClient.discard();
+    const { kits } = this;
+    await PileClient.discard(kits?.id);
+    await kits?.forget();
     location.reload();
   }
 
@@ -387,7 +534,7 @@ export class Bench extends LitElement {
     return html`
       ${this.#top(bench)}
       ${desk
-        ? html`<ken-reading .progress=${desk.progress} .problems=${desk.problems} ?stopping=${desk.stopping}></ken-reading>`
+        ? html`<ken-reading .kind=${desk.kind} .progress=${desk.progress} .fetched=${desk.fetched} .problems=${desk.problems} ?stopping=${desk.stopping}></ken-reading>`
         : nothing}
       ${bench ? this.#bench(desk) : this.#welcome()}
       <footer>
@@ -396,6 +543,7 @@ export class Bench extends LitElement {
           <strong>${words.private}</strong>
           <button class="plain" @click=${() => this.#openPanel({ panel: 'help' })}>${words.helpTitle}</button>
           ${bench && this.trust ? html`<button class="plain" @click=${() => this.#openTrust()}>${words.trust.open}</button>` : nothing}
+          <button class="plain" @click=${() => this.#openKits()}>${words.kits}</button>
           ${this.past ? html`<button class="plain" @click=${() => this.#openPast()}>${words.past}</button>` : nothing}
           ${bench
             ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
@@ -411,34 +559,42 @@ export class Bench extends LitElement {
     const { desk } = this;
     return html`<header class=${bench ? 'working' : ''}>
       ${bench ? html`<h1 class="brand">${brand}</h1>` : html`<p class="brand">${brand}</p>`}
-      ${bench && desk ? html`<ken-band .tally=${desk.view?.tally}></ken-band>` : html`<span></span>`}
+      ${bench && desk ? html`<ken-band .tally=${desk.view?.tally} .kind=${desk.kind}></ken-band>` : html`<span></span>`}
       <nav aria-label="Pile">
         ${desk && (bench || desk.snapshot?.canUndo || desk.snapshot?.canRedo)
           ? html`<button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
               <button ?disabled=${!desk.snapshot?.canRedo} @click=${() => void desk.redo()}>${words.redo}</button>`
           : nothing}
         ${bench
-          ? html`<button popovertarget="ways">${words.add[0]}<span class="wide">${words.add[1]}</span></button>
-              <button class="strong" @click=${() => this.#takeResult()}><span class="wide">${words.result[0]}</span><span class="narrow">${words.result[1]}</span></button>`
+          ? html`<button popovertarget="ways">${words.add[desk?.kind ?? 'photos'][0]}<span class="wide">${words.add[desk?.kind ?? 'photos'][1]}</span></button>
+              <button class="strong" @click=${() => void this.#takeResult()}><span class="wide">${words.result[0]}</span><span class="narrow">${words.result[1]}</span></button>`
           : nothing}
         <button class="about" aria-label=${words.help} title=${words.help} @click=${() => this.#openPanel({ panel: 'help' })}>?</button>
       </nav>
       ${bench
         ? html`<div id="ways" popover class="ways">
-              <button class="plain" @click=${() => this.#choose(false)}>${words.chooseFiles}</button>
-              <button class="plain" @click=${() => this.#choose(true)}>${words.chooseFolder}</button>
-              ${hasCamera()
-                ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'camera' })}>${words.camera}</button>`
-                : nothing}
+              ${desk?.kind === 'notes' ? this.#waysOfNotes() : this.#waysOfPhotos()}
+              <button class="plain" @click=${() => this.#openKits()}>${words.newKit}</button>
               <p class="soft">${words.dropHint}</p>
             </div>`
         : nothing}
     </header>`;
   }
 
+  #waysOfPhotos(): TemplateResult {
+    return html`<button class="plain" @click=${() => this.#choose('photos')}>${words.chooseFiles}</button>
+      <button class="plain" @click=${() => this.#choose('folder')}>${words.chooseFolder}</button>
+      ${hasCamera() ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'camera' })}>${words.camera}</button>` : nothing}`;
+  }
+
+  #waysOfNotes(): TemplateResult {
+    return html`<button class="plain" @click=${() => this.#choose('notes')}>${words.chooseNotes}</button>
+      <button class="plain" @click=${() => this.#openPanel({ panel: 'write', text: '' })}>${words.writeNotes}</button>`;
+  }
+
   #welcome(): TemplateResult {
     if (!this.desk && localStorage.getItem(HAS_PILE)) return html`<main class="failure"><p>${words.opening}</p></main>`;
-    return html`<ken-welcome ?loading=${this.demoLoading} ?hasCamera=${hasCamera()}>${this.#starterLine()}</ken-welcome>`;
+    return html`<ken-welcome .loading=${this.demoLoading} ?hasCamera=${hasCamera()} .kits=${this.kits?.others ?? []}>${this.#starterLine()}</ken-welcome>`;
   }
 
   #starterLine(): TemplateResult | typeof nothing {
@@ -482,7 +638,8 @@ export class Bench extends LitElement {
   #picture(desk: Desk, item: number): string | undefined {
     if (this.#pictureOf.item !== item) {
       if (this.#pictureOf.url) URL.revokeObjectURL(this.#pictureOf.url);
-      const blob = desk.items[item]?.thumbnail;
+      const of = desk.items[item];
+      const blob = of && 'thumbnail' in of ? of.thumbnail : undefined;
       this.#pictureOf = { item, url: blob && URL.createObjectURL(blob) };
     }
     return this.#pictureOf.url;
@@ -495,6 +652,11 @@ export class Bench extends LitElement {
     if (opened?.panel === 'past') {
       return this.past ? html`<ken-past-panel class="panel" .view=${this.past.view(desk?.snapshot)}></ken-past-panel>` : nothing;
     }
+    if (opened?.panel === 'write') return html`<ken-write class="panel" .text=${opened.text}></ken-write>`;
+    if (opened?.panel === 'notes') {
+      return this.#notesIn.step ? html`<ken-notes-panel class="panel" .step=${this.#notesIn.step}></ken-notes-panel>` : nothing;
+    }
+    if (opened?.panel === 'kits') return this.#kitsPanel();
     if (!opened || !desk) return nothing;
     switch (opened.panel) {
       case 'trust': {
@@ -516,10 +678,24 @@ export class Bench extends LitElement {
           ?singleKeys=${this.singleKeys}
         ></ken-spot-check>`;
       }
-      case 'zoom':
-        return html`<ken-zoom class="panel" .picture=${this.#zoomed} .name=${desk.items[opened.item]?.name ?? ''}></ken-zoom>`;
+      case 'other-kind': {
+        const { coming } = opened;
+        return html`<ken-other-kind
+          class="panel"
+          .kind=${coming.kind}
+          .files=${'lines' in coming ? 1 : coming.sources.length}
+          .kit=${this.kits?.nameOf(desk) ?? ''}
+          .kits=${this.kits?.others.filter(({ encoder }) => kindOf(encoder) === coming.kind) ?? []}
+          .kept=${this.kits?.kept ?? false}
+        ></ken-other-kind>`;
+      }
+      case 'zoom': {
+        const of = desk.items[opened.item];
+        if (of && 'text' in of) return html`<ken-note class="panel" .text=${of.text} .name=${of.name} .row=${this.row}></ken-note>`;
+        return html`<ken-zoom class="panel" .picture=${this.#zoomed} .name=${of?.name ?? ''}></ken-zoom>`;
+      }
       case 'start-over': {
-        const loss = words.startOverLoss(desk.view?.tally.items ?? 0, desk.snapshot?.trays.length ?? 0, desk.answers);
+        const loss = words.startOverLoss(desk.kind, desk.view?.tally.items ?? 0, desk.snapshot?.trays.length ?? 0, desk.answers);
         const pile = this.past?.view(desk.snapshot).pile;
         const canTeach = pile?.teachable === true && pile.taught?.items !== pile.answers;
         return html`<ken-start-over class="panel" loss=${loss} ?canTeach=${canTeach}></ken-start-over>`;
@@ -537,6 +713,18 @@ export class Bench extends LitElement {
 
   readonly #originalOfItem = async (item: number): Promise<Blob | undefined> => this.desk?.client.original(item);
 
+  #kitsPanel(): TemplateResult {
+    const { kits, desk } = this;
+    const busy = desk?.progress?.state === 'reading' ? 'reading' : desk?.client.busy ? 'rest' : undefined;
+    return html`<ken-kits
+      class="panel"
+      .kits=${kits?.list ?? []}
+      .current=${desk?.snapshot ? kits?.id : ''}
+      .busy=${busy}
+      .kept=${kits?.kept ?? false}
+    ></ken-kits>`;
+  }
+
   #failure(): TemplateResult {
     const code = this.failed instanceof KenspeckleError ? this.failed.code : (this.failed as { code?: string }).code;
     return html`${this.#top(false)}
@@ -547,6 +735,10 @@ export class Bench extends LitElement {
           <button class="strong" @click=${() => location.reload()}>${words.reload}</button>
           ${code?.startsWith('state-') ? html`<button class="alarm" @click=${() => void this.#discard()}>${words.discard}</button>` : nothing}
         </p>
+        ${this.kits && code === 'pile-open-elsewhere'
+          ? html`<ken-kit-list .kits=${this.kits.others}></ken-kit-list>
+              <p><button @click=${() => void this.#changeKit()}>${words.newKit}</button></p>`
+          : nothing}
       </main>`;
   }
 

@@ -1,4 +1,5 @@
 import { css, html, LitElement, nothing, type TemplateResult } from 'lit';
+import type { Kind } from '../kit/client';
 import { fraction } from './fraction';
 import { shared } from './styles';
 import type { Tally } from './view';
@@ -6,9 +7,10 @@ import { words } from './words';
 
 /** The whole pile as one bar: what is answered, sure, unsure, open. */
 export class Band extends LitElement {
-  static override properties = { tally: { attribute: false } };
+  static override properties = { tally: { attribute: false }, kind: { attribute: false } };
 
   declare tally: Tally | undefined;
+  declare kind: Kind;
 
   override render(): TemplateResult | typeof nothing {
     const { tally } = this;
@@ -26,7 +28,7 @@ export class Band extends LitElement {
         ${parts.map(([kind, n]) => html`<span class=${kind} ${fraction(n / tally.items)}></span>`)}
       </div>
       <p>
-        <strong>${words.bandTitle(tally.items)}</strong>
+        <strong>${words.bandTitle(tally.items, this.kind)}</strong>
         ${parts.map(([kind, n, say]) => html`<span class="part"><span class="swatch ${kind}" aria-hidden="true"></span>${say(n)}</span>`)}
       </p>`;
   }

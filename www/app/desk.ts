@@ -1,8 +1,12 @@
 import {
   type Action,
   Aside,
+  type Fetched,
   type Item,
+  type Kind,
   messageOf,
+  type NoteFile,
+  type NoteInFile,
   type PileClient,
   type Progress,
   type Ranked,
@@ -25,12 +29,16 @@ export class Desk {
   ranking: Ranked[] = [];
   movedItems: ReadonlySet<number> = new Set();
   progress: Progress | undefined;
+  /** How the text encoder arrives, while it does. */
+  fetched: Fetched | undefined;
   stopping = false;
   problems: readonly string[] = [];
   said = '';
   #held: 'question' | 'person' = 'question';
   #acting = false;
   #turn: Promise<unknown> = Promise.resolve();
+  /** Long notes that were told of. */
+  #long = 0;
   /** What was said about a failed save. */
   #unsaved: string | undefined;
 
@@ -43,9 +51,15 @@ export class Desk {
     client.on('progress', ({ detail }) => {
       this.progress = detail;
       if (detail.state !== 'reading') this.stopping = false;
-      if (detail.state === 'finished' && detail.total > 0) this.said = words.readAll(detail.added);
+      if (detail.state === 'finished' && detail.total > 0) this.said = words.readAll(this.kind, detail.added);
+      if (detail.state === 'finished') this.#tellLong();
       this.#redraw();
     });
+    client.on('fetched', ({ detail }) => {
+      this.fetched = detail;
+      this.#redraw();
+    });
+    this.#long = this.#countLong();
     client.on('saved', ({ detail }) => this.#saved(detail));
     if (client.notKept !== undefined) this.complain(words.notKept);
   }
@@ -59,6 +73,11 @@ export class Desk {
 
   get items(): readonly Item[] {
     return this.client.items;
+  }
+
+  /** What the items are; photos as long as there are none. */
+  get kind(): Kind {
+    return this.client.kind ?? 'photos';
   }
 
   get handItem(): Item | undefined {
@@ -122,6 +141,14 @@ export class Desk {
   async add(sources: readonly Source[]): Promise<void> {
     if (sources.length === 0) return;
     await this.client.add(sources).catch((error: unknown) => this.complain(messageOf(error)));
+  }
+
+  async addNotes(file: NoteFile, notes: readonly NoteInFile[], name: (note: NoteInFile) => string): Promise<void> {
+    try {
+      if ((await this.client.addNotes(file, notes, name)) === 0) this.complain(words.notesAgain(file.name));
+    } catch (error) {
+      this.complain(messageOf(error));
+    }
   }
 
   stop(): void {
@@ -206,7 +233,18 @@ export class Desk {
     this.problems = [];
     this.hand = undefined;
     this.said = '';
+    this.#long = 0;
     await this.#show(undefined);
+  }
+
+  #countLong(): number {
+    return this.items.reduce((sum, item) => sum + Number('text' in item && item.parts > 1), 0);
+  }
+
+  #tellLong(): void {
+    const long = this.#countLong();
+    if (long > this.#long) this.complain(words.longNotes(long - this.#long));
+    this.#long = long;
   }
 
   #of(item: number | undefined): { tray: number; status: number } | undefined {

@@ -86,6 +86,19 @@ interface DemoIndex {
   items: { file: string }[];
 }
 
+/** The demo pile of notes and the column they stand in. */
+export const demoNotes = {
+  column: 'note',
+  source: {
+    name: 'log.csv',
+    blob: async (): Promise<Blob> => {
+      const response = await fetch(new URL('./demo/notes/log.csv', document.baseURI)).catch(() => undefined);
+      if (!response?.ok) throw new Error(words.demoMissing);
+      return response.blob();
+    },
+  } satisfies Source,
+};
+
 const demoFolder = new URL('./demo/pile/', document.baseURI);
 
 export async function demoIndex(): Promise<DemoIndex> {

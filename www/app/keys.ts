@@ -1,6 +1,6 @@
 export type Command =
   | { do: 'tray'; place: number }
-  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' | 'trust' };
+  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' | 'trust' | 'kits' };
 
 const single: Record<string, Command> = {
   enter: { do: 'guess' },
@@ -13,6 +13,7 @@ const single: Record<string, Command> = {
   q: { do: 'back' },
   p: { do: 'past' },
   h: { do: 'trust' },
+  k: { do: 'kits' },
   delete: { do: 'remove' },
   backspace: { do: 'remove' },
   '?': { do: 'help' },

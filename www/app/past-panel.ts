@@ -1,5 +1,5 @@
 import { css, html, nothing, type TemplateResult } from 'lit';
-import { NOTHING, type PastPile, type StarterFacts } from '../kit/client';
+import { kindOf, NOTHING, type PastPile, type StarterFacts } from '../kit/client';
 import { tell } from './event';
 import { Panel } from './panels';
 import type { NextView, PastView, PileView } from './past';
@@ -29,7 +29,7 @@ export class PastPanel extends Panel {
       <section aria-labelledby="next">
         <h3 id="next">${words.nextTitle}</h3>
         ${next.some(({ starters }) => starters.length > 0)
-          ? next.map((one) => this.#next(one, next.length > 1))
+          ? next.map((one) => this.#next(one))
           : html`<p class="soft">${words.nextNothing}</p>`}
         <div class="row">
           <button @click=${() => tell(this, 'choose-starter', {})}>${words.openStarter}</button>
@@ -81,7 +81,7 @@ export class PastPanel extends Panel {
     </div>`;
   }
 
-  #next({ encoder, starters, chosen }: NextView, named: boolean): TemplateResult {
+  #next({ encoder, starters, chosen }: NextView): TemplateResult {
     const option = (key: string, text: unknown, more: unknown): TemplateResult => html`<div class="row option">
       <label class="check">
         <input
@@ -100,7 +100,8 @@ export class PastPanel extends Panel {
         : html`<button aria-label=${words.deleteStarter(starter.name)} @click=${() => tell(this, 'drop-starter', { key: starter.key })}>
             ${words.delete}
           </button>`;
-    return html`<div role="radiogroup" aria-label=${named ? words.nextOf(encoder) : words.nextTitle}>
+    return html`<h4>${words.nextOf(kindOf(encoder))}</h4>
+      <div role="radiogroup" aria-label=${words.nextOf(kindOf(encoder))}>
       ${starters.map((starter) => {
         const facts = words.starterFacts(starter.name, starter.categories, starter.items, starter.piles.length, starter.date);
         return option(starter.key, html`<b>${starter.name ?? words.ownStarter}</b> <span class="soft">${facts}</span>`, button(starter));
@@ -109,9 +110,9 @@ export class PastPanel extends Panel {
     </div>`;
   }
 
-  #past({ id, date, categories, items }: PastPile): TemplateResult {
+  #past({ id, date, encoder, categories, items }: PastPile): TemplateResult {
     return html`<li class="row">
-      <span>${words.pastPile(date, categories, items)}</span>
+      <span>${words.pastPile(kindOf(encoder), date, categories, items)}</span>
       ${this.#forget(id, words.forgetPile(date), words.forget, () => tell(this, 'forget-pile', { id }))}
     </li>`;
   }

@@ -74,13 +74,17 @@ export class Past {
     return piles && new Past(piles, redraw);
   }
 
-  /** Does what parts of the page ask for. */
-  serve(root: EventTarget, desk: Desk): void {
+  /** Does what parts of the page ask for, with the desk there is by then. */
+  serve(root: EventTarget, now: () => Desk | undefined): void {
     const on = <T>(type: string, act: (detail: T) => void) =>
       root.addEventListener(type, (event) => act((event as CustomEvent<T>).detail));
     on('stop-learning', () => this.#stopper?.abort());
-    on('choose-starter', () => this.#chooseFile(desk));
-    on<{ to: string | boolean }>('start-from', ({ to }) => void this.#startFrom(desk, to));
+    const withDesk = (act: (desk: Desk) => void) => {
+      const desk = now();
+      if (desk) act(desk);
+    };
+    on('choose-starter', () => withDesk((desk) => this.#chooseFile(desk)));
+    on<{ to: string | boolean }>('start-from', ({ to }) => withDesk((desk) => void this.#startFrom(desk, to)));
     on<{ encoder: string; key: string }>('past-next', ({ encoder, key }) => void this.#choose(encoder, key));
     on<{ starter: StarterFacts }>('share-starter', ({ starter }) => void this.#share(starter));
     on<{ key: string }>('drop-starter', ({ key }) => void this.#drop(key));

@@ -56,6 +56,36 @@ export const questionStyles = css`
     background: var(--quiet);
     cursor: grab;
   }
+  .mat.note {
+    flex-direction: column;
+    gap: 8px;
+    flex-basis: clamp(120px, 26vh, 460px);
+  }
+  .mat .text {
+    flex: 1 1 auto;
+    min-height: 3.2em;
+    overflow: auto;
+    padding: 12px 14px;
+    border-radius: 8px;
+    background: var(--raised);
+    font-size: 1.16rem;
+    line-height: 1.5;
+    white-space: pre-wrap;
+    overflow-wrap: anywhere;
+    scrollbar-width: thin;
+  }
+  .under {
+    flex: none;
+    flex-wrap: nowrap;
+    justify-content: space-between;
+    color: var(--on-bright);
+    font-size: 0.9rem;
+  }
+  .under button {
+    flex: none;
+    color: var(--ink);
+    background: var(--surface);
+  }
   .zoom {
     position: absolute;
     inset-block-end: 14px;

@@ -1,6 +1,6 @@
 import { html, LitElement, nothing, type PropertyValues, type TemplateResult } from 'lit';
 import { repeat } from 'lit/directives/repeat.js';
-import { type Item, type Ranked, Status, type Tray } from '../kit/client';
+import { type Item, type NoteItem, type Ranked, Status, type Tray } from '../kit/client';
 import { ITEM_TYPE, tell, trayKey } from './event';
 import { fraction } from './fraction';
 import { questionStyles } from './question-styles';
@@ -94,10 +94,17 @@ export class Question extends LitElement {
     this.#hadFocus = (this.renderRoot as ShadowRoot).activeElement !== null;
   }
 
+  /** The next note begins at its top. */
+  #scrollUp(): void {
+    const text = this.renderRoot.querySelector('.text');
+    if (text) text.scrollTop = 0;
+  }
+
   /** The next question takes the keys: what was focused belonged to the last one. */
   override updated(changed: PropertyValues<this>): void {
     if (changed.has('guess') || changed.has('ranking') || this.#isNext(changed)) this.#showGuess();
     if (!this.#isNext(changed)) return;
+    this.#scrollUp();
     if (this.#hadFocus) this.settle();
     // Not for the first item: nothing has been answered yet.
     if (changed.get('item')) this.#show();
@@ -182,7 +189,7 @@ export class Question extends LitElement {
           <h2 id="ask" tabindex="-1">${words.question}</h2>
           <p class="soft name" title=${item.name}>${item.name}</p>
         </header>
-        <div class="mat">
+        ${'text' in item ? this.#note(item) : html`<div class="mat">
           <img
             src=${this.picture ?? nothing}
             alt=${item.name}
@@ -190,7 +197,7 @@ export class Question extends LitElement {
             @dragstart=${(event: DragEvent) => event.dataTransfer?.setData(ITEM_TYPE, String(item.number))}
           />
           <button class="zoom" @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
-        </div>
+        </div>`}
         ${this.#standing()} ${this.#doubtful()}
         ${this.trays.length > 0 && !typing ? this.#rows() : nothing}
         <div class="field">
@@ -229,6 +236,17 @@ export class Question extends LitElement {
         </div>
       </section>
     `;
+  }
+
+  #note({ text, name, parts, rows }: NoteItem): TemplateResult {
+    const facts = [...(parts > 1 ? [words.inParts(parts)] : []), ...(rows > 1 ? [words.timesOver(rows)] : [])];
+    return html`<div class="mat note">
+      <div class="text" role="group" aria-label=${words.noteInHand(name)} tabindex="0" dir="auto">${text}</div>
+      <div class="row under">
+        <span>${facts.join(' ')}</span>
+        <button @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
+      </div>
+    </div>`;
   }
 
   #standing(): TemplateResult | typeof nothing {

@@ -1,5 +1,5 @@
 import { css, html, LitElement, nothing, type TemplateResult } from 'lit';
-import type { Progress } from '../kit/client';
+import type { Fetched, Kind, Progress } from '../kit/client';
 import { tell } from './event';
 import { shared } from './styles';
 import { words } from './words';
@@ -7,17 +7,22 @@ import { words } from './words';
 /** How reading goes, what could not be read, and other things that the person has to know. */
 export class Reading extends LitElement {
   static override properties = {
+    kind: { attribute: false },
     progress: { attribute: false },
+    fetched: { attribute: false },
     problems: { attribute: false },
     stopping: { type: Boolean },
   };
 
+  declare kind: Kind;
   declare progress: Progress | undefined;
+  declare fetched: Fetched | undefined;
   declare problems: readonly string[];
   declare stopping: boolean;
 
   constructor() {
     super();
+    this.kind = 'photos';
     this.problems = [];
     this.stopping = false;
   }
@@ -37,9 +42,15 @@ export class Reading extends LitElement {
   }
 
   #reading(): TemplateResult | typeof nothing {
-    const { progress } = this;
+    const { progress, fetched, kind } = this;
     if (!progress || progress.state === 'finished') return nothing;
     const { done, total } = progress;
+    if (fetched) {
+      return html`<div class="line">
+        <progress aria-label=${words.fetchingShort} max=${fetched.total} .value=${fetched.done}></progress>
+        <span class="figures">${words.fetching(fetched.done, fetched.total)}</span>
+      </div>`;
+    }
     if (progress.state === 'stopped' && !this.stopping) {
       return html`<div class="line">
         <span>${words.stopped(done, total)}</span>
@@ -47,8 +58,8 @@ export class Reading extends LitElement {
       </div>`;
     }
     return html`<div class="line">
-      <progress aria-label=${words.readingShort} max=${total} .value=${done}></progress>
-      <span class="figures">${this.stopping ? words.stopping : words.reading(done, total, progress.secondsLeft)}</span>
+      <progress aria-label=${words.readingShort(kind)} max=${total} .value=${done}></progress>
+      <span class="figures">${this.stopping ? words.stopping(kind) : words.reading(kind, done, total, progress.secondsLeft)}</span>
       <button ?disabled=${this.stopping} @click=${() => tell(this, 'stop', {})}>${words.stop}</button>
     </div>`;
   }
@@ -61,13 +72,13 @@ export class Reading extends LitElement {
       <div class="outcome">
         ${refused.length > 0
           ? html`<details ?open=${refused.length <= 5}>
-              <summary>${words.refused(refused.length)}</summary>
+              <summary>${words.refused(this.kind, refused.length)}</summary>
               <ul>
                 ${refused.map(({ name, message }) => html`<li>${message.includes(name) ? message : `${name}: ${message}`}</li>`)}
               </ul>
             </details>`
           : nothing}
-        ${duplicates.length > 0 ? html`<p class="duplicates">${words.duplicates([...duplicates])}</p>` : nothing}
+        ${duplicates.length > 0 ? html`<p class="duplicates">${words.duplicates(this.kind, [...duplicates])}</p>` : nothing}
       </div>
       ${progress.state === 'finished'
         ? html`<button class="plain" @click=${() => tell(this, 'dismiss-outcome', {})}>${words.dismiss}</button>`

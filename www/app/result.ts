@@ -13,40 +13,47 @@ function checked(check: CheckView | undefined): Map<number, string> | undefined 
   return new Map(check.sample.map(({ item, judgement }) => [item, typeof judgement === 'string' ? said[judgement] : said.belongs]));
 }
 
-/** The table's columns; the last one only where a spot check is about it. */
+/** The columns that the result adds; the last one only where a spot check is about it. */
 function columns(check: CheckView | undefined): string[] {
   const { plausible, aside, checked: spotCheck } = words.trust.columns;
-  return ['item', 'tray', 'probability', plausible, aside, ...(checked(check) ? [spotCheck] : [])];
+  return ['tray', 'probability', plausible, aside, ...(checked(check) ? [spotCheck] : [])];
 }
 
-/** One line an item; no tray for what is not sorted or set aside. */
-function rows(desk: Desk): string[][] {
+/** What the result says of each item, in the order of `columns`; no tray for what is not sorted or set aside, `null` for what was taken out. */
+function finder(desk: Desk): (number: number) => string[] | null {
   const { snapshot } = desk;
-  if (!snapshot) return [];
+  if (!snapshot) return () => null;
   const { tray, probability, status } = snapshot.verdicts;
   const said = checked(snapshot.check);
-  return desk.items
-    .filter(({ number }) => status[number] !== Status.removed)
-    .map(({ number, name }) => {
-      const reason = asideOf(snapshot.verdicts, number);
-      const placed = reason === Aside.not ? (tray[number] ?? -1) : -1;
-      const plausible = status[number] === Status.none ? '' : plausibleOf(snapshot, number).map((one) => desk.trayName(one)).join('; ');
-      const aside = status[number] === Status.none ? words.trust.byYou : (words.reasons[reason] ?? '');
-      return [
-        name,
-        placed < 0 ? '' : desk.trayName(placed),
-        placed < 0 ? '' : (probability[number] ?? 0).toFixed(4),
-        plausible,
-        aside,
-        ...(said ? [said.get(number) ?? ''] : []),
-      ];
-    });
+  return (number) => {
+    if (status[number] === Status.removed) return null;
+    const reason = asideOf(snapshot.verdicts, number);
+    const placed = reason === Aside.not ? (tray[number] ?? -1) : -1;
+    const plausible = status[number] === Status.none ? '' : plausibleOf(snapshot, number).map((one) => desk.trayName(one)).join('; ');
+    const aside = status[number] === Status.none ? words.trust.byYou : (words.reasons[reason] ?? '');
+    return [
+      placed < 0 ? '' : desk.trayName(placed),
+      placed < 0 ? '' : (probability[number] ?? 0).toFixed(4),
+      plausible,
+      aside,
+      ...(said ? [said.get(number) ?? ''] : []),
+    ];
+  };
 }
 
-/** Saves the result as a table. Returns the file's name. */
-export function handOver(desk: Desk): string {
-  const table = csv([columns(desk.snapshot?.check), ...rows(desk)]);
-  save(new Blob([table], { type: 'text/csv' }), FILE);
+/** Saves the result as a table: photos one a line, notes as the rows they came in. Resolves to the file's name. */
+export async function handOver(desk: Desk): Promise<string> {
+  const added = columns(desk.snapshot?.check);
+  const found = finder(desk);
+  if (desk.kind === 'notes') {
+    save(await desk.client.handBack(added, found), FILE);
+    return FILE;
+  }
+  const rows = desk.items.flatMap(({ number, name }) => {
+    const cells = found(number);
+    return cells ? [[name, ...cells]] : [];
+  });
+  save(new Blob([csv([['item', ...added], ...rows])], { type: 'text/csv' }), FILE);
   return FILE;
 }
 

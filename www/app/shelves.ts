@@ -1,6 +1,6 @@
 import { css, html, LitElement, nothing, type PropertyValues, type TemplateResult } from 'lit';
 import { repeat } from 'lit/directives/repeat.js';
-import { type Item, type Snapshot } from '../kit/client';
+import { type Item, kindOf, type Snapshot } from '../kit/client';
 import { ITEM_TYPE, tell, trayKey } from './event';
 import { shared } from './styles';
 import { Tiles } from './tiles';
@@ -14,6 +14,11 @@ const ASIDE = -2;
 const BACK_ROWS = 2;
 const FRONT_ROWS = 1;
 const PILE_ROWS = 6;
+/** The same for notes, whose rows are lines. */
+const NOTE_BACK_ROWS = 4;
+const NOTE_FRONT_ROWS = 3;
+const NOTE_PILE_ROWS = 12;
+const NOTE_WIDTH = 290;
 /** In pixels, as in the style sheet below. */
 const GAP = 5;
 const SHELF_GAP = 20;
@@ -157,7 +162,7 @@ export class Shelves extends LitElement {
 
   override render(): TemplateResult {
     return html`<h2 class="visually-hidden">${words.shelves}</h2>
-      <div class="shelves" @keydown=${this.#onKey} @click=${this.#onClick} @focusin=${this.#onFocus}>
+      <div class="shelves ${this.#notes ? 'notes' : ''}" @keydown=${this.#onKey} @click=${this.#onClick} @focusin=${this.#onFocus}>
         ${repeat(
           this.#drawn(),
           ({ tray }) => tray,
@@ -166,8 +171,21 @@ export class Shelves extends LitElement {
       </div>`;
   }
 
+  get #notes(): boolean {
+    return this.snapshot !== undefined && kindOf(this.snapshot.encoder) === 'notes';
+  }
+
+  #noteLimits(shelf: Drawn): { back: number; front: number } {
+    const columns = this.#columns(NOTE_WIDTH, this.#room(shelf.tray === PILE));
+    if (shelf.tray === PILE) return { back: columns * NOTE_PILE_ROWS, front: 0 };
+    if (shelf.front.length === 0) return { back: columns * 2 * NOTE_BACK_ROWS, front: 0 };
+    const spare = Math.max(0, NOTE_BACK_ROWS - Math.ceil(shelf.back.length / columns));
+    return { back: columns * NOTE_BACK_ROWS, front: columns * (NOTE_FRONT_ROWS + Math.floor(spare / 2)) };
+  }
+
   #limits(shelf: Drawn): { back: number; front: number } {
     if (this.open === shelf.tray) return { back: Infinity, front: Infinity };
+    if (this.#notes) return this.#noteLimits(shelf);
     const small = this.#style('--tile');
     const large = this.#style('--tile-front');
     const room = this.#room(shelf.tray === PILE);
@@ -380,6 +398,15 @@ export class Shelves extends LitElement {
       }
       .front {
         grid-template-columns: repeat(auto-fill, minmax(var(--tile-front), 1fr));
+      }
+      .notes .back,
+      .notes .front {
+        grid-template-columns: repeat(auto-fill, minmax(min(290px, 100%), 1fr));
+        justify-content: stretch;
+        gap: 4px 8px;
+      }
+      .notes .front {
+        gap: 6px 8px;
       }
       .plate {
         display: flex;

@@ -1,5 +1,5 @@
 import { css, html, LitElement, nothing, type TemplateResult } from 'lit';
-import { NOTHING } from '../kit/client';
+import { kindOf, NOTHING } from '../kit/client';
 import { tell } from './event';
 import type { PastView } from './past';
 import { shared } from './styles';
@@ -45,7 +45,7 @@ export class StarterLine extends LitElement {
       chosen === NOTHING ? [] : starters.filter(({ key }) => key === chosen),
     );
     if (!next) return nothing;
-    return this.#line(html`<span>${words.nextStartsFrom(next.name, next.categories)}</span>`, this.#more());
+    return this.#line(html`<span>${words.nextStartsFrom(kindOf(next.encoder), next.name, next.categories)}</span>`, this.#more());
   }
 
   #more(): TemplateResult {

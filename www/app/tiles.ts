@@ -4,13 +4,24 @@ import { ITEM_TYPE } from './event';
 import { asideOf, plausibleOf } from './view';
 import { percent, words } from './words';
 
+/** Characters of a note on its tile, in its label, and in the text that shows when a pointer rests on it. */
+const ON_TILE = 300;
+const IN_LABEL = 120;
+const IN_HAND = 1500;
+
+/** The beginning of a text, in one line. */
+function excerpt(text: string, characters: number): string {
+  const cut = text.slice(0, characters + 1).trim().replace(/\s+/g, ' ');
+  return text.trim().length > characters ? `${cut.slice(0, characters).trimEnd()} …` : cut;
+}
+
 interface Tile {
   element: HTMLElement;
   figure: HTMLElement;
 }
 
 /**
- * The small pictures. Each item keeps its element while it is shown, whatever shelf it goes to, so that a picture is not
+ * The small pictures, or for notes their first lines. Each item keeps its element while it is shown, whatever shelf it goes to, so that a picture is not
  * decoded again for every answer.
  */
 export class Tiles {
@@ -24,9 +35,9 @@ export class Tiles {
   url(number: number): string | undefined {
     const known = this.#urls.get(number);
     if (known) return known;
-    const blob = this.#items[number]?.thumbnail;
-    if (!blob) return undefined;
-    const url = URL.createObjectURL(blob);
+    const item = this.#items[number];
+    if (!item || !('thumbnail' in item) || !item.thumbnail) return undefined;
+    const url = URL.createObjectURL(item.thumbnail);
     this.#urls.set(number, url);
     return url;
   }
@@ -97,10 +108,12 @@ export class Tiles {
     const { element, figure } = tile;
     element.dataset['kind'] = kind;
     element.classList.toggle('hand', item === this.#hand);
-    const label = words.tile(this.#items[item]?.name ?? '', shelf, how);
+    const of = this.#items[item];
+    const note = of && 'text' in of ? of.text : undefined;
+    const label = words.tile(note === undefined ? (of?.name ?? '') : excerpt(note, IN_LABEL), shelf, how);
     if (element.ariaLabel !== label) {
       element.ariaLabel = label;
-      element.title = label;
+      element.title = note === undefined ? label : words.tileInHand(note.length > IN_HAND ? `${note.slice(0, IN_HAND)} …` : note, how);
       figure.textContent = kind === 'sorted' ? percent(probability) : kind === 'unlike' ? (words.reasonsShort[reason] ?? '') : '';
       element.style.setProperty('--fraction', kind === 'sorted' ? probability.toFixed(3) : '0');
     }
@@ -123,19 +136,32 @@ export class Tiles {
     element.draggable = true;
     element.addEventListener('dragstart', (event) => event.dataTransfer?.setData(ITEM_TYPE, String(item)));
     element.addEventListener('animationend', () => element.classList.remove('moved'));
+    const figure = document.createElement('span');
+    figure.className = 'figure';
+    element.append(this.#face(item, element), figure);
+    const tile = { element, figure };
+    this.#tiles.set(item, tile);
+    return tile;
+  }
+
+  #face(number: number, element: HTMLElement): HTMLElement {
+    const item = this.#items[number];
+    if (item && 'text' in item) {
+      element.classList.add('note');
+      const text = document.createElement('span');
+      text.className = 'text';
+      text.dir = 'auto';
+      text.textContent = excerpt(item.text, ON_TILE);
+      return text;
+    }
     const image = document.createElement('img');
     image.alt = '';
     image.draggable = false;
     image.decoding = 'async';
     image.loading = 'lazy';
-    const url = this.url(item);
+    const url = this.url(number);
     if (url) image.src = url;
-    const figure = document.createElement('span');
-    figure.className = 'figure';
-    element.append(image, figure);
-    const tile = { element, figure };
-    this.#tiles.set(item, tile);
-    return tile;
+    return image;
   }
 
   static readonly styles = css`
@@ -189,6 +215,74 @@ export class Tiles {
       width: calc(var(--fraction) * 100%);
       border-radius: 2px;
       background: var(--edge);
+    }
+    .tile.note,
+    .front .tile.note {
+      width: auto;
+      height: auto;
+      padding: 3px 9px;
+      background: var(--raised);
+      font-size: 0.86rem;
+      line-height: 1.4;
+    }
+    /* Of hundreds of lines only those in sight are laid out. */
+    .wide .tile.note {
+      content-visibility: auto;
+      contain-intrinsic-size: auto 27px;
+    }
+    .note .text {
+      display: -webkit-box;
+      -webkit-box-orient: vertical;
+      -webkit-line-clamp: 1;
+      overflow: hidden;
+      overflow-wrap: anywhere;
+    }
+    .front .tile.note {
+      display: grid;
+      grid-template-columns: minmax(0, 1fr) auto;
+      gap: 0 10px;
+      padding: 6px 10px 10px;
+      font-size: 0.98rem;
+    }
+    .wide .front .tile.note {
+      contain-intrinsic-size: auto 60px;
+    }
+    .front .note .text {
+      -webkit-line-clamp: 2;
+    }
+    .front .tile.note .figure {
+      height: auto;
+      padding: 0;
+      line-height: 1.7;
+    }
+    .front .tile.note::before {
+      inset-block-end: 2px;
+      inset-inline-start: 8px;
+      width: calc(var(--fraction) * (100% - 16px));
+    }
+    @media (pointer: coarse) {
+      .back .tile.note {
+        display: grid;
+        align-items: center;
+        min-height: 44px;
+      }
+      .wide .back .tile.note {
+        contain-intrinsic-size: auto 44px;
+      }
+      .back .note .text {
+        -webkit-line-clamp: 2;
+      }
+    }
+    /* The mark stands in the line: outside of it, it would be cut off with what is not shown. */
+    .tile.note[data-kind='answered']::after,
+    .tile.note[data-kind='aside']::after {
+      inset-inline-end: 6px;
+      inset-block: 0;
+      margin-block: auto;
+    }
+    .tile.note[data-kind='answered'] .text,
+    .tile.note[data-kind='aside'] .text {
+      padding-inline-end: 22px;
     }
     .tile[data-kind='answered']::after,
     .tile[data-kind='aside']::after {

@@ -34,7 +34,7 @@ function today(): string {
 
 /** How far the sorting can be relied on, as the page shows it, and what the person does about it. */
 export class Trust {
-  readonly #desk: Desk;
+  #desk: Desk;
   readonly #redraw: () => void;
   /** Tells that a statement was made. */
   readonly #stated: () => void;
@@ -125,6 +125,14 @@ export class Trust {
       }, LINE_AFTER);
     }
     return this.#known;
+  }
+
+  /** Is about another kit from now on. */
+  change(desk: Desk): void {
+    this.#desk = desk;
+    this.#asking = false;
+    this.#asked++;
+    this.forget();
   }
 
   /** The pile is gone. */

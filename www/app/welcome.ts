@@ -1,6 +1,8 @@
 import { css, html, LitElement, type TemplateResult } from 'lit';
+import type { Kind, Kit } from '../kit/client';
 import { tell } from './event';
 import { demoIndex, demoUrl } from './files';
+import './kits-panel';
 import { shared } from './styles';
 import { words } from './words';
 
@@ -10,21 +12,24 @@ const HEAP = 36;
 export class Welcome extends LitElement {
   static override properties = {
     ready: { type: Boolean },
-    loading: { type: Boolean },
+    loading: { attribute: false },
     hasCamera: { type: Boolean },
+    kits: { attribute: false },
     heap: { state: true },
   };
 
   declare ready: boolean;
-  declare loading: boolean;
+  /** The demo pile that is being fetched. */
+  declare loading: Kind | undefined;
   declare hasCamera: boolean;
+  declare kits: readonly Kit[];
   declare heap: string[];
 
   constructor() {
     super();
     this.ready = false;
-    this.loading = false;
     this.hasCamera = false;
+    this.kits = [];
     this.heap = [];
   }
 
@@ -49,17 +54,25 @@ export class Welcome extends LitElement {
         <h1>${words.promise.map((line) => html`<span>${line}</span> `)}</h1>
         <p class="job">${words.job}</p>
         <div class="row first">
-          <button class="bright big" ?disabled=${this.loading} @click=${() => tell(this, 'demo', {})}>
-            ${this.loading ? words.demoLoading : words.demo}
+          <button class="bright big" ?disabled=${this.loading !== undefined} @click=${() => tell(this, 'demo', {})}>
+            ${this.loading === 'photos' ? words.demoLoading : words.demo}
           </button>
-          <button class="big strong" @click=${() => tell(this, 'choose-files', {})}>${words.chooseFiles}</button>
+          <button class="big" ?disabled=${this.loading !== undefined} @click=${() => tell(this, 'demo-notes', {})}>
+            ${this.loading === 'notes' ? words.demoNotesLoading : words.demoNotes}
+          </button>
         </div>
         <div class="row">
+          <button class="strong" @click=${() => tell(this, 'choose-files', {})}>${words.chooseFiles}</button>
           <button @click=${() => tell(this, 'choose-folder', {})}>${words.chooseFolder}</button>
           ${this.hasCamera ? html`<button @click=${() => tell(this, 'camera', {})}>${words.camera}</button>` : null}
         </div>
+        <div class="row">
+          <button class="strong" @click=${() => tell(this, 'choose-notes', {})}>${words.chooseNotes}</button>
+          <button @click=${() => tell(this, 'write-notes', {})}>${words.writeNotes}</button>
+        </div>
         <p class="soft drop">${words.dropHint}</p>
         <slot></slot>
+        <ken-kit-list .kits=${this.kits}></ken-kit-list>
         <p class="private"><strong>${words.private}</strong> ${words.privateLong}</p>
       </div>
       <div class="heap" aria-hidden="true" @click=${() => tell(this, 'demo', {})}>

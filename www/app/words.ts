@@ -1,4 +1,5 @@
 /** All that the page says, in one place. */
+import type { Kind } from '../kit/client';
 
 const whole = new Intl.NumberFormat('en');
 const share = new Intl.NumberFormat('en', { style: 'percent', maximumFractionDigits: 0 });
@@ -8,6 +9,22 @@ export const percent = (fraction: number): string => share.format(fraction);
 
 function photos(n: number): string {
   return n === 1 ? '1 photo' : `${count(n)} photos`;
+}
+
+function notes(n: number): string {
+  return n === 1 ? '1 note' : `${count(n)} notes`;
+}
+
+function rows(n: number): string {
+  return n === 1 ? '1 row' : `${count(n)} rows`;
+}
+
+function items(n: number, kind: Kind): string {
+  return kind === 'notes' ? notes(n) : photos(n);
+}
+
+function megabytes(bytes: number): string {
+  return (bytes / 1e6).toFixed(1);
 }
 
 function answers(n: number): string {
@@ -51,14 +68,18 @@ export const words = {
 
   // The empty page
   promise: ['Show a few.', 'The rest sorts itself.'],
-  job: 'For a pile of photos and categories that exist only in your head. Say for a handful where they belong. After every answer the whole pile sorts itself anew, and shows you where it is unsure.',
+  job: 'For a pile of photos or notes and categories that exist only in your head. Say for a handful where they belong. After every answer the whole pile sorts itself anew, and shows you where it is unsure.',
   demo: 'Try the demo pile',
   demoLoading: 'Fetching the demo pile …',
+  demoNotes: 'Try the demo notes',
+  demoNotesLoading: 'Fetching the demo notes …',
   demoMissing: 'The demo pile can’t be loaded. It needs the network once; then it works without.',
   chooseFiles: 'Choose photos',
   chooseFolder: 'Choose a folder',
+  chooseNotes: 'Choose notes',
+  writeNotes: 'Paste notes',
   camera: 'Take pictures',
-  dropHint: 'Or drop photos or a folder anywhere on this page, or paste.',
+  dropHint: 'Or drop photos, a folder or files of notes (.txt, .csv, .tsv, .jsonl) anywhere on this page, or paste.',
   private: 'Nothing leaves this device.',
   privateLong: 'Reading, sorting and keeping all happen in this browser. Once loaded, the page works without a network.',
   dropNow: 'Let go to add to the pile',
@@ -105,6 +126,7 @@ export const words = {
   moreLong: (n: number, tray: string) => `Show ${count(n)} more in ${tray}`,
   fewer: 'Show fewer',
   tile: (name: string, tray: string, how: string) => `${name}, ${tray}, ${how}`,
+  tileInHand: (text: string, how: string) => `${text}\n(${how})`,
   howAnswered: 'your answer',
   howSure: (probability: number, others: readonly string[]) =>
     `${percent(probability)} sure${others.length > 0 ? `; ${others.join(', ')} plausible too` : ''}`,
@@ -119,12 +141,12 @@ export const words = {
   unsureCount: (n: number) => `${count(n)} unsure`,
   unsorted: (n: number) => `${count(n)} not sorted`,
   asideCount: (n: number) => `${count(n)} set aside`,
-  bandTitle: (items: number) => photos(items),
+  bandTitle: items,
 
   // Top
   undo: 'Undo',
   redo: 'Redo',
-  add: ['Add', ' photos'],
+  add: { photos: ['Add', ' photos'], notes: ['Add', ' notes'] },
   result: ['Take result', 'Result'],
   help: 'Help',
 
@@ -143,23 +165,30 @@ export const words = {
   resultTaken: (file: string) => `Saved as ${file}.`,
 
   // Reading
-  reading: (done: number, total: number, seconds: number | undefined) =>
-    `Reading photos: ${count(done)} of ${count(total)}${seconds === undefined ? '' : `, ${timeLeft(seconds)}`}`,
+  reading: (kind: Kind, done: number, total: number, seconds: number | undefined) =>
+    `Reading ${kind}: ${count(done)} of ${count(total)}${seconds === undefined ? '' : `, ${timeLeft(seconds)}`}`,
   news: 'News',
-  readingShort: 'Reading photos',
+  readingShort: (kind: Kind) => `Reading ${kind}`,
+  fetchingShort: 'Fetching the reader for notes',
+  fetching: (done: number, total: number) =>
+    `Fetching the reader for notes, once: ${megabytes(done)} of ${megabytes(total)} MB. It stays on this device.`,
   stop: 'Stop',
   stopped: (done: number, total: number) => `Stopped after ${count(done)} of ${count(total)}.`,
-  stopping: 'Stopping after the photo being read …',
+  stopping: (kind: Kind) => `Stopping after the ${kind === 'notes' ? 'note' : 'photo'} being read …`,
   goOn: 'Read the rest',
-  readAll: (added: number) => (added === 0 ? 'No new photo.' : `${photos(added)} added.`),
-  refused: (n: number) => (n === 1 ? '1 file could not be read' : `${count(n)} files could not be read`),
-  duplicates: (names: { name: string; of: string }[]) => {
+  readAll: (kind: Kind, added: number) => (added === 0 ? `No new ${kind === 'notes' ? 'note' : 'photo'}.` : `${items(added, kind)} added.`),
+  refused: (kind: Kind, n: number) =>
+    kind === 'notes' ? `${notes(n)} could not be read` : n === 1 ? '1 file could not be read' : `${count(n)} files could not be read`,
+  duplicates: (kind: Kind, names: { name: string; of: string }[]) => {
     const shown = names.slice(0, 3).map(({ name, of }) => (name === of ? name : `${name} (same as ${of})`));
     const rest = names.length > 3 ? ` and ${count(names.length - 3)} more` : '';
+    if (kind === 'notes') {
+      return `${notes(names.length)} with the text of another: one answer is for both, and all their rows are handed back: ${shown.join(', ')}${rest}.`;
+    }
     return `${names.length === 1 ? '1 file was' : `${count(names.length)} files were`} in the pile already and added only once: ${shown.join(', ')}${rest}.`;
   },
   emptyFolder: (name: string) => `${name}: this folder holds no files. Choose one with photos in it.`,
-  nothingDropped: 'Nothing in there can be added. Drop photos or a folder of photos.',
+  nothingDropped: 'Nothing in there can be added. Drop photos, a folder of photos, or files of notes.',
   dismiss: 'Dismiss',
 
   // Keeping
@@ -189,8 +218,8 @@ export const words = {
   // Start over
   startOver: 'Start over',
   startOverTitle: 'Start over?',
-  startOverLoss: (items: number, of: number, given: number) =>
-    `This deletes ${photos(items)}, ${trays(of)} and ${answers(given)} from this page. It can’t be undone. The files on your disk stay as they are.`,
+  startOverLoss: (kind: Kind, n: number, of: number, given: number) =>
+    `This deletes ${items(n, kind)}, ${trays(of)} and ${answers(given)} from this page. It can’t be undone. The files on your disk stay as they are.`,
   startOverTeach: 'Another pile of this kind to come? What your answers taught can go with it, but only before this pile is deleted.',
   startOverDo: 'Delete the pile',
   cancel: 'Keep it',
@@ -220,9 +249,9 @@ export const words = {
   learned: (given: number, of: number) => `Learned from ${answers(given)} in ${trays(of)}. The next pile starts from it.`,
   learningStopped: 'Stopped. Nothing was learned, and nothing was changed.',
   nextTitle: 'The next pile starts from',
-  nextOf: (encoder: string) => `The next pile starts from (${encoder})`,
+  nextOf: (kind: Kind) => `The next pile of ${kind} starts from`,
   nextNothing: 'Nothing yet: no pile has taught, and no starter was opened.',
-  nextStartsFrom: (file: string | undefined, of: number) => `The next pile starts from what past piles taught${file ? ` (${file})` : ''}: ${trays(of)}.`,
+  nextStartsFrom: (kind: Kind, file: string | undefined, of: number) => `The next pile of ${kind} starts from what past piles taught${file ? ` (${file})` : ''}: ${trays(of)}.`,
   ownStarter: 'Your past piles',
   nothing: 'Nothing',
   starterFacts: (file: string | undefined, of: number, items: number, from: number, at: number) =>
@@ -245,9 +274,9 @@ export const words = {
     'other-encoder': (file) => `${file} was learned from other material than this page reads, so it can teach nothing here.`,
   } as Record<string, (file: string) => string>,
   keptTitle: 'Kept on this device',
-  kept: 'Of a past pile are kept: how the numbers that its photos became differed within trays and between them, and these numbers themselves for up to 12 photos a tray, without photo or name. Whoever has such numbers can tell much of what a photo shows. So they stay on this device, and a starter file has none of them.',
+  kept: 'Of a past pile are kept: how the numbers that its photos or notes became differed within trays and between them, and these numbers themselves for up to 12 items a tray, without photo, text or name. Whoever has such numbers can tell much of what a photo shows or a note says. So they stay on this device, and a starter file has none of them.',
   keptNothing: 'Nothing is kept yet.',
-  pastPile: (at: number, of: number, given: number) => `${date(at)}: ${trays(of)}, ${answers(given)}`,
+  pastPile: (kind: Kind, at: number, of: number, given: number) => `${date(at)}: ${trays(of)}, ${answers(given)} about ${kind}`,
   forget: 'Forget',
   forgetPile: (at: number) => `Forget the pile of ${date(at)}`,
   forgetAll: 'Forget all',
@@ -393,6 +422,72 @@ export const words = {
     judged: { right: 'right', wrong: 'taken out', untold: 'can’t tell', belongs: 'corrected' },
   },
 
+  // Notes
+  noteAt: (file: string, line: number) => `${file}, line ${count(line)}`,
+  noteInHand: (name: string) => `Note: ${name}`,
+  inParts: (parts: number) => `Long: read in ${count(parts)} parts and averaged.`,
+  longNotes: (n: number) =>
+    `${n === 1 ? '1 note is' : `${count(n)} notes are`} longer than about 180 words: read in parts and averaged, so what spans two parts is not seen as a whole.`,
+  timesOver: (n: number) => `This text stands in ${rows(n)}.`,
+  rowOpening: 'Opening the file …',
+  addNotesTitle: 'Which notes?',
+  writeTitle: 'Paste or write notes',
+  writeLabel: 'Notes, one a line',
+  writeFound: (n: number) => (n === 0 ? 'Every line becomes a note.' : `${notes(n)}: every line becomes one.`),
+  pasted: (n: number) => `pasted-${n}.txt`,
+  addThem: (n: number) => `Add ${notes(n)}`,
+  leaveOut: 'Leave out',
+  columnQuestion: 'Which column holds the notes?',
+  columnHint: 'All other columns are kept and come back with the result.',
+  columnFacts: (n: number, of: number) => (n === of ? rows(of) : `${rows(of)}, ${count(of - n)} of them without a note: these come back as they are.`),
+  preview: 'The first notes',
+  linesQuestion: 'What is one note?',
+  everyLine: (n: number) => `Every line: ${notes(n)}`,
+  everyFile: (n: number) => (n === 1 ? 'The whole file: 1 note' : `Every file: ${notes(n)}`),
+  someFiles: (n: number) => `${count(n)} files of text`,
+  manyFiles: (n: number) => `${count(n)} files.jsonl`,
+  guessed: 'Read as Windows-1252, since it is not UTF-8. If letters look wrong below, save the file as UTF-8 and choose it again.',
+  namelessColumn: (at: number) => `Column ${count(at)}`,
+  troubles: (n: number) => `${rows(n)} can’t be read and will be left out`,
+  emptyColumn: 'There is nothing in this column.',
+  leftOut: (file: string, troubles: readonly string[]) => {
+    const rest = troubles.length > 3 ? ` And ${count(troubles.length - 3)} more.` : '';
+    return `${file}: ${rows(troubles.length)} left out. ${troubles.slice(0, 3).map((trouble) => `L${trouble.slice(1)}.`).join(' ')}${rest}`;
+  },
+  notesAgain: (file: string) => `${file}: all of its notes are in the pile already.`,
+  fileProblem: (file: string, problem: string) => `${file}: ${problem}`,
+
+  // Kits
+  kits: 'Kits',
+  kitsTitle: 'Your kits',
+  kitsWhat: 'A kit is a pile with its trays and answers. It holds either photos or notes, since the two can’t be compared. All kits stay on this device.',
+  kitFacts: (kind: Kind, n: number, of: number, given: number) => `${items(n, kind)}, ${trays(of)}, ${answers(given)}`,
+  kitNow: 'open now',
+  openKit: 'Open',
+  openKitLong: (name: string) => `Open ${name}`,
+  renameKit: (name: string) => `Rename ${name}`,
+  kitName: 'Name of the kit',
+  saveName: 'Save name',
+  nameTaken: (name: string) => `Another kit is called ${name}. Choose another name.`,
+  nameEmpty: 'A kit needs a name.',
+  deleteKit: (name: string) => `Delete ${name}`,
+  deleteKitSure: 'Delete for good?',
+  kitDeleted: (name: string) => `${name} is deleted.`,
+  newKit: 'Start another kit',
+  newKitHint: 'This one stays as it is.',
+  noKits: 'No kit yet: add photos or notes.',
+  kitBusy: 'Something is being read. Wait for it, or stop it: then other kits can be opened.',
+  kitRest: 'Reading was stopped. What was not read yet stays out when you open another kit.',
+  kitsNotKept: 'This browser keeps nothing for this page, so there is only the kit on the bench.',
+  newKitName: { photos: 'Photos', notes: 'Notes' },
+  demoKitName: { photos: 'Demo photos', notes: 'Demo notes' },
+  otherTitle: (kind: Kind) => (kind === 'notes' ? 'Notes into a kit of photos?' : 'Photos into a kit of notes?'),
+  otherWhat: (kind: Kind, files: number, kit: string) =>
+    `“${kit}” holds ${kind === 'notes' ? 'photos' : 'notes'}, and the two can’t be compared. Where should the ${files === 1 ? '1 file' : `${count(files)} files`} go?`,
+  otherNew: 'Into another kit',
+  otherInto: (name: string) => `Into “${name}”`,
+  otherLeave: 'Nowhere: leave out',
+
   // Camera
   cameraTitle: 'Take pictures into the pile',
   shoot: 'Take picture',
@@ -407,7 +502,7 @@ export const words = {
   // Help
   helpTitle: 'How it works',
   helpSteps: [
-    'Add photos. They are read on this device.',
+    'Add photos or notes. They are read on this device.',
     'Say for the item in hand which tray it belongs in: press its number, or name a new tray.',
     'The pile sorts itself after every answer. Sure ones stand at the back of a shelf, unsure ones come forward to the edge.',
     'See one in the wrong place? Click it and answer, or drag it onto the right shelf.',
@@ -430,12 +525,13 @@ export const words = {
     ['Q', 'back to the question'],
     ['P', 'what past piles taught'],
     ['H', 'how sure: doubts, spot check'],
+    ['K', 'your kits'],
     ['?', 'this panel'],
   ] as const,
   singleKeys: 'Single keys act (switch off if you use speech input)',
   privacyTitle: 'Privacy',
   privacy:
-    'Photos, trays and answers stay in this browser’s storage on this device until you start over or clear the data of this site. What past piles taught stays until you forget it. The page sends nothing: its own rules forbid it to talk to any other server.',
+    'Photos, notes, trays and answers stay in this browser’s storage on this device until you start over, delete the kit or clear the data of this site. What past piles taught stays until you forget it. The page sends nothing: its own rules forbid it to talk to any other server.',
   limitsTitle: 'Limits',
   limits: 'The figures say how sure the sorter is from the few examples it has seen. They are not a promise; the sentence of a spot check is one. Look along the edges before you rely on a shelf.',
   caution:
