@@ -94,7 +94,7 @@ test('a pile teaches the next one, with the network cut', async ({ page, context
   await expect(page.getByText(/Learned from \d+ answers in 8 trays/).first()).toBeVisible();
 
   await bench.startOver();
-  await expect(bench.line).toContainText('The next pile starts from what past piles taught: 8 trays.');
+  await expect(bench.line).toContainText('The next pile of photos starts from what past piles taught: 8 trays.');
   await bench.readAndAnswer(pictures(trays, 3, 5), 10);
   await expect(bench.line).toContainText('Starts from what past piles taught: 8 trays.');
 
