@@ -154,12 +154,14 @@ export class SpotCheckPanel extends Panel {
         ${url ? html`<img class="shown" src=${url} alt=${of?.name ?? ''} />` : html`<p class="shown text">${of && 'text' in of ? String(of.text) : of?.name}</p>`}
       </div>
       <div class="ask">
-        <h2 tabindex="-1" autofocus>${words.trust.isIt(name)}</h2>
-        <div class="like" aria-hidden="true">
-          ${this.#examples(tray).map((one) => {
-            const small = this.pictureOf(one);
-            return small ? html`<img src=${small} alt="" />` : nothing;
-          })}
+        <div class="head">
+          <h2 tabindex="-1" autofocus>${words.trust.isIt(name)}</h2>
+          <div class="like" aria-hidden="true">
+            ${this.#examples(tray).map((one) => {
+              const small = this.pictureOf(one);
+              return small ? html`<img src=${small} alt="" />` : nothing;
+            })}
+          </div>
         </div>
         <button class="bright right" @click=${() => this.#say('right')}>${words.trust.right} <kbd class="hint">Enter</kbd></button>
         <p class="soft" id="elsewhere">${words.trust.elsewhere}</p>
@@ -320,18 +322,34 @@ export class SpotCheckPanel extends Panel {
       @media (max-width: 760px) {
         .work {
           grid-template-columns: minmax(0, 1fr);
-          grid-template-rows: auto auto auto minmax(9rem, 1fr) auto;
+          grid-template-rows: auto auto auto minmax(7rem, 1fr) auto;
         }
         .ask {
           grid-row: 5;
-          max-height: 52dvh;
+          gap: 0.5rem;
+          max-height: 60dvh;
+        }
+        .end {
+          max-height: none;
+        }
+        .head {
+          display: flex;
+          flex-wrap: wrap;
+          align-items: center;
+          gap: 0.3rem 0.8rem;
+        }
+        h2 {
+          font-size: 1.2rem;
+        }
+        .trays button {
+          padding-inline: 0.5rem;
         }
         .like img {
           width: 44px;
           height: 44px;
         }
         .trays {
-          grid-template-columns: repeat(auto-fill, minmax(min(8rem, 100%), 1fr));
+          grid-template-columns: repeat(auto-fill, minmax(min(6.2rem, 100%), 1fr));
         }
       }
     `,

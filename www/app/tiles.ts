@@ -18,6 +18,8 @@ function excerpt(text: string, characters: number): string {
 interface Tile {
   element: HTMLElement;
   figure: HTMLElement;
+  /** The other plausible trays. */
+  others: HTMLElement;
 }
 
 /**
@@ -98,14 +100,15 @@ export class Tiles {
             : sorted
               ? 'sorted'
               : 'unsorted';
+    const others = kind === 'sorted' ? this.#others(item) : [];
     const how = {
       answered: words.howAnswered,
       aside: words.howAside,
       unlike: words.reasons[reason] ?? '',
-      sorted: words.howSure(probability, this.#others(item)),
+      sorted: words.howSure(probability, others),
       unsorted: words.howUnsorted,
     }[kind];
-    const { element, figure } = tile;
+    const { element, figure, others: or } = tile;
     element.dataset['kind'] = kind;
     element.classList.toggle('hand', item === this.#hand);
     const of = this.#items[item];
@@ -115,6 +118,7 @@ export class Tiles {
       element.ariaLabel = label;
       element.title = note === undefined ? label : words.tileInHand(note.length > IN_HAND ? `${note.slice(0, IN_HAND)} …` : note, how);
       figure.textContent = kind === 'sorted' ? percent(probability) : kind === 'unlike' ? (words.reasonsShort[reason] ?? '') : '';
+      or.textContent = others.length > 0 ? words.orElse(others) : '';
       element.style.setProperty('--fraction', kind === 'sorted' ? probability.toFixed(3) : '0');
     }
     return tile;
@@ -138,8 +142,10 @@ export class Tiles {
     element.addEventListener('animationend', () => element.classList.remove('moved'));
     const figure = document.createElement('span');
     figure.className = 'figure';
-    element.append(this.#face(item, element), figure);
-    const tile = { element, figure };
+    const others = document.createElement('span');
+    others.className = 'others';
+    element.append(this.#face(item, element), figure, others);
+    const tile = { element, figure, others };
     this.#tiles.set(item, tile);
     return tile;
   }
@@ -187,10 +193,23 @@ export class Tiles {
       height: auto;
       aspect-ratio: 1;
     }
-    .tile .figure {
+    .tile .figure,
+    .tile .others {
       display: none;
     }
+    .front .tile .others:not(:empty) {
+      display: block;
+      margin-top: -3px;
+      overflow: hidden;
+      text-overflow: ellipsis;
+      white-space: nowrap;
+      font-size: 0.74rem;
+      line-height: 1.2;
+      text-align: center;
+      color: var(--ink-soft);
+    }
     .front .tile .figure {
+      position: relative;
       display: block;
       height: 24px;
       padding-top: 5px;
@@ -205,12 +224,11 @@ export class Tiles {
       height: auto;
       background: transparent;
     }
-    .front .tile::before {
+    .front .tile .figure::before {
       content: '';
       position: absolute;
-      z-index: 1;
       inset-inline-start: 0;
-      inset-block-end: 18px;
+      inset-block-start: 2px;
       height: 4px;
       width: calc(var(--fraction) * 100%);
       border-radius: 2px;
@@ -255,10 +273,22 @@ export class Tiles {
       padding: 0;
       line-height: 1.7;
     }
+    .front .tile.note .figure::before {
+      display: none;
+    }
     .front .tile.note::before {
+      content: '';
+      position: absolute;
       inset-block-end: 2px;
       inset-inline-start: 8px;
+      height: 4px;
       width: calc(var(--fraction) * (100% - 16px));
+      border-radius: 2px;
+      background: var(--edge);
+    }
+    .front .tile.note .others {
+      grid-column: 1 / -1;
+      text-align: start;
     }
     @media (pointer: coarse) {
       .back .tile.note {

@@ -3,7 +3,7 @@ import { repeat } from 'lit/directives/repeat.js';
 import { type Assessment, type Doubt, type Item, type Share, Status, type Terms } from '../kit/client';
 import { tell } from './event';
 import { Panel } from './panels';
-import { calibrationPlot, curvePlot, plotStyles, shareBar } from './trust-plots';
+import { boundBar, calibrationPlot, curvePlot, plotStyles, shareBar } from './trust-plots';
 import { trustStyles } from './trust-styles';
 import type { TrustTab, TrustView } from './trust';
 import { percent, words } from './words';
@@ -384,6 +384,8 @@ export class TrustPanel extends Panel {
     return html`<section aria-labelledby="statement">
         <h3 id="statement">${words.trust.statementTitle}</h3>
         <blockquote class=${check.aboutNow ? '' : 'earlier'}>${statement.sentence}</blockquote>
+        ${boundBar(statement)}
+        <p class="soft">${words.trust.bound(statement.tolerance)}</p>
         <p><strong>${check.aboutNow ? words.trust.aboutNow : words.trust.aboutEarlier}</strong></p>
         <p>${statement.holds ? words.trust.holds(statement.tolerance) : words.trust.holdsNot(statement.tolerance)}</p>
         <div class="row">

@@ -1,5 +1,5 @@
 import { css, html, nothing, svg, type TemplateResult } from 'lit';
-import type { Assessment, Projection, Share } from '../kit/client';
+import type { Assessment, Projection, Share, Statement } from '../kit/client';
 import { percent, words } from './words';
 
 /*
@@ -18,6 +18,16 @@ export function shareBar({ value, wilson }: Share): TemplateResult {
       ? svg`<rect class="bar" y="4" width=${100 * value} height="12" />
           <path class="whisker" d="M ${100 * wilson.low} 10 H ${100 * wilson.high} M ${100 * wilson.low} 4 v 12 M ${100 * wilson.high} 4 v 12" />`
       : nothing}
+  </svg>`;
+}
+
+/** What a spot check leaves possible, beside what is tolerated: half as much again as the larger of the two is the whole width. */
+export function boundBar({ share, tolerance }: Statement): TemplateResult {
+  const whole = 1.5 * Math.max(share, tolerance);
+  return html`<svg class="share" viewBox="0 0 100 20" preserveAspectRatio="none" aria-hidden="true">
+    <rect class="track" width="100" height="20" />
+    <rect class="bar" y="4" width=${(100 * share) / whole} height="12" />
+    <path class="aim" d="M ${(100 * tolerance) / whole} 0 V 20" />
   </svg>`;
 }
 
@@ -128,6 +138,7 @@ export const plotStyles = css`
     stroke: var(--edge);
   }
   .aim {
+    vector-effect: non-scaling-stroke;
     stroke: var(--ink-soft);
     stroke-width: 2px;
     stroke-dasharray: 7 6;

@@ -121,6 +121,11 @@ export const trustStyles = css`
     text-align: start;
     width: auto;
   }
+  .numbers th[scope='row'] {
+    min-width: 5rem;
+    max-width: 12rem;
+    overflow-wrap: break-word;
+  }
   summary {
     display: inline-flex;
     align-items: center;
@@ -277,14 +282,37 @@ export const trustStyles = css`
     border-inline-start-style: dashed;
   }
   @media (max-width: 620px) {
+    dialog {
+      max-width: calc(100vw - 1rem);
+      max-height: calc(100dvh - 1rem);
+      margin-top: 0.5rem;
+    }
     .inside {
-      padding: 1rem 0.8rem;
+      padding: 0.8rem;
+    }
+    .tabs {
+      gap: 4px;
+    }
+    .tabs button {
+      flex: 1 1 auto;
+      padding-inline: 0.5rem;
+      font-size: 0.94rem;
+    }
+    .pair {
+      flex-direction: column;
+      align-items: start;
+    }
+    .arrow {
+      rotate: 90deg;
     }
     tbody:not(.numbers tbody) td {
       grid-template-columns: minmax(0, 1fr);
     }
     th[scope='row'] {
-      width: 6.5rem;
+      width: 7rem;
+      padding-inline-end: 0.6rem;
+      font-size: 0.94rem;
+      hyphens: auto;
     }
     .doubts li {
       grid-template-columns: minmax(0, 1fr) minmax(0, 1fr);

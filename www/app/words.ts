@@ -130,6 +130,7 @@ export const words = {
   howAnswered: 'your answer',
   howSure: (probability: number, others: readonly string[]) =>
     `${percent(probability)} sure${others.length > 0 ? `; ${others.join(', ')} plausible too` : ''}`,
+  orElse: (trays: readonly string[]) => `or ${trays.join(', ')}`,
   howUnsorted: 'not sorted',
   howAside: 'set aside by you',
   trayMenu: (tray: string) => `Rename, merge or remove ${tray}`,
@@ -398,6 +399,7 @@ export const words = {
     stated: 'Stated. What you looked at counts as answered.',
     dropped: 'The spot check is given up. What you looked at stays answered.',
     statementTitle: 'What it shows',
+    bound: (tolerance: number) => `The bar: what may be wrong at most. The dashed line: the ${percent(tolerance)} you tolerate.`,
     statementHow: 'True with the stated confidence, whatever the pile is, provided that you looked at every one and that the sort is used as it was drawn from. Items that you answered or that are set aside are no part of it.',
     statementTrays: 'Tray by tray',
     sortedColumn: 'sorted',
