@@ -164,6 +164,7 @@ export class Trust {
         // Nothing that the sorter sorted: nothing to check.
         client.spotCheckSize(this.#plan).catch(() => undefined),
       ]);
+      if (asked !== this.#asked) return;
       this.#known = known;
       this.#size = size;
     } catch (error) {
