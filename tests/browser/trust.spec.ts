@@ -508,3 +508,50 @@ for (const colorScheme of ['light', 'dark'] as const) {
     });
   }
 }
+
+test('notes are shown by their text: in doubts, in what gets confused and in a spot check', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  await bench.open();
+  const kinds: [string, RegExp][] = [['Pumps', /pump/], ['Doors', /door/], ['Lamps', /lamp/i]];
+  const sentences = ['The pump on deck N leaks water again', 'Cabin door N does not lock, its hinge is loose', 'Lamp N in the corridor is out, the bulb is blown'];
+  const lines = Array.from({ length: 24 }, (_, k) => `${sentences[k % 3]?.replace('N', String(k + 1))}${k > 11 ? ', reported twice by the crew' : ''}`);
+  const right = (text: string) => kinds.find(([, words]) => words.test(text))?.[0] ?? '';
+  await page.getByRole('button', { name: 'Paste notes' }).click();
+  await page.getByLabel('Notes, one a line').fill(lines.join('\n'));
+  await page.getByRole('button', { name: 'Add 24 notes' }).click();
+  await expect(page.getByRole('status').filter({ hasText: '24 notes added' })).toHaveCount(1, { timeout: 150_000 });
+
+  const shown = page.locator('ken-question .mat');
+  const inHand = async () => lines.find((line) => said.includes(line)) ?? '';
+  let said = '';
+  let planted = '';
+  for (let answers = 0; answers < 12; answers++) {
+    said = (await shown.textContent()) ?? '';
+    const text = await inHand();
+    const trays = await bench.trays();
+    const lie = answers === 8 ? trays.find((tray) => tray !== right(text)) : undefined;
+    if (lie) planted = text;
+    const tray = lie ?? right(text);
+    if (trays.includes(tray)) {
+      await page.keyboard.press(String(trays.indexOf(tray) + 1));
+    } else {
+      await page.keyboard.press('t');
+      await page.keyboard.type(tray);
+      await page.keyboard.press('Enter');
+    }
+    await expect(shown).not.toContainText(text);
+  }
+  await open(page);
+  await expect(sheet(page).locator('.pairs .tile').filter({ hasText: planted })).toHaveCount(1);
+  await clean(page, 'how sure, of notes');
+  await page.getByRole('tab', { name: /^Doubts/ }).click();
+  await expect(sheet(page).locator('.doubted').first()).toContainText(planted);
+  await clean(page, 'doubts about notes');
+  await page.getByRole('tab', { name: /^Spot check/ }).click();
+  await page.getByRole('button', { name: /^Start: look at/ }).click();
+  const check = page.locator('ken-spot-check');
+  said = (await check.locator('.shown').textContent()) ?? '';
+  expect(await inHand()).not.toBe('');
+  await expect(check.locator('.line').first()).toBeVisible();
+  await clean(page, 'looking at notes');
+});

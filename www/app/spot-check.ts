@@ -151,7 +151,7 @@ export class SpotCheckPanel extends Panel {
     const url = this.original?.item === item ? this.original.url : this.pictureOf(item);
     const name = this.#name(tray);
     return html`<div class="mat">
-        ${url ? html`<img class="shown" src=${url} alt=${of?.name ?? ''} />` : html`<p class="shown text">${of && 'text' in of ? String(of.text) : of?.name}</p>`}
+        ${url ? html`<img class="shown" src=${url} alt=${of?.name ?? ''} />` : html`<p class="shown text" dir="auto">${of && 'text' in of ? of.text : of?.name}</p>`}
       </div>
       <div class="ask">
         <div class="head">
@@ -159,7 +159,9 @@ export class SpotCheckPanel extends Panel {
           <div class="like" aria-hidden="true">
             ${this.#examples(tray).map((one) => {
               const small = this.pictureOf(one);
-              return small ? html`<img src=${small} alt="" />` : nothing;
+              if (small) return html`<img src=${small} alt="" />`;
+              const like = this.items[one];
+              return like && 'text' in like ? html`<span class="line" dir="auto">${like.text}</span>` : nothing;
             })}
           </div>
         </div>
@@ -259,6 +261,8 @@ export class SpotCheckPanel extends Panel {
         overflow-wrap: anywhere;
         color: var(--ink);
         background: var(--surface);
+        font-size: 1.15rem;
+        user-select: text;
       }
       .ask {
         grid-row: 4;
@@ -285,6 +289,18 @@ export class SpotCheckPanel extends Panel {
       .like {
         display: flex;
         gap: 5px;
+      }
+      .like:has(.line) {
+        flex-direction: column;
+        font-size: 0.88rem;
+        color: var(--ink-soft);
+      }
+      .line {
+        display: -webkit-box;
+        -webkit-box-orient: vertical;
+        -webkit-line-clamp: 2;
+        overflow: hidden;
+        overflow-wrap: anywhere;
       }
       .like img {
         width: 64px;

@@ -18,6 +18,8 @@ const ALLOWED = [0, 1, 2, 3, 5];
 /** Pictures beside each other for a tray. */
 const EXAMPLES = 3;
 const CONFUSED = 6;
+/** Characters of a note that name it. */
+const NAMED = 80;
 
 /** How far the sorting can be relied on: in pictures first, with the same in words. */
 export class TrustPanel extends Panel {
@@ -87,18 +89,24 @@ export class TrustPanel extends Panel {
     return this.view.snapshot.trays.find((one) => one.tray === tray)?.name ?? '';
   }
 
+  /** What an item is called: a note by how it begins. */
+  #itemName(item: number): string {
+    const of = this.items[item];
+    if (!of) return '';
+    return 'text' in of && of.text.length > NAMED ? `${of.text.slice(0, NAMED).trimEnd()} …` : 'text' in of ? of.text : of.name;
+  }
+
   /** A small picture of an item, or its text. */
   #picture(item: number): TemplateResult {
     const of = this.items[item];
     const url = this.pictureOf(item);
     if (url) return html`<img src=${url} alt=${of?.name ?? ''} loading="lazy" decoding="async" />`;
-    const text = of && 'text' in of ? String(of.text) : (of?.name ?? '');
-    return html`<span class="text">${text}</span>`;
+    return html`<span class="text" dir="auto">${of && 'text' in of ? of.text : of?.name}</span>`;
   }
 
   /** The same as a button that takes the item in hand. */
   #taking(item: number): TemplateResult {
-    const name = this.items[item]?.name ?? '';
+    const name = this.#itemName(item);
     return html`<button class="tile" aria-label=${words.trust.take(name)} title=${name} @click=${() => tell(this, 'take-out', { item })}>
       ${this.#picture(item)}
     </button>`;
@@ -318,7 +326,7 @@ export class TrustPanel extends Panel {
   }
 
   #doubt({ item, tray, rather, why, other }: Doubt, place: number): TemplateResult {
-    const name = this.items[item]?.name ?? '';
+    const name = this.#itemName(item);
     const shown = this.#examples(tray, [item]);
     const likes = other === undefined ? this.#examples(rather, [item]) : [other];
     const settle = (to: number) => this.#settle(item, to, place, to === tray);

@@ -181,10 +181,12 @@ export const trustStyles = css`
     object-fit: cover;
   }
   .text {
-    display: block;
-    width: 11rem;
+    display: -webkit-box;
+    -webkit-box-orient: vertical;
+    -webkit-line-clamp: 4;
+    width: 12rem;
+    max-width: 100%;
     height: auto;
-    max-height: 5.2em;
     padding: 4px 6px;
     overflow: hidden;
     font-size: 0.8rem;
@@ -251,6 +253,11 @@ export const trustStyles = css`
   .doubted img {
     width: 132px;
     height: 132px;
+  }
+  .doubted .text {
+    width: 15rem;
+    font-size: 0.94rem;
+    -webkit-line-clamp: 9;
   }
   .why {
     grid-column: 2 / -1;
@@ -324,6 +331,9 @@ export const trustStyles = css`
       width: 100%;
       height: auto;
       aspect-ratio: 1;
+    }
+    .doubted .text {
+      width: 100%;
     }
     .why {
       grid-column: 2;
