@@ -19,6 +19,8 @@ const NOTE_BACK_ROWS = 4;
 const NOTE_FRONT_ROWS = 3;
 const NOTE_PILE_ROWS = 12;
 const NOTE_WIDTH = 290;
+/** Items that an unfolded shelf shows more with every frame: hundreds at once would make the page stand still. */
+const UNFOLD = 120;
 /** In pixels, as in the style sheet below. */
 const GAP = 5;
 const SHELF_GAP = 20;
@@ -43,6 +45,7 @@ export class Shelves extends LitElement {
     hand: { attribute: false },
     movedItems: { attribute: false },
     open: { state: true },
+    unfolded: { state: true },
     width: { state: true },
     over: { state: true },
   };
@@ -53,6 +56,8 @@ export class Shelves extends LitElement {
   declare hand: number | undefined;
   declare movedItems: ReadonlySet<number>;
   declare open: number | undefined;
+  /** How many of a part the open shelf shows so far. */
+  declare unfolded: number;
   declare width: number;
   declare over: number | undefined;
 
@@ -67,6 +72,7 @@ export class Shelves extends LitElement {
     super();
     this.items = [];
     this.movedItems = new Set();
+    this.unfolded = 0;
     this.width = 0;
   }
 
@@ -184,7 +190,7 @@ export class Shelves extends LitElement {
   }
 
   #limits(shelf: Drawn): { back: number; front: number } {
-    if (this.open === shelf.tray) return { back: Infinity, front: Infinity };
+    if (this.open === shelf.tray) return { back: this.unfolded, front: this.unfolded };
     if (this.#notes) return this.#noteLimits(shelf);
     const small = this.#style('--tile');
     const large = this.#style('--tile-front');
@@ -196,14 +202,27 @@ export class Shelves extends LitElement {
     return { back: back * BACK_ROWS, front: front * (shelf.back.length <= back ? 2 * FRONT_ROWS : FRONT_ROWS) };
   }
 
+  #unfold(tray: number | undefined): void {
+    const shown = this.renderRoot.querySelectorAll(`[data-tray='${tray}'] [data-item]`).length;
+    this.open = tray;
+    this.unfolded = shown + UNFOLD;
+  }
+
+  /** The rest of an unfolded shelf follows frame by frame. */
+  #unfoldOn(): void {
+    const shelf = this.#drawn().find(({ tray }) => tray === this.open);
+    if (!shelf || this.unfolded >= Math.max(shelf.back.length, shelf.front.length)) return;
+    requestAnimationFrame(() => (this.unfolded += UNFOLD));
+  }
+
   #shelf(shelf: Drawn): TemplateResult {
     const { tray, name } = shelf;
     const total = shelf.back.length + shelf.front.length;
     const { back, front } = this.#limits(shelf);
-    const hidden = Math.max(0, shelf.back.length - back) + Math.max(0, shelf.front.length - front);
+    const open = this.open === tray;
+    const hidden = open ? 0 : Math.max(0, shelf.back.length - back) + Math.max(0, shelf.front.length - front);
     const key = trayKey(shelf.place);
     const isTray = tray >= 0;
-    const open = this.open === tray;
     return html`<section
       class="shelf ${open || tray === PILE ? 'wide' : ''} ${this.over === tray ? 'over' : ''}"
       aria-label=${name}
@@ -228,7 +247,7 @@ export class Shelves extends LitElement {
               class="plain"
               aria-expanded=${open ? 'true' : 'false'}
               aria-label=${open ? words.fewer : words.moreLong(hidden, name)}
-              @click=${() => (this.open = open ? undefined : tray)}
+              @click=${() => this.#unfold(open ? undefined : tray)}
             >
               ${open ? words.fewer : html`${words.more[0](hidden)}<span class="long">${words.more[1]}</span>`}
             </button>`
@@ -262,6 +281,7 @@ export class Shelves extends LitElement {
       for (const item of stops) shown.add(item);
     }
     this.tiles.sweep(shown);
+    if (changed.has('unfolded') || changed.has('view')) this.#unfoldOn();
     if (had !== undefined && this.#focusedItem === undefined) {
       const element = this.renderRoot.querySelector<HTMLElement>(`[data-item='${had}']`);
       if (element) this.#focus(element);

@@ -20,6 +20,8 @@ interface Tile {
   figure: HTMLElement;
   /** The other plausible trays. */
   others: HTMLElement;
+  /** What the item is called in labels: a note by its beginning. */
+  called: string;
 }
 
 /**
@@ -108,14 +110,14 @@ export class Tiles {
       sorted: words.howSure(probability, others),
       unsorted: words.howUnsorted,
     }[kind];
-    const { element, figure, others: or } = tile;
+    const { element, figure, others: or, called } = tile;
     element.dataset['kind'] = kind;
     element.classList.toggle('hand', item === this.#hand);
-    const of = this.#items[item];
-    const note = of && 'text' in of ? of.text : undefined;
-    const label = words.tile(note === undefined ? (of?.name ?? '') : excerpt(note, IN_LABEL), shelf, how);
+    const label = words.tile(called, shelf, how);
     if (element.ariaLabel !== label) {
       element.ariaLabel = label;
+      const of = this.#items[item];
+      const note = of && 'text' in of ? of.text : undefined;
       element.title = note === undefined ? label : words.tileInHand(note.length > IN_HAND ? `${note.slice(0, IN_HAND)} …` : note, how);
       figure.textContent = kind === 'sorted' ? percent(probability) : kind === 'unlike' ? (words.reasonsShort[reason] ?? '') : '';
       or.textContent = others.length > 0 ? words.orElse(others) : '';
@@ -145,7 +147,9 @@ export class Tiles {
     const others = document.createElement('span');
     others.className = 'others';
     element.append(this.#face(item, element), figure, others);
-    const tile = { element, figure, others };
+    const of = this.#items[item];
+    const called = of && 'text' in of ? excerpt(of.text, IN_LABEL) : (of?.name ?? '');
+    const tile = { element, figure, others, called };
     this.#tiles.set(item, tile);
     return tile;
   }
