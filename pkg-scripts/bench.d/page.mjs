@@ -6,12 +6,14 @@ import { createServer } from "node:http";
 import { createRequire } from "node:module";
 import { delimiter, extname, join, resolve, sep } from "node:path";
 import { brotliCompressSync, constants } from "node:zlib";
+import { manyNotes } from "./page/many-notes.mjs";
 
 const [root, nodeFolder, data] = process.argv.slice(2).map((path) => resolve(path));
 const fromNodeFolder = createRequire(join(nodeFolder, "package.json"));
 const { chromium } = fromNodeFolder("playwright-core");
 const TYPES = {
   ".css": "text/css",
+  ".csv": "text/csv; charset=utf-8",
   ".html": "text/html",
   ".ico": "image/x-icon",
   ".jpg": "image/jpeg",
@@ -118,7 +120,12 @@ try {
   result.learning = await page.evaluate((options) => window.measure.learning(options), job.learning);
   server.close();
   const dist = join(root, "www/app/dist");
-  if (existsSync(dist)) result.firstVisit = await firstVisit(browser, dist);
+  if (existsSync(dist)) {
+    const { server: app, origin: address } = await serve([["/", dist]]);
+    result.manyNotes = await manyNotes(browser, address, job.manyNotes);
+    app.close();
+    result.firstVisit = await firstVisit(browser, dist);
+  }
   console.log(JSON.stringify(result));
 } finally {
   await browser.close();

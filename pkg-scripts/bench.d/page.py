@@ -20,6 +20,8 @@ PAST_CATEGORIES, PAST_ITEMS = 580, 8
 ROUNDS, WARM_UP = 60, 8
 FOLDER = sets.DATA / "bench" / "page"
 NOTE_TOKENS = 32
+MANY_NOTES, MANY_TRAYS, MANY_ANSWERS = 1000, 8, 24
+MOST_MILLISECONDS_A_FRAME = 100
 # A phone's camera gives about 12 million pixels.
 PHONE = (4032, 3024)
 MOST_MILLISECONDS_TO_SORT = 50
@@ -54,6 +56,16 @@ def notes():
     texts = [text for _, _, text in sets.read_texts("quotations")]
     found = [{"text": text, "tokens": [kept[row] for row in rows]} for text in texts if len(rows := tokenizer.encode(text).ids) == NOTE_TOKENS]
     return found[:20]
+
+
+def many_notes():
+    """Notes enough to keep a page busy, of as many categories as there are keys for, each with its tray."""
+    texts = sets.read_texts("quotations")
+    counts = Counter(category for category, _, _ in texts)
+    trays = [category for category, _ in sorted(counts.items(), key=lambda pair: (-pair[1], pair[0]))[:MANY_TRAYS]]
+    found = [{"text": text, "tray": category} for category, _, text in texts if category in trays]
+    found += [{"text": text, "tray": category} for category, _, text in texts if category not in trays]
+    return {"notes": found[:MANY_NOTES], "answers": MANY_ANSWERS}
 
 
 def past():
@@ -95,6 +107,7 @@ def prepare(say):
             "warmUp": WARM_UP,
         },
         "notes": {"notes": notes(), "rounds": ROUNDS, "warmUp": WARM_UP},
+        "manyNotes": many_notes(),
         "answers": {"labels": labels, "trays": TRAYS, "answersPerTray": ANSWERS_PER_TRAY},
         "learning": {"labels": past_labels},
     }
@@ -143,9 +156,24 @@ def run(say):
         "next_question": summarise(answers["question"]),
         "right_after_all_answers": answers["right"][-1],
         "learning": raw["learning"],
+        "many_notes": raw.get("manyNotes"),
         "first_visit": visit,
     }
     return numbers, table(numbers)
+
+
+def many_notes_table(many):
+    """What the page's main thread did while it held many notes, as Markdown."""
+    if not many:
+        return ""
+    text = f"\n## The page's main thread with {many['notes']:,} notes\n\n"
+    text += "Longest task in milliseconds: by the clock, and in time that the thread had a core, which tells more where the machine has other work; and the longest time between two frames.\n\n"
+    text += "| | longest task | of it on a core | longest time between frames |\n| --- | --- | --- | --- |\n"
+    for name, phase in many["phases"].items():
+        text += f"| {name} | {phase['longestTask']:.0f} | {phase['longestTaskCpu']:.0f} | {phase['longestGap']:.0f} |\n"
+    times = summarise(many["answerTimes"])
+    text += f"\nReading them all took {many['seconds']:.0f} s. From an answer to the sorted pile on the page: median {times['median']:.0f} ms, most {times['most']:.0f} ms. "
+    return text + f"At most {MOST_MILLISECONDS_A_FRAME} ms a frame was asked for.\n"
 
 
 def table(numbers):
@@ -178,6 +206,7 @@ def table(numbers):
     text += f"| loading module and network, once | {load['kenspeckle']:.0f} | {load['onnxruntime-web']:.0f} | {load['kenspeckle'] / load['onnxruntime-web']:.2f} |\n"
     text += f"\nKenspeckle makes the tokens too; to onnxruntime-web they are given. Memory of Kenspeckle's module: {numbers['note_memory'] / 1e6:.0f} MB.\n"
     text += f"Cosine between the two embeddings: mean {numbers['note_cosine_to_float32']['mean']:.4f}, least {numbers['note_cosine_to_float32']['least']:.4f}.\n"
+    text += many_notes_table(numbers["many_notes"])
     visit = numbers["first_visit"]
     if not visit:
         return text + "\nThe page is not built, so the bytes of a first visit were not counted.\n"
