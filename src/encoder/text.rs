@@ -41,7 +41,8 @@ pub struct NoteEncoder {
 
 impl NoteEncoder {
     /// Reads an encoder file: ONNX from tokens and their positions to a row of features each, its vocabulary in the
-    /// metadata.
+    /// metadata. The file is `www/encoders/text.onnx` of the repository; it is too large for the package on crates.io, and
+    /// `pkg-scripts/make-encoder text` makes it again.
     ///
     /// # Errors
     /// [`EncoderError::EncoderFile`] when the file is damaged or of another shape.
