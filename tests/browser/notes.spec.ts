@@ -299,6 +299,19 @@ test('a long note is shown whole, scrolls, and is said to be read in parts; one 
   await expect(async () => expect(await bench.note.evaluate((element) => element.scrollTop)).toBeGreaterThan(50)).toPass();
 });
 
+test('without the encoder and without a network the page says so, and goes on when there is one', async ({ page, context, site }) => {
+  const bench = new NoteBench(page, site);
+  await bench.open();
+  await page.evaluate(async () => void (await navigator.serviceWorker.ready));
+  await context.route(/text-[^/]*\.onnx$/, (route) => route.abort());
+  await page.getByRole('button', { name: 'Try the demo notes' }).click();
+  await expect(page.getByText(/Could not load .*text-.*Connect once, then try again/)).toBeVisible();
+  await context.unroute(/text-[^/]*\.onnx$/);
+  await page.getByRole('button', { name: 'Read the rest' }).click();
+  await bench.allRead();
+  expect((await bench.table()).length).toBe(log.length + 1);
+});
+
 test('pasted lines are shown first, then added', async ({ page, site }) => {
   const bench = new NoteBench(page, site);
   await bench.open();

@@ -286,16 +286,15 @@ export class Bench extends LitElement {
   }
 
   #onPaste(event: ClipboardEvent): void {
-    if (isTyping(event) || !event.clipboardData || (this.opened && this.opened.panel !== 'write')) return;
-    if (event.clipboardData.files.length === 0) return this.#write(event.clipboardData.getData('text/plain'));
+    if (isTyping(event) || !event.clipboardData || this.opened) return;
+    if (event.clipboardData.files.length === 0) {
+      const text = event.clipboardData.getData('text/plain');
+      if (text.trim() !== '') this.#openPanel({ panel: 'write', text });
+      return;
+    }
     const sources = fromClipboard(event.clipboardData, this.#pasted);
     this.#pasted += sources.length;
     void this.#add({ sources, problems: [] });
-  }
-
-  #write(text: string): void {
-    if (text.trim() === '' && !this.desk) return;
-    this.#openPanel({ panel: 'write', text });
   }
 
   #onKey(event: KeyboardEvent): void {
@@ -525,6 +524,11 @@ export class Bench extends LitElement {
     await PileClient.discard(kits?.id);
     await kits?.forget();
     location.reload();
+  }
+
+  override updated(): void {
+    const kit = this.desk?.snapshot && this.kits?.nameOf(this.desk);
+    document.title = words.title(kit);
   }
 
   override render(): TemplateResult {

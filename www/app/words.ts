@@ -65,6 +65,7 @@ const undone: Record<string, string> = {
 
 export const words = {
   brand: 'Kenspeckle',
+  title: (kit: string | undefined) => (kit ? `${kit} – Kenspeckle` : 'Kenspeckle: show a few, the rest sorts itself'),
 
   // The empty page
   promise: ['Show a few.', 'The rest sorts itself.'],

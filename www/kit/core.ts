@@ -34,7 +34,7 @@ export function kindOf(encoder: string): Kind {
 }
 
 async function get(url: URL): Promise<Response> {
-  const remedy = 'Connect once and reload the page; after that it works without a network.';
+  const remedy = 'Connect once, then try again; after that it works without a network.';
   let response: Response;
   try {
     response = await fetch(url);
