@@ -153,7 +153,7 @@ mod tests {
             let nearest: Vec<Vec<(u32, f32)>> = (0..12_usize)
                 .map(|i| (1..4).map(|j| (((i * 5 + j * j) % 12) as u32, cosines[i * 5 + j])).collect())
                 .collect();
-            let graph = Graph::new(&nearest);
+            let graph = Graph::new(nearest);
             let kernel = kernel(&graph);
             let candidates: Vec<usize> = (0..12).filter(|&item| item != first).collect();
             let situation =
@@ -177,7 +177,7 @@ mod tests {
         fn doubts_count_once_there_is_a_clue(unsure in prop::collection::vec(0.05_f64..1.0, 12)) {
             let nearest: Vec<Vec<(u32, f32)>> =
                 (0..12_u32).map(|i| (1..4).map(|j| ((i + j) % 12, 0.9 - 0.1 * j as f32)).collect()).collect();
-            let graph = Graph::new(&nearest);
+            let graph = Graph::new(nearest);
             let kernel = kernel(&graph);
             let answered = [0, 4, 8];
             let candidates: Vec<usize> = (0..12).filter(|item| !answered.contains(item)).collect();
@@ -192,7 +192,7 @@ mod tests {
 
     #[test]
     fn there_is_nothing_to_ask_without_candidates() {
-        let graph = Graph::new(&[vec![], vec![]]);
+        let graph = Graph::new(vec![vec![], vec![]]);
         let ask = |candidates: &[usize]| {
             Situation { graph: &graph, answered: &[], candidates, unsure: &[1.0, 1.0], trays: 0 }.choose(3)
         };

@@ -25,7 +25,7 @@ use crate::{
     space::{CENTRE_CAUTION, Centre, Space},
     starter::Starter,
     support::Support,
-    trust::{Reason, Terms, neighbours::Neighbours as LookAlikes},
+    trust::{Reason, Terms},
 };
 use trusting::Trusting;
 
@@ -126,9 +126,6 @@ pub struct Sorter {
     pile: Pile,
     ledger: Ledger,
     terms: Terms,
-    look_alikes: LookAlikes,
-    /// Who is near whom among the items that are in the pile now.
-    nearest: Option<Vec<Vec<(usize, f64)>>>,
     neighbours: Neighbours,
     /// The graph of the items that are in the pile now.
     graph: Option<Graph>,
@@ -145,8 +142,6 @@ impl Sorter {
             pile: Pile::new(settings.space),
             ledger: Ledger::default(),
             terms: Terms::default(),
-            look_alikes: LookAlikes::default(),
-            nearest: None,
             neighbours: Neighbours::default(),
             graph: None,
             propagation: Propagation::default(),
@@ -195,7 +190,6 @@ impl Sorter {
         let item = self.pile.add(embedding)?;
         let same = self.ledger.add_item();
         debug_assert_eq!(item, same);
-        self.nearest = None;
         self.graph = None;
         self.learnt = None;
         Ok(item)
@@ -292,7 +286,6 @@ impl Sorter {
 
     fn follow_ledger(&mut self) {
         if self.pile.set_removed(|item| self.ledger.is_removed(item)) {
-            self.nearest = None;
             self.graph = None;
         }
         self.learnt = None;

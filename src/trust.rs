@@ -22,7 +22,6 @@ pub mod doubt;
 pub mod evidence;
 pub mod interval;
 pub mod learning_curve;
-pub mod neighbours;
 pub mod novelty;
 pub mod prediction_set;
 pub mod spot_check;

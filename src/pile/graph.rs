@@ -18,27 +18,34 @@ const TOLERANCE: f64 = 1e-7;
 /// Solves with a spread of 0.9 are done to [`TOLERANCE`] in fewer steps than this, by the bound for conjugate gradients.
 const MOST_STEPS: usize = 60;
 
+fn weight(cosine: f32) -> f64 {
+    let cosine = f64::from(cosine);
+    cosine * cosine * cosine
+}
+
 /// A symmetric, sparse, normalised matrix S over item numbers; items without a neighbour have an empty row.
 #[derive(Debug, Clone, Default)]
 pub struct Graph {
     starts: Vec<usize>,
     ends: Vec<u32>,
     weights: Vec<f64>,
+    /// Of each item's own nearest, the most alike first, with cosines that are positive.
+    nearest: Vec<Vec<(u32, f32)>>,
 }
 
 impl Graph {
     /// Of each item's nearest others with their cosines; those that aren't positive don't count. Cost O(n k log k).
-    pub fn new(nearest: &[Vec<(u32, f32)>]) -> Self {
+    pub fn new(mut nearest: Vec<Vec<(u32, f32)>>) -> Self {
         let n = nearest.len();
+        for (item, list) in nearest.iter_mut().enumerate() {
+            list.retain(|&(other, cosine)| cosine > 0.0 && other as usize != item);
+        }
         let mut rows: Vec<Vec<(u32, f64)>> = vec![Vec::new(); n];
         for (item, list) in nearest.iter().enumerate() {
             for &(other, cosine) in list {
-                let cosine = f64::from(cosine);
-                if cosine > 0.0 && other as usize != item {
-                    let weight = cosine * cosine * cosine;
-                    rows[item].push((other, weight));
-                    rows[other as usize].push((item as u32, weight));
-                }
+                let weight = weight(cosine);
+                rows[item].push((other, weight));
+                rows[other as usize].push((item as u32, weight));
             }
         }
         for row in &mut rows {
@@ -58,7 +65,14 @@ impl Graph {
             }
             graph.starts.push(graph.ends.len());
         }
+        graph.nearest = nearest;
         graph
+    }
+
+    /// An item's own nearest, the most alike first, with the third powers of their cosines; others may be joined with it
+    /// because it is among theirs.
+    pub fn nearest(&self, item: usize) -> impl Iterator<Item = (usize, f64)> + '_ {
+        self.nearest[item].iter().map(|&(other, cosine)| (other as usize, weight(cosine)))
     }
 
     /// How many item numbers it spans.

@@ -89,7 +89,7 @@ impl Neighbours {
                 }
             }
         }
-        Graph::new(&nearest)
+        Graph::new(nearest)
     }
 }
 

@@ -207,8 +207,8 @@ impl Sorter {
             }
             evidence.set(example, own.view());
         }
-        let nearest = self.nearest.get_or_insert_with(|| self.look_alikes.nearest(&self.pile));
-        let (pile, ledger) = (&self.pile, &self.ledger);
+        self.graph();
+        let (pile, ledger, graph) = (&self.pile, &self.ledger, &self.graph);
         let open = |&item: &usize| matches!(ledger.answer(item), Answer::Open | Answer::Skipped);
         let rows = pile.items().filter(open).map(|item| probabilities.row(item));
         let sets = PredictionSets::new(&evidence, rows, self.terms.confidence());
@@ -233,7 +233,7 @@ impl Sorter {
             items: pile.len(),
             with_means,
             cosine: &cosine,
-            neighbours: &|item| nearest[item].clone(),
+            neighbours: &|item| graph.iter().flat_map(|graph| graph.nearest(item)).collect(),
         });
         let threshold = novelty.threshold(self.terms.set_aside_share());
         Trusting { support, items, evidence, sets, novelty, threshold }
