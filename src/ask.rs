@@ -9,6 +9,8 @@
 //!
 //! A question costs O(n k²) for k neighbours an item.
 
+use std::ops::RangeInclusive;
+
 use crate::pile::graph::{Graph, SPREAD};
 
 /// What the sorter knows of the items that may be asked about.
@@ -34,50 +36,111 @@ impl Situation<'_> {
     /// The items whose answers help most, each chosen as if those before it were answered; the first of several that
     /// help the same. Fewer than `count` if there are no more candidates.
     pub fn choose(&self, count: usize) -> Vec<usize> {
-        let n = self.graph.len();
-        let mut walk = Walk::new(n);
-        let root: Vec<f64> = (0..n).map(|item| self.graph.returning(item).sqrt()).collect();
-        let mut cover = vec![0.0_f64; n];
-        let take_in = |walk: &mut Walk, cover: &mut [f64], item: usize| {
-            walk.from(self.graph, item);
-            for &near in &walk.touched {
-                let near = near as usize;
-                cover[near] = cover[near].max(walk.sum[near] / (root[near] * root[item]));
+        let mut cover = Cover::of(self);
+        let mut bounds = cover.bounds();
+        cover.choose(&mut bounds, count).into_iter().map(|(item, _)| item).collect()
+    }
+
+    /// Of groups of candidates, each at least as many as the least of `sizes`, the one whose best few answers help most, with
+    /// these items and how their help compares with that of as many questions that are free to come from anywhere, 0 to 1;
+    /// the first of several that help the same. `None` if no group is large enough. Cost: that of two questions, and
+    /// little for each group.
+    pub fn choose_together(
+        &self,
+        groups: &[Vec<usize>],
+        sizes: RangeInclusive<usize>,
+    ) -> Option<(usize, Vec<usize>, f64)> {
+        let mut cover = Cover::of(self);
+        let free = cover.bounds();
+        let help = |chosen: &[(usize, f64)]| chosen.iter().map(|&(_, gain)| gain).sum::<f64>();
+        let mut best: Option<(usize, Vec<(usize, f64)>)> = None;
+        for (number, group) in groups.iter().enumerate().filter(|(_, group)| group.len() >= *sizes.start()) {
+            let mut bounds: Vec<(usize, f64)> =
+                free.iter().copied().filter(|(item, _)| group.binary_search(item).is_ok()).collect();
+            let chosen = cover.choose(&mut bounds, *sizes.end());
+            let mean = |chosen: &[(usize, f64)]| help(chosen) / chosen.len() as f64;
+            if best.as_ref().is_none_or(|(_, most)| mean(&chosen) > mean(most)) {
+                best = Some((number, chosen));
             }
-        };
-        for &item in self.answered {
-            take_in(&mut walk, &mut cover, item);
         }
-        let clue = self.has_a_clue();
-        // Gains only fall while others are chosen, so an old gain bounds the new one from above.
-        let mut bounds: Vec<(usize, f64)> = self.candidates.iter().map(|&item| (item, f64::INFINITY)).collect();
+        let (number, chosen) = best.filter(|(_, chosen)| chosen.len() >= *sizes.start())?;
+        let most = help(&cover.choose(&mut free.clone(), chosen.len()));
+        let share = if most > 0.0 { help(&chosen) / most } else { 1.0 };
+        Some((number, chosen.into_iter().map(|(item, _)| item).collect(), share))
+    }
+}
+
+/// How well each item is represented by those with an answer.
+struct Cover<'a> {
+    situation: &'a Situation<'a>,
+    walk: Walk,
+    /// √K_ii.
+    root: Vec<f64>,
+    cover: Vec<f64>,
+    clue: bool,
+}
+
+impl<'a> Cover<'a> {
+    fn of(situation: &'a Situation<'a>) -> Self {
+        let n = situation.graph.len();
+        let root = (0..n).map(|item| situation.graph.returning(item).sqrt()).collect();
+        let mut cover = Self { situation, walk: Walk::new(n), root, cover: vec![0.0; n], clue: situation.has_a_clue() };
+        for &item in situation.answered {
+            cover.take_in(item);
+        }
+        cover
+    }
+
+    fn take_in(&mut self, item: usize) {
+        self.walk.from(self.situation.graph, item);
+        for &near in &self.walk.touched {
+            let near = near as usize;
+            self.cover[near] = self.cover[near].max(self.walk.sum[near] / (self.root[near] * self.root[item]));
+        }
+    }
+
+    fn gain(&mut self, item: usize) -> f64 {
+        self.walk.from(self.situation.graph, item);
+        self.walk
+            .touched
+            .iter()
+            .map(|&near| {
+                let near = near as usize;
+                let more = (self.walk.sum[near] / (self.root[near] * self.root[item]) - self.cover[near]).max(0.0);
+                if self.clue { more * self.situation.unsure[near] } else { more }
+            })
+            .sum()
+    }
+
+    /// What each candidate would bring by itself: what it brings beside others is no more.
+    fn bounds(&mut self) -> Vec<(usize, f64)> {
+        self.situation.candidates.iter().map(|&item| (item, self.gain(item))).collect()
+    }
+
+    /// Items with what each adds to those before it; the cover is as before afterwards.
+    fn choose(&mut self, bounds: &mut Vec<(usize, f64)>, count: usize) -> Vec<(usize, f64)> {
+        let before = self.cover.clone();
         let mut chosen = Vec::new();
         while chosen.len() < count {
             let mut best: Option<(usize, f64)> = None;
             for (place, (item, bound)) in bounds.iter_mut().enumerate() {
+                // Gains only fall while others are chosen, so an old gain bounds the new one from above.
                 if best.is_some_and(|(_, most)| *bound <= most) {
                     continue;
                 }
-                walk.from(self.graph, *item);
-                let gain: f64 = walk
-                    .touched
-                    .iter()
-                    .map(|&near| {
-                        let near = near as usize;
-                        let more = (walk.sum[near] / (root[near] * root[*item]) - cover[near]).max(0.0);
-                        if clue { more * self.unsure[near] } else { more }
-                    })
-                    .sum();
-                *bound = gain;
-                if best.is_none_or(|(_, most)| gain > most) {
-                    best = Some((place, gain));
+                if !chosen.is_empty() {
+                    *bound = self.gain(*item);
+                }
+                if best.is_none_or(|(_, most)| *bound > most) {
+                    best = Some((place, *bound));
                 }
             }
-            let Some((place, _)) = best else { break };
+            let Some((place, gain)) = best else { break };
             let (item, _) = bounds.remove(place);
-            take_in(&mut walk, &mut cover, item);
-            chosen.push(item);
+            self.take_in(item);
+            chosen.push((item, gain));
         }
+        self.cover = before;
         chosen
     }
 }
@@ -170,6 +233,46 @@ mod tests {
                 let best = candidates.iter().filter(|j| !asked.contains(j)).map(|&j| gain(j)).fold(0.0, f64::max);
                 prop_assert!(gain(item) >= best - 1e-12);
                 asked.push(item);
+            }
+        }
+
+        /// Of the groups the one whose greedy choice adds most an item, and its share of what free questions add: by the
+        /// whole kernel written out.
+        #[test]
+        fn the_best_group_is_the_best_by_brute_force(
+            cosines in prop::collection::vec(0.05_f32..1.0, 60),
+            split in prop::collection::vec(0_usize..3, 11),
+        ) {
+            let nearest: Vec<Vec<(u32, f32)>> = (0..12_usize)
+                .map(|i| (1..4).map(|j| (((i * 5 + j * j) % 12) as u32, cosines[i * 5 + j])).collect())
+                .collect();
+            let graph = Graph::new(nearest);
+            let kernel = kernel(&graph);
+            let candidates: Vec<usize> = (1..12).collect();
+            let groups: Vec<Vec<usize>> = (0..3).map(|g| (1..12).filter(|&item| split[item - 1] == g).collect()).collect();
+            let situation =
+                Situation { graph: &graph, answered: &[0], candidates: &candidates, unsure: &[1.0; 12], trays: 0 };
+            let greedy = |from: &[usize], count: usize| {
+                let mut asked = vec![0];
+                for _ in 0..count.min(from.len()) {
+                    let open = from.iter().filter(|j| !asked.contains(j));
+                    let worth = |j: usize| worth(&kernel, &[1.0; 12], &[&asked[..], &[j]].concat());
+                    let next = open.copied().fold((0, -1.0), |best, j| if worth(j) > best.1 + 1e-12 { (j, worth(j)) } else { best }).0;
+                    asked.push(next);
+                }
+                worth(&kernel, &[1.0; 12], &asked) - worth(&kernel, &[1.0; 12], &[0])
+            };
+            let mean = |group: &Vec<usize>| greedy(group, 4) / group.len().min(4) as f64;
+            let best = groups.iter().filter(|group| group.len() >= 3).map(mean).fold(0.0, f64::max);
+            match situation.choose_together(&groups, 3..=4) {
+                None => prop_assert!(groups.iter().all(|group| group.len() < 3)),
+                Some((number, items, share)) => {
+                    prop_assert!((mean(&groups[number]) - best).abs() < 1e-9);
+                    prop_assert_eq!(items.len(), groups[number].len().min(4));
+                    prop_assert!(items.iter().all(|item| groups[number].contains(item)));
+                    let free = greedy(&candidates, items.len());
+                    prop_assert!((share - greedy(&groups[number], items.len()) / free).abs() < 1e-9, "{share}");
+                }
             }
         }
 

@@ -105,6 +105,9 @@ pub enum Error {
     /// The person stopped the work.
     #[error("stopped before it was done; nothing has changed")]
     Stopped,
+    /// The sorter has no expectation of its own yet, or nothing left to expect.
+    #[error("there is too little to tell yet: it takes answers in two trays, and items without an answer")]
+    TooLittleToTell,
     /// A starter of few categories would tell too much of them.
     #[error(
         "a starter of {found} categories may tell what they were; it is only shared from {least} on: add past piles, \
@@ -196,6 +199,7 @@ impl Error {
             Error::StarterNewer { .. } => "starter-newer",
             Error::TooLittleToLearn { .. } => "too-little-to-learn",
             Error::Stopped => "stopped",
+            Error::TooLittleToTell => "too-little-to-tell",
             Error::TooFewToShare { .. } => "too-few-to-share",
             Error::TrayNameEmpty => "tray-name-empty",
             Error::TrayNameTaken(_) => "tray-name-taken",

@@ -1,5 +1,6 @@
 //! The wasm-bindgen surface: names and types for JavaScript, no arithmetic.
 
+mod asking;
 #[cfg(feature = "photo")]
 mod photo;
 mod sorter;

@@ -199,6 +199,28 @@ impl Ledger {
         self.done.last().map(|entry| entry.action)
     }
 
+    /// How many actions spoke of one item since the last that answered several; all of them if none did.
+    pub(crate) fn since_several(&self) -> usize {
+        let answered = |change: &&Change| matches!(change, Change::Answered { .. });
+        let items = |entry: &Entry| entry.changes.iter().filter(answered).count();
+        let spoken = |entry: &&Entry| matches!(entry.action, Action::Answer | Action::None | Action::Skip);
+        self.done
+            .iter()
+            .rev()
+            .filter(spoken)
+            .map(items)
+            .take_while(|&items| items < 2)
+            .filter(|&items| items == 1)
+            .count()
+    }
+
+    /// The same items and trays with these answers and no others, and without a log.
+    pub(crate) fn with_answers(&self, answers: &[(usize, Answer)]) -> Self {
+        let mut own = vec![Answer::Open; self.answers.len()];
+        answers.iter().for_each(|&(item, answer)| own[item] = answer);
+        Self { trays: self.trays.clone(), answers: own, removed: self.removed.clone(), ..Self::default() }
+    }
+
     fn live(&self, tray: usize) -> Result<usize> {
         if self.trays.get(tray).is_some_and(|t| t.live) { Ok(tray) } else { Err(Error::NoSuchTray(tray)) }
     }
@@ -254,13 +276,16 @@ impl Ledger {
         Ok(())
     }
 
-    /// Makes a tray and puts an item into it as one action; gives the tray's number.
-    pub fn put_in_new(&mut self, item: usize, name: &str) -> Result<usize> {
-        let item = self.present(item)?;
+    /// Makes a tray and puts items into it as one action; gives the tray's number.
+    pub fn put_in_new(&mut self, items: &[usize], name: &str) -> Result<usize> {
+        for &item in items {
+            self.present(item)?;
+        }
         let name = self.free_name(name, None)?;
         let tray = self.make(name);
-        let answered = Change::Answered { item, from: self.answers[item], to: Answer::Tray(tray) };
-        self.record(Action::Answer, vec![Change::TrayMade { tray }, answered]);
+        let answered = |&item: &usize| Change::Answered { item, from: self.answers[item], to: Answer::Tray(tray) };
+        let changes = std::iter::once(Change::TrayMade { tray }).chain(items.iter().map(answered)).collect();
+        self.record(Action::Answer, changes);
         Ok(tray)
     }
 
@@ -431,7 +456,7 @@ mod tests {
             6 => ledger.merge_trays(a, b).is_err(),
             7 => ledger.remove_tray(b).is_err(),
             8 => ledger.remove_item(a).is_err(),
-            9 => ledger.put_in_new(a, &format!("n{b}")).is_err(),
+            9 => ledger.put_in_new(&[a, (a + 1) % 6], &format!("n{b}")).is_err(),
             10 => ledger.settle(a, b).is_err(),
             11 => ledger.put_each(Action::SpotCheck, &[(a, Answer::Tray(b)), ((a + 1) % 6, Answer::Skipped)]).is_err(),
             _ => ledger.put_all(&[a, (a + 1) % 6], b).is_err(),

@@ -53,7 +53,7 @@ pub use forecast::Outlook;
 pub use head::Head;
 pub use learner::LearnerKind;
 pub use prior::Prior;
-pub use sorter::{Settings, Sorter, Verdict};
+pub use sorter::{Settings, Sorter, Strip, Verdict};
 pub use space::Space;
 pub use starter::Starter;
 pub use support::Support;

@@ -2,6 +2,7 @@
 //! them.
 
 pub mod episode;
+pub mod hindsight;
 pub mod rehearse;
 pub mod replay;
 pub mod statistics;

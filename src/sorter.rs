@@ -1,5 +1,6 @@
 //! The façade: from embeddings and answers to verdicts and the next question.
 
+mod asking;
 mod trusting;
 
 use std::sync::Arc;
@@ -9,9 +10,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::{
     arithmetic::{dot, row, softmax},
-    ask::Situation,
     error::{Error, Result},
-    forecast::Outlook,
     head::Head,
     learner::{Learned, LearnerKind},
     ledger::{Action, Answer, Ledger},
@@ -27,6 +26,7 @@ use crate::{
     support::Support,
     trust::{Reason, Terms},
 };
+pub use asking::{STRIP, STRIP_APART, STRIP_DUE, STRIP_SURE, Strip};
 use trusting::Trusting;
 
 /// The newest version of the saved state.
@@ -246,7 +246,12 @@ impl Sorter {
 
     /// Makes a tray for this item, as one action; gives the tray's number.
     pub fn answer_new(&mut self, item: usize, name: &str) -> Result<usize> {
-        self.change(|ledger| ledger.put_in_new(item, name))
+        self.answer_all_new(&[item], name)
+    }
+
+    /// Makes a tray for several items, as one action; gives the tray's number.
+    pub fn answer_all_new(&mut self, items: &[usize], name: &str) -> Result<usize> {
+        self.change(|ledger| ledger.put_in_new(items, name))
     }
 
     /// The person looked at a doubted answer again and says where the item belongs, the same tray or another: it isn't doubted
@@ -314,61 +319,6 @@ impl Sorter {
             learnt.trays.iter().copied().zip(probabilities.row(item).iter().copied()).collect();
         ranking.sort_by(|a, b| b.1.total_cmp(&a.1));
         Ok(ranking)
-    }
-
-    /// The item whose answer helps most; `None` when every item has an answer. Cost: that of [`Sorter::verdicts`] and of
-    /// [`crate::ask`].
-    pub fn next_question(&mut self) -> Option<usize> {
-        self.next_questions(1).first().copied()
-    }
-
-    /// The items whose answers together help most, the most helpful first; fewer than `count` if fewer have no answer.
-    pub fn next_questions(&mut self, count: usize) -> Vec<usize> {
-        let open: Vec<usize> = self.pile.items().filter(|&item| self.ledger.answer(item) == Answer::Open).collect();
-        self.choose(&open, count)
-    }
-
-    /// Look-alikes to confirm at one go: up to `count` items without an answer that the sorter would rather put into this
-    /// tray than not, those whose answers together help most first. To confirm a strip the person must look at every
-    /// item of it, so each of them counts as an answer.
-    pub fn strip(&mut self, tray: usize, count: usize) -> Vec<usize> {
-        let fits = |verdict: &Verdict| {
-            verdict.answer == Answer::Open && verdict.tray == Some(tray) && verdict.probability > 0.5
-        };
-        let verdicts = self.verdicts();
-        let fitting: Vec<usize> =
-            (0..verdicts.len()).filter(|&item| verdicts[item].as_ref().is_some_and(fits)).collect();
-        self.choose(&fitting, count)
-    }
-
-    /// How much of what has no answer is expected to be sorted right, and what ten more answers would bring; `None` while
-    /// there are fewer than two trays with an answer or when every item has one.
-    pub fn outlook(&mut self) -> Option<Outlook> {
-        let verdicts = self.verdicts();
-        let sure: Vec<f64> = verdicts
-            .iter()
-            .flatten()
-            .filter(|verdict| matches!(verdict.answer, Answer::Open | Answer::Skipped) && verdict.tray.is_some())
-            .map(|verdict| verdict.probability)
-            .collect();
-        let trays = self.learnt().trays.clone();
-        let in_tray = |tray| self.ledger.answered().filter(|&(_, own)| own == tray).count();
-        let single = trays.iter().filter(|&&tray| in_tray(tray) == 1).count();
-        let answers = self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).count();
-        Outlook::new(&sure, answers, trays.len(), single)
-    }
-
-    fn choose(&mut self, candidates: &[usize], count: usize) -> Vec<usize> {
-        if candidates.is_empty() {
-            return Vec::new();
-        }
-        self.learnt();
-        self.graph();
-        let (Some(learnt), Some(graph)) = (&self.learnt, &self.graph) else { return Vec::new() };
-        let answered: Vec<usize> = self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).collect();
-        let unsure: Vec<f64> =
-            learnt.verdicts.iter().map(|verdict| verdict.as_ref().map_or(0.0, Verdict::unsure)).collect();
-        Situation { graph, answered: &answered, candidates, unsure: &unsure, trays: learnt.trays.len() }.choose(count)
     }
 
     /// The graph of the items in the pile, made anew if they changed.

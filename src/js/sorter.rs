@@ -6,7 +6,7 @@ use wasm_bindgen::prelude::*;
 use super::{OrThrow, js_error, starter::GivenStarter};
 use crate::{LearnerKind, Settings, Space, forecast, ledger::Answer, sorter, trust::Reason};
 
-fn to_js(value: &impl Serialize) -> JsValue {
+pub(super) fn to_js(value: &impl Serialize) -> JsValue {
     serde_wasm_bindgen::to_value(value).unwrap_or(JsValue::UNDEFINED)
 }
 
@@ -131,7 +131,7 @@ struct RankedTray {
 }
 
 #[derive(Serialize)]
-struct ShareRange {
+pub(super) struct ShareRange {
     low: f64,
     expected: f64,
     high: f64,
@@ -239,6 +239,13 @@ impl Sorter {
     #[wasm_bindgen(js_name = settleDoubt)]
     pub fn settle_doubt(&mut self, item: usize, tray: usize) -> Result<(), JsValue> {
         self.0.settle_doubt(item, tray).or_throw()
+    }
+
+    /// Makes a tray for these items: one action, undone as one. Gives the tray's number.
+    #[wasm_bindgen(js_name = answerAllNew)]
+    pub fn answer_all_new(&mut self, items: &[u32], name: &str) -> Result<usize, JsValue> {
+        let items: Vec<usize> = items.iter().map(|&item| item as usize).collect();
+        self.0.answer_all_new(&items, name).or_throw()
     }
 
     /// None of these: the person sets the item aside.

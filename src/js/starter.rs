@@ -133,15 +133,15 @@ impl PastPiles {
 }
 
 /// Tells JavaScript how much is done.
-struct Teller(Option<js_sys::Function>);
+pub(super) struct Teller(Option<js_sys::Function>);
 
 impl Teller {
-    fn new(on_progress: Option<OnProgress>) -> Self {
+    pub(super) fn new(on_progress: Option<OnProgress>) -> Self {
         Self(on_progress.map(|given| JsValue::from(given).unchecked_into()))
     }
 
     /// Always true: the work goes on, whatever the listener throws.
-    fn tell(&self, done: f64) -> bool {
+    pub(super) fn tell(&self, done: f64) -> bool {
         if let Some(listener) = &self.0 {
             let _ = listener.call1(&JsValue::UNDEFINED, &done.into());
         }
