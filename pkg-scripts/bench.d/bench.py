@@ -10,6 +10,7 @@ import accuracy
 import adaptation
 import asking
 import page
+import question
 import sets
 import trust
 
@@ -26,6 +27,7 @@ BENCHMARKS = {
     "accuracy": lambda asked: accuracy.run(asked.sets, asked.ways, asked.shots, asked.episodes, asked.seed, say),
     "adaptation": lambda asked: adaptation.run(say),
     "asking": lambda asked: asking.run(asked.repeats, asked.seed, say),
+    "question": lambda asked: question.run(say),
     "trust": lambda asked: trust.run(asked.episodes, asked.seed, say),
     "page": lambda asked: page.run(say),
 }
