@@ -24,7 +24,7 @@ for (const { file, quality, ...look } of shots) {
   await page.goto(address);
   await page.getByRole('button', { name: 'Try the demo pile' }).click();
   await page.getByText(`${index.items.length} photos added.`).first().waitFor({ state: 'attached', timeout: 180_000 });
-  const picture = page.locator('ken-question img');
+  const picture = page.locator('ken-question .mat img');
   for (let answers = 0; answers < ANSWERS; answers++) {
     const item = await picture.getAttribute('alt');
     const tray = truth.get(item);

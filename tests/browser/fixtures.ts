@@ -89,7 +89,9 @@ export class Bench {
     this.address = site.address;
   }
 
-  async open(): Promise<void> {
+  /** Opens the empty page. Strips come only when a test asks for them, unless `strips`. */
+  async open(strips = false): Promise<void> {
+    if (!strips) await this.page.addInitScript(() => (localStorage['strips'] ??= 'off'));
     await this.page.goto(this.address);
     await expect(this.page.getByRole('button', { name: 'Try the demo pile' })).toBeVisible();
   }
@@ -115,7 +117,7 @@ export class Bench {
   }
 
   get picture() {
-    return this.page.locator('ken-question img');
+    return this.page.locator('ken-question .mat img');
   }
 
   async inHand(): Promise<string> {

@@ -85,8 +85,8 @@ export const appStyles = css`
   }
   .hand {
     position: sticky;
-    top: 84px;
-    max-height: calc(100dvh - 96px);
+    top: 106px;
+    max-height: calc(100dvh - 118px);
     display: flex;
     flex-direction: column;
     overflow: auto;
@@ -103,6 +103,16 @@ export const appStyles = css`
     display: grid;
     gap: 6px;
     min-width: 0;
+  }
+  .offer {
+    color: var(--ink-soft);
+    font-size: 0.94rem;
+  }
+  .offer button {
+    padding-inline: 0.4rem;
+    color: var(--ink);
+    text-decoration: underline;
+    text-underline-offset: 3px;
   }
   .said {
     flex: none;
@@ -159,7 +169,7 @@ export const appStyles = css`
     header.working {
       grid-template-columns: auto minmax(0, 1fr);
     }
-    header.working ken-band {
+    header.working .pile {
       grid-row: 2;
       grid-column: 1 / -1;
     }

@@ -3,6 +3,8 @@ import { KenspeckleError, type Kind, kindOf, messageOf, PileClient, Readers, typ
 import './band';
 import { BenchKits } from './bench-kits';
 import { hasCamera } from './camera';
+import { Comparison } from './comparison';
+import './comparison-panel';
 import { Desk } from './desk';
 import { demoNotes, demoSources, type Found, fromClipboard, fromList, fromTransfer } from './files';
 import { commandOf, isTyping } from './keys';
@@ -14,6 +16,7 @@ import { type Panel } from './panels';
 import './panels';
 import type { Question } from './question';
 import './question';
+import './outlook-line';
 import './reading';
 import type { Shelves } from './shelves';
 import './shelves';
@@ -33,7 +36,7 @@ import { words } from './words';
 type Coming = { kind: 'photos'; sources: readonly Source[] } | { kind: 'notes'; sources: readonly Source[] } | { kind: 'notes'; lines: string };
 
 type Opened =
-  | { panel: 'help' | 'start-over' | 'camera' | 'past' | 'kits' | 'notes' | 'trust' | 'spot-check' }
+  | { panel: 'help' | 'start-over' | 'camera' | 'past' | 'kits' | 'notes' | 'trust' | 'spot-check' | 'compare' }
   | { panel: 'write'; text: string }
   | { panel: 'other-kind'; coming: Coming }
   | { panel: 'zoom'; item: number }
@@ -42,6 +45,8 @@ type Opened =
 const SINGLE_KEYS = 'single-keys';
 /** Whether to expect a pile before the store is open: the empty page would flash up otherwise. */
 const HAS_PILE = 'has-pile';
+
+const NONE: ReadonlySet<number> = new Set();
 
 const brand = html`<svg viewBox="0 0 64 64" aria-hidden="true"><rect x="11" y="12" width="11" height="11" rx="2"/><rect x="26.500" y="12" width="11" height="11" rx="2"/><rect x="42" y="12" width="11" height="11" rx="2"/><rect class="bright" x="21" y="27" width="22" height="22" rx="3"/><rect x="9" y="50.500" width="46" height="5" rx="2"/></svg>
   <span>${words.brand}</span>`;
@@ -85,6 +90,7 @@ export class Bench extends LitElement {
   #ready: Promise<Desk | undefined> = Promise.resolve(undefined);
   readonly #readers = new Readers();
   readonly #notesIn = new NotesIn(this.#readers, () => this.#askAboutNotes());
+  readonly #comparison = new Comparison(() => this.requestUpdate());
   #zoomed: string | undefined;
   #pasted = 0;
   #returnTo: HTMLElement | undefined;
@@ -310,25 +316,27 @@ export class Bench extends LitElement {
     // A key that is held down would answer for items nobody has looked at.
     if (event.repeat) return;
     const keyed = this.#shelves?.keyedItem;
-    const item = keyed ?? desk.hand;
+    const strip = desk.stripInHand;
+    const item = keyed ?? (strip ? this.#question?.stripItem : desk.hand);
     switch (command.do) {
       case 'tray': {
         const tray = desk.snapshot.trays[command.place]?.tray;
         if (tray === undefined) return;
         if (keyed !== undefined) this.#toHand();
-        return void desk.answer(tray, item);
+        return void (keyed === undefined ? desk.answer(tray) : desk.answer(tray, keyed));
       }
       case 'guess':
-        if (desk.guess !== undefined) void desk.answer(desk.guess);
+        if (strip) void desk.answerStrip();
+        else if (desk.guess !== undefined) void desk.answer(desk.guess);
         return;
       case 'find':
         return this.#question?.find();
       case 'none':
         if (keyed !== undefined) this.#toHand();
-        return void desk.none(item);
+        return this.#noTray('none', item);
       case 'skip':
         if (keyed !== undefined) this.#toHand();
-        return void desk.skip(item);
+        return this.#noTray('skip', item);
       case 'undo':
         return void desk.undo();
       case 'redo':
@@ -341,7 +349,9 @@ export class Bench extends LitElement {
         if (keyed !== undefined) this.#shelves?.holdPlace();
         return void desk.removeItem(item);
       case 'shelves':
-        return this.#shelves?.resume();
+        return strip ? this.#question?.enterStrip() : this.#shelves?.resume();
+      case 'strips':
+        return this.#otherWay();
       case 'past':
         return this.#openPast();
       case 'trust':
@@ -355,6 +365,20 @@ export class Bench extends LitElement {
 
   #openKits(): void {
     if (this.opened?.panel !== 'kits') this.#openPanel({ panel: 'kits' });
+  }
+
+  /** From single questions to strips and back. */
+  #otherWay(): void {
+    const { desk } = this;
+    if (desk?.stripInHand) void desk.offerStrips(false);
+    else if (desk && desk.stripInstead > 0) void desk.offerStrips(true);
+  }
+
+  /** In a strip, these are about the one item that keys or a tap led to. */
+  #noTray(way: 'none' | 'skip', item: number | undefined): void {
+    const { desk } = this;
+    if (item === undefined && desk?.stripInHand) desk.say(words.stripNone);
+    else void desk?.[way](item);
   }
 
   /** Keys act on the item in hand again. */
@@ -409,6 +433,13 @@ export class Bench extends LitElement {
     if (this.opened?.panel === 'tray') this.opened = { ...this.opened, error: problem };
   }
 
+  #compare(): void {
+    const { desk } = this;
+    if (!desk) return;
+    this.#openPanel({ panel: 'compare' });
+    if (!this.#comparison.view(desk).found) void this.#comparison.work(desk);
+  }
+
   async #takeResult(): Promise<void> {
     const { desk } = this;
     if (!desk) return;
@@ -418,6 +449,7 @@ export class Bench extends LitElement {
       return desk.complain(messageOf(error));
     }
     this.past?.finish(desk.snapshot);
+    this.#comparison.finish(desk);
     this.requestUpdate();
   }
 
@@ -451,8 +483,12 @@ export class Bench extends LitElement {
       this.#toHand();
       void (tray < 0 ? this.desk?.none(item) : this.desk?.answer(tray, item));
     });
-    on('none', () => void this.desk?.none());
-    on('skip', () => void this.desk?.skip());
+    const inHand = () => (this.desk?.stripInHand ? this.#question?.stripItem : this.desk?.hand);
+    on('none', () => this.#noTray('none', inHand()));
+    on('skip', () => this.#noTray('skip', inHand()));
+    on('confirm-strip', () => void this.desk?.answerStrip());
+    on<{ item: number }>('toggle-strip', ({ item }) => this.desk?.toggle(item));
+    on('strips', () => this.#otherWay());
     on('withdraw', () => void this.desk?.withdraw());
     on('back', () => this.desk?.backToQuestion());
     on('zoom', () => void this.#zoom());
@@ -471,6 +507,9 @@ export class Bench extends LitElement {
     on<{ from: number; into: number }>('merge-trays', ({ from, into }) => void this.#changeTray(this.desk?.mergeTrays(from, into)));
     on<{ tray: number }>('remove-tray', ({ tray }) => void this.#changeTray(this.desk?.removeTray(tray)));
     on('clear', () => void this.#clear());
+    on('compare', () => this.#compare());
+    on('work-compare', () => this.desk && void this.#comparison.work(this.desk));
+    on('stop-compare', () => this.#comparison.stop());
     on('past', () => this.#openPast());
     on('learn', () => void this.#learn());
     on('trust', () => this.#openTrust());
@@ -549,6 +588,7 @@ export class Bench extends LitElement {
           ${bench && this.trust ? html`<button class="plain" @click=${() => this.#openTrust()}>${words.trust.open}</button>` : nothing}
           <button class="plain" @click=${() => this.#openKits()}>${words.kits}</button>
           ${this.past ? html`<button class="plain" @click=${() => this.#openPast()}>${words.past}</button>` : nothing}
+          ${bench ? html`<button class="plain" @click=${() => this.#compare()}>${words.compare}</button>` : nothing}
           ${bench
             ? html`<button class="plain" @click=${() => this.#openPanel({ panel: 'start-over' })}>${words.startOver}</button>`
             : nothing}
@@ -563,7 +603,7 @@ export class Bench extends LitElement {
     const { desk } = this;
     return html`<header class=${bench ? 'working' : ''}>
       ${bench ? html`<h1 class="brand">${brand}</h1>` : html`<p class="brand">${brand}</p>`}
-      ${bench && desk ? html`<ken-band .tally=${desk.view?.tally} .kind=${desk.kind}></ken-band>` : html`<span></span>`}
+      ${bench && desk ? this.#standing(desk) : html`<span></span>`}
       <nav aria-label="Pile">
         ${desk && (bench || desk.snapshot?.canUndo || desk.snapshot?.canRedo)
           ? html`<button ?disabled=${!desk.snapshot?.canUndo} @click=${() => void desk.undo()}>${words.undo}</button>
@@ -596,6 +636,14 @@ export class Bench extends LitElement {
       <button class="plain" @click=${() => this.#openPanel({ panel: 'write', text: '' })}>${words.writeNotes}</button>`;
   }
 
+  /** How the pile stands. */
+  #standing({ view, snapshot, kind }: Desk): TemplateResult {
+    return html`<div class="pile">
+      <ken-band .tally=${view?.tally} .kind=${kind}></ken-band>
+      <ken-outlook .outlook=${snapshot?.outlook} ?open=${snapshot?.question !== undefined}></ken-outlook>
+    </div>`;
+  }
+
   #welcome(): TemplateResult {
     if (!this.desk && localStorage.getItem(HAS_PILE)) return html`<main class="failure"><p>${words.opening}</p></main>`;
     return html`<ken-welcome .loading=${this.demoLoading} ?hasCamera=${hasCamera()} .kits=${this.kits?.others ?? []}>${this.#starterLine()}</ken-welcome>`;
@@ -606,7 +654,16 @@ export class Bench extends LitElement {
     return html`<ken-starter-line .view=${this.past.view(this.desk?.snapshot)}></ken-starter-line>`;
   }
 
+  /** Offered when the person looks up from the bench anyway. */
+  #comparisonLine(desk: Desk): TemplateResult | typeof nothing {
+    if (!this.#comparison.view(desk).offered) return nothing;
+    return html`<p class="offer">
+      ${words.compareOffer} <button class="plain" @click=${() => this.#compare()}>${words.compare}</button>
+    </p>`;
+  }
+
   #bench(desk: Desk): TemplateResult {
+    const strip = desk.stripInHand;
     return html`<main>
       <div class="hand">
         <ken-question
@@ -620,11 +677,16 @@ export class Bench extends LitElement {
           .given=${desk.given}
           .status=${desk.handStatus}
           ?outOfTurn=${desk.outOfTurn}
+          .strip=${strip}
+          .stripItems=${strip?.items.flatMap((item) => desk.items[item] ?? []) ?? []}
+          .stripOut=${strip?.out ?? NONE}
+          .stripInstead=${desk.stripInstead}
+          ?busy=${strip?.ready === false}
         ></ken-question>
         <p class="said" aria-hidden="true">${desk.said}</p>
       </div>
       <div class="side">
-        ${this.#starterLine()}
+        ${this.#starterLine()} ${this.#comparisonLine(desk)}
         <ken-trust-line .known=${this.trust?.line()} .check=${desk.snapshot?.check}></ken-trust-line>
         <ken-shelves
           .view=${desk.view}
@@ -682,6 +744,8 @@ export class Bench extends LitElement {
           ?singleKeys=${this.singleKeys}
         ></ken-spot-check>`;
       }
+      case 'compare':
+        return html`<ken-comparison class="panel" .view=${this.#comparison.view(desk)}></ken-comparison>`;
       case 'other-kind': {
         const { coming } = opened;
         return html`<ken-other-kind

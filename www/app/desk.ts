@@ -15,8 +15,11 @@ import {
   type Source,
   Status,
 } from '../kit/client';
-import { asideOf, type BenchView, changedAnswer, layOut, moved, plausibleOf } from './view';
+import { StripInHand } from './strip-in-hand';
+import { asideOf, type BenchView, changedAnswers, layOut, moved, plausibleOf } from './view';
 import { words } from './words';
+
+const STRIPS = 'strips';
 
 /** What lies on the bench: the pile, the item in hand, and what has to be said. */
 export class Desk {
@@ -26,6 +29,13 @@ export class Desk {
   view: BenchView | undefined;
   /** The item in hand. It stays there until it is answered, whatever arrives meanwhile. */
   hand: number | undefined;
+  /** Look-alikes to be confirmed at one go, in the place of the question. An item that the person takes lies on top of them. */
+  strip: StripInHand | undefined;
+  #stripsOn = localStorage.getItem(STRIPS) !== 'off';
+  /** Whether the person asked for a strip before its time. */
+  #stripWanted = false;
+  /** What was taken out of a strip: it is asked about next. */
+  #takenOut: number[] = [];
   ranking: Ranked[] = [];
   movedItems: ReadonlySet<number> = new Set();
   progress: Progress | undefined;
@@ -111,7 +121,18 @@ export class Desk {
     return this.hand === undefined || !this.snapshot ? Aside.not : asideOf(this.snapshot.verdicts, this.hand);
   }
 
+  /** The strip, unless an item lies on top of it. */
+  get stripInHand(): StripInHand | undefined {
+    return this.hand === undefined ? this.strip : undefined;
+  }
+
+  /** How many look-alikes could be confirmed at one go instead of the question in hand. */
+  get stripInstead(): number {
+    return this.outOfTurn ? 0 : (this.snapshot?.strip?.items.length ?? 0);
+  }
+
   get outOfTurn(): boolean {
+    if (this.strip) return this.#held === 'person' && this.hand !== undefined;
     return this.#held === 'person' && this.snapshot?.question !== undefined && this.snapshot.question !== this.hand;
   }
 
@@ -125,6 +146,11 @@ export class Desk {
 
   complain(problem: string): void {
     if (!this.problems.includes(problem)) this.problems = [...this.problems, problem];
+    this.#redraw();
+  }
+
+  say(said: string): void {
+    this.said = said;
     this.#redraw();
   }
 
@@ -172,51 +198,87 @@ export class Desk {
     void this.#show(undefined);
   }
 
+  /** Lays out a strip at once, and others when their time has come; or single questions only from now on. */
+  async offerStrips(on: boolean): Promise<void> {
+    this.#stripsOn = on;
+    localStorage.setItem(STRIPS, on ? 'on' : 'off');
+    this.strip = undefined;
+    this.hand = undefined;
+    this.#stripWanted = on;
+    await this.#show(undefined);
+    this.#stripWanted = false;
+  }
+
+  /** Takes an item out of the strip, or back into it. */
+  toggle(item: number): void {
+    this.strip?.toggle(item);
+    this.#redraw();
+  }
+
+  /** Puts what stays in the strip into its tray, another or a new one. What was taken out is asked about next. */
+  async answerStrip(to: number | string | undefined = this.strip?.tray): Promise<void> {
+    const strip = this.stripInHand;
+    if (!strip?.ready || to === undefined) return;
+    const items = strip.staying;
+    this.#takenOut = [...strip.out];
+    if (items.length === 0) {
+      this.strip = undefined;
+      this.said = words.stripLeft;
+      return this.#show(undefined);
+    }
+    const name = typeof to === 'string' ? to : this.trayName(to);
+    const action: Action = typeof to === 'string' ? { do: 'answer-all-new', items, name: to } : { do: 'answer-all', items, tray: to };
+    const problem = await this.#act(action, items, words.placedAll(this.kind, items.length, name));
+    if (problem !== undefined) this.#takenOut = [];
+  }
+
   /** Answers for an item: the one in hand unless another is named. Then the next question comes. */
   async answer(tray: number, item = this.hand): Promise<void> {
-    if (item === undefined) return;
-    await this.#act({ do: 'answer', item, tray }, item, words.placed(this.trayName(tray)));
+    if (item === undefined) return this.answerStrip(tray);
+    await this.#act({ do: 'answer', item, tray }, [item], words.placed(this.trayName(tray)));
   }
 
   /** The person looked at a doubted answer again. */
   async settleDoubt(item: number, tray: number): Promise<void> {
-    await this.#act({ do: 'settle-doubt', item, tray }, undefined, words.placed(this.trayName(tray)));
+    await this.#act({ do: 'settle-doubt', item, tray }, [], words.placed(this.trayName(tray)));
   }
 
   async answerNew(name: string): Promise<void> {
-    if (this.hand !== undefined) await this.#act({ do: 'answer-new', item: this.hand, name }, this.hand, words.placed(name));
+    const item = this.hand;
+    if (item === undefined) return this.answerStrip(name);
+    await this.#act({ do: 'answer-new', item, name }, [item], words.placed(name));
   }
 
   async none(item = this.hand): Promise<void> {
-    if (item !== undefined) await this.#act({ do: 'none', item }, item, words.placedAside);
+    if (item !== undefined) await this.#act({ do: 'none', item }, [item], words.placedAside);
   }
 
   async skip(item = this.hand): Promise<void> {
-    if (item !== undefined) await this.#act({ do: 'skip', item }, item, words.placedSkip);
+    if (item !== undefined) await this.#act({ do: 'skip', item }, [item], words.placedSkip);
   }
 
   async withdraw(): Promise<void> {
     const item = this.hand;
     if (item === undefined) return;
-    await this.#act({ do: 'withdraw', item }, undefined, words.withdrawn);
+    await this.#act({ do: 'withdraw', item }, [], words.withdrawn);
   }
 
   async removeItem(item = this.hand): Promise<void> {
     if (item === undefined) return;
-    await this.#act({ do: 'remove-item', item }, item, words.takenOut(this.items[item]?.name ?? ''));
+    await this.#act({ do: 'remove-item', item }, [item], words.takenOut(this.items[item]?.name ?? ''));
   }
 
   async renameTray(tray: number, name: string): Promise<string | undefined> {
-    return this.#act({ do: 'rename-tray', tray, name }, undefined, words.trayRenamed(name));
+    return this.#act({ do: 'rename-tray', tray, name }, [], words.trayRenamed(name));
   }
 
   async mergeTrays(from: number, into: number): Promise<string | undefined> {
     const said = words.trayMerged(this.trayName(from), this.trayName(into));
-    return this.#act({ do: 'merge-trays', from, into }, undefined, said);
+    return this.#act({ do: 'merge-trays', from, into }, [], said);
   }
 
   async removeTray(tray: number): Promise<string | undefined> {
-    return this.#act({ do: 'remove-tray', tray }, undefined, words.trayRemoved(this.trayName(tray)));
+    return this.#act({ do: 'remove-tray', tray }, [], words.trayRemoved(this.trayName(tray)));
   }
 
   async undo(): Promise<void> {
@@ -232,6 +294,8 @@ export class Desk {
     this.progress = undefined;
     this.problems = [];
     this.hand = undefined;
+    this.strip = undefined;
+    this.#takenOut = [];
     this.said = '';
     this.#long = 0;
     await this.#show(undefined);
@@ -260,8 +324,8 @@ export class Desk {
     return turn;
   }
 
-  /** `settled`: the item that has had its answer with this. Resolves to what went wrong, if so. */
-  #act(action: Action, settled: number | undefined, said: string): Promise<string | undefined> {
+  /** `settled`: the items that have had their answer with this. Resolves to what went wrong, if so. */
+  #act(action: Action, settled: readonly number[], said: string): Promise<string | undefined> {
     const start = performance.now();
     return this.#inTurn(async () => {
       this.#acting = true;
@@ -276,7 +340,8 @@ export class Desk {
       const after = this.client.snapshot;
       const others = after ? moved(this.snapshot, after, settled) : new Set<number>();
       this.said = `${said} ${words.moved(others.size)}`;
-      if (settled !== undefined && settled === this.hand) this.hand = undefined;
+      if (this.hand !== undefined && settled.includes(this.hand)) this.hand = undefined;
+      if (action.do === 'answer-all' || action.do === 'answer-all-new') this.strip = undefined;
       await this.#show(others);
       performance.measure('answer to sorted pile', { start, end: performance.now() });
       return undefined;
@@ -290,15 +355,21 @@ export class Desk {
       const kind = await this.client.act({ do: way }).finally(() => (this.#acting = false));
       const after = this.client.snapshot;
       if (kind === undefined || !before || !after) return;
-      const item = changedAnswer(before, after);
-      if (way === 'undo' && item !== undefined && after.verdicts.status[item] !== Status.removed) {
+      const changed = changedAnswers(before, after);
+      const [item] = changed;
+      this.#takenOut = [];
+      const tray = item === undefined ? undefined : before.verdicts.tray[item];
+      if (way === 'undo' && kind === 'answer' && changed.length > 1 && tray !== undefined && this.#stripsOn) {
+        this.strip = new StripInHand({ tray, items: changed }, this.#redraw);
+        this.hand = undefined;
+      } else if (way === 'undo' && item !== undefined && after.verdicts.status[item] !== Status.removed) {
         this.hand = item;
         this.#held = 'person';
-      } else if (way === 'redo' && item === this.hand) {
+      } else if (way === 'redo' && this.hand !== undefined && changed.includes(this.hand)) {
         this.hand = undefined;
       }
       this.said = way === 'undo' ? words.undid(kind) : words.redid(kind);
-      await this.#show(moved(before, after, undefined));
+      await this.#show(moved(before, after, []));
     });
   }
 
@@ -306,10 +377,8 @@ export class Desk {
   async #show(others: Set<number> | undefined): Promise<void> {
     const snapshot = this.client.snapshot;
     if (this.hand !== undefined && (!snapshot || snapshot.verdicts.status[this.hand] === Status.removed)) this.hand = undefined;
-    if (this.hand === undefined) {
-      this.hand = snapshot?.question;
-      this.#held = 'question';
-    }
+    if (this.strip && !(snapshot && this.strip.keepOpen(snapshot))) this.strip = undefined;
+    if (this.hand === undefined && !this.strip) this.#ask(snapshot);
     const hand = this.hand;
     const ranking = snapshot && hand !== undefined && snapshot.trays.length > 0 ? await this.client.ranking(hand).catch(() => []) : [];
     if (snapshot !== this.client.snapshot && others === undefined) return;
@@ -318,6 +387,15 @@ export class Desk {
     this.view = snapshot && layOut(snapshot, this.items);
     if (others) this.movedItems = others;
     this.#redraw();
+  }
+
+  /** What was taken out of a strip comes first, then a strip, if one is offered and wanted, else the question. */
+  #ask(snapshot: Snapshot | undefined): void {
+    this.#held = 'question';
+    this.#takenOut = this.#takenOut.filter((item) => snapshot?.verdicts.status[item] === Status.sorted);
+    const strip = this.#stripsOn && (snapshot?.strip?.due || this.#stripWanted) ? snapshot?.strip : undefined;
+    if (this.#takenOut.length === 0 && strip) this.strip = new StripInHand(strip, this.#redraw);
+    else this.hand = this.#takenOut[0] ?? snapshot?.question;
   }
 
   #saved(saved: Saved): void {

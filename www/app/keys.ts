@@ -1,6 +1,6 @@
 export type Command =
   | { do: 'tray'; place: number }
-  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' | 'trust' | 'kits' };
+  | { do: 'guess' | 'find' | 'none' | 'skip' | 'undo' | 'redo' | 'zoom' | 'back' | 'remove' | 'help' | 'shelves' | 'past' | 'strips' | 'trust' | 'kits' };
 
 const single: Record<string, Command> = {
   enter: { do: 'guess' },
@@ -9,6 +9,7 @@ const single: Record<string, Command> = {
   n: { do: 'none' },
   c: { do: 'skip' },
   u: { do: 'undo' },
+  s: { do: 'strips' },
   z: { do: 'zoom' },
   q: { do: 'back' },
   p: { do: 'past' },

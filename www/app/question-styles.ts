@@ -92,6 +92,13 @@ export const questionStyles = css`
     inset-inline-end: 14px;
     background: var(--surface);
   }
+  ken-strip {
+    flex: 0 1 auto;
+    min-height: 150px;
+  }
+  ken-strip ~ .rows {
+    min-height: 116px;
+  }
   .rows {
     display: grid;
     grid-template-columns: repeat(auto-fill, minmax(min(165px, 100%), 1fr));

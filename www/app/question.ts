@@ -4,6 +4,9 @@ import { type Item, type NoteItem, type Ranked, Status, type Tray } from '../kit
 import { ITEM_TYPE, tell, trayKey } from './event';
 import { fraction } from './fraction';
 import { questionStyles } from './question-styles';
+import type { StripInHand } from './strip-in-hand';
+import type { StripView } from './strip';
+import './strip';
 import { shared } from './styles';
 import { percent, words } from './words';
 
@@ -26,6 +29,11 @@ export class Question extends LitElement {
     status: { attribute: false },
     given: { attribute: false },
     outOfTurn: { type: Boolean },
+    strip: { attribute: false },
+    stripItems: { attribute: false },
+    stripOut: { attribute: false },
+    stripInstead: { type: Number },
+    busy: { type: Boolean },
     text: { state: true },
     active: { state: true },
   };
@@ -44,6 +52,14 @@ export class Question extends LitElement {
   /** The tray the person put it in. */
   declare given: number | undefined;
   declare outOfTurn: boolean;
+  /** Look-alikes in the place of the item in hand. */
+  declare strip: StripInHand | undefined;
+  declare stripItems: readonly Item[];
+  declare stripOut: ReadonlySet<number>;
+  /** How many look-alikes could come instead of the item in hand. */
+  declare stripInstead: number;
+  /** Whether the strip came so lately that keys don't act on it yet. */
+  declare busy: boolean;
   declare text: string;
   declare active: number;
 
@@ -54,6 +70,10 @@ export class Question extends LitElement {
     this.status = 0;
     this.setAside = 0;
     this.outOfTurn = false;
+    this.stripItems = [];
+    this.stripOut = new Set();
+    this.stripInstead = 0;
+    this.busy = false;
     this.text = '';
     this.active = 0;
   }
@@ -62,6 +82,20 @@ export class Question extends LitElement {
   find(): void {
     this.#field?.focus();
     this.#field?.select();
+  }
+
+  get #stripView(): StripView | null {
+    return this.renderRoot.querySelector('ken-strip');
+  }
+
+  /** The item of the strip that keys are about. */
+  get stripItem(): number | undefined {
+    return this.#stripView?.item;
+  }
+
+  /** Leads the focus into the strip. */
+  enterStrip(): void {
+    this.#stripView?.focus();
   }
 
   #hadFocus = false;
@@ -77,7 +111,7 @@ export class Question extends LitElement {
 
   /** Where the page is too short for everything, the next item would else stay above what was just answered. */
   #show(): void {
-    const mat = this.renderRoot.querySelector('.mat');
+    const mat = this.renderRoot.querySelector('.mat, ken-strip');
     if (!mat) return;
     const { top, bottom, height } = mat.getBoundingClientRect();
     const visible = Math.min(bottom, innerHeight) - Math.max(top, 0);
@@ -102,12 +136,12 @@ export class Question extends LitElement {
 
   /** The next question takes the keys: what was focused belonged to the last one. */
   override updated(changed: PropertyValues<this>): void {
-    if (changed.has('guess') || changed.has('ranking') || this.#isNext(changed)) this.#showGuess();
+    if (changed.has('guess') || changed.has('ranking') || changed.has('busy') || this.#isNext(changed)) this.#showGuess();
     if (!this.#isNext(changed)) return;
     this.#scrollUp();
     if (this.#hadFocus) this.settle();
     // Not for the first item: nothing has been answered yet.
-    if (changed.get('item')) this.#show();
+    if (changed.get('item') ?? changed.get('strip')) this.#show();
   }
 
   /** The guess is never hidden by the scrolling of the trays. */
@@ -122,6 +156,7 @@ export class Question extends LitElement {
   }
 
   #isNext(changed: PropertyValues<this>): boolean {
+    if (changed.has('strip') && this.strip) return true;
     return changed.has('item') && changed.get('item')?.number !== this.item?.number;
   }
 
@@ -175,8 +210,8 @@ export class Question extends LitElement {
   }
 
   override render(): TemplateResult {
-    const { item } = this;
-    if (!item) {
+    const { item, strip } = this;
+    if (!item && !strip) {
       return html`<section aria-labelledby="ask">
         <h2 id="ask" tabindex="-1">${words.nothingToAsk}</h2>
         <p class="soft">${words.nothingToAskHint}</p>
@@ -185,20 +220,7 @@ export class Question extends LitElement {
     const typing = this.text.trim() !== '';
     return html`
       <section aria-labelledby="ask">
-        <header>
-          <h2 id="ask" tabindex="-1">${words.question}</h2>
-          <p class="soft name" title=${item.name}>${item.name}</p>
-        </header>
-        ${'text' in item ? this.#note(item) : html`<div class="mat">
-          <img
-            src=${this.picture ?? nothing}
-            alt=${item.name}
-            draggable="true"
-            @dragstart=${(event: DragEvent) => event.dataTransfer?.setData(ITEM_TYPE, String(item.number))}
-          />
-          <button class="zoom" @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
-        </div>`}
-        ${this.#standing()} ${this.#doubtful()}
+        ${strip ? this.#strip(strip) : item ? this.#inHand(item) : nothing} ${this.#standing()} ${this.#doubtful()}
         ${this.trays.length > 0 && !typing ? this.#rows() : nothing}
         <div class="field">
           <input
@@ -232,7 +254,7 @@ export class Question extends LitElement {
           <button @click=${() => tell(this, 'skip', {})}>${words.cantTell} <kbd class="hint">C</kbd></button>
           ${this.outOfTurn
             ? html`<button class="plain" @click=${() => tell(this, 'back', {})}>${words.backToQuestion} <kbd class="hint">Q</kbd></button>`
-            : nothing}
+            : this.#otherWay()}
         </div>
       </section>
     `;
@@ -247,6 +269,43 @@ export class Question extends LitElement {
         <button @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
       </div>
     </div>`;
+  }
+
+  #inHand(item: Item): TemplateResult {
+    return html`<header>
+        <h2 id="ask" tabindex="-1">${words.question}</h2>
+        <p class="soft name" title=${item.name}>${item.name}</p>
+      </header>
+      ${'text' in item
+        ? this.#note(item)
+        : html`<div class="mat">
+        <img
+          src=${this.picture ?? nothing}
+          alt=${item.name}
+          draggable="true"
+          @dragstart=${(event: DragEvent) => event.dataTransfer?.setData(ITEM_TYPE, String(item.number))}
+        />
+        <button class="zoom" @click=${() => tell(this, 'zoom', {})}>${words.zoom} <kbd class="hint">Z</kbd></button>
+      </div>`}`;
+  }
+
+  #strip(strip: StripInHand): TemplateResult {
+    const name = this.trays.find(({ tray }) => tray === strip.tray)?.name ?? '';
+    const items = this.stripItems.length;
+    const kind = this.stripItems.some((item) => 'text' in item) ? 'notes' : 'photos';
+    return html`<header>
+        <h2 id="ask" tabindex="-1">${words.stripQuestion(name)}</h2>
+        <p class="soft name count">${words.stripCount(kind, items - this.stripOut.size, this.stripOut.size)}</p>
+      </header>
+      <p class="soft hint-line">${words.stripHint}</p>
+      <ken-strip .items=${this.stripItems} .out=${this.stripOut} label=${words.strip(kind, items, name)} aria-busy=${this.busy ? 'true' : 'false'}></ken-strip>`;
+  }
+
+  /** From single questions to strips and back. */
+  #otherWay(): TemplateResult | typeof nothing {
+    const text = this.strip ? words.oneAtATime : this.stripInstead > 0 ? words.together(this.stripInstead) : undefined;
+    if (text === undefined) return nothing;
+    return html`<button class="plain" @click=${() => tell(this, 'strips', {})}>${text} <kbd class="hint">S</kbd></button>`;
   }
 
   #standing(): TemplateResult | typeof nothing {
@@ -279,8 +338,8 @@ export class Question extends LitElement {
         this.trays,
         ({ tray }) => tray,
         ({ tray, name }, place) => {
-          const share = this.guess === undefined ? undefined : probability.get(tray);
-          const guessed = tray === this.guess;
+          const share = this.strip || this.guess === undefined ? undefined : probability.get(tray);
+          const guessed = tray === (this.strip?.tray ?? this.guess);
           const plausible = !guessed && (this.plausible?.includes(tray) ?? false);
           const key = trayKey(place);
           return html`<li>
@@ -295,13 +354,17 @@ export class Question extends LitElement {
               ${key ? html`<kbd>${key}</kbd>` : html`<span class="no-key"></span>`}
               <span class="label">${name}</span>
               ${share === undefined ? nothing : html`<span class="figure">${percent(share)}</span>`}
-              ${guessed ? html`<span class="guess">${words.guess} <kbd class="hint">Enter</kbd></span>` : nothing}
+              ${guessed ? html`<span class="guess">${this.#guessed()} <kbd class="hint">Enter</kbd></span>` : nothing}
               ${plausible ? html`<span class="guess">${words.plausible}</span>` : nothing}
             </button>
           </li>`;
         },
       )}
     </ul>`;
+  }
+
+  #guessed(): string {
+    return this.strip ? words.stripGuess(this.stripItems.length - this.stripOut.size) : words.guess;
   }
 
   #found(): TemplateResult[] {

@@ -10,7 +10,7 @@ const IN_LABEL = 120;
 const IN_HAND = 1500;
 
 /** The beginning of a text, in one line. */
-function excerpt(text: string, characters: number): string {
+export function excerpt(text: string, characters: number): string {
   const cut = text.slice(0, characters + 1).trim().replace(/\s+/g, ' ');
   return text.trim().length > characters ? `${cut.slice(0, characters).trimEnd()} …` : cut;
 }

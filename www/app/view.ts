@@ -98,23 +98,24 @@ function placeOf(verdicts: Verdicts, item: number): number | 'aside' | undefined
 }
 
 /** Items other than `except` that the sorter put elsewhere than before. */
-export function moved(before: Snapshot | undefined, after: Snapshot, except: number | undefined): Set<number> {
+export function moved(before: Snapshot | undefined, after: Snapshot, except: readonly number[]): Set<number> {
   const result = new Set<number>();
   if (!before) return result;
   const length = Math.min(before.verdicts.tray.length, after.verdicts.tray.length);
   for (let item = 0; item < length; item++) {
-    if (item !== except && placeOf(before.verdicts, item) !== placeOf(after.verdicts, item)) result.add(item);
+    if (!except.includes(item) && placeOf(before.verdicts, item) !== placeOf(after.verdicts, item)) result.add(item);
   }
   return result;
 }
 
-/** The first item whose answer differs, so that undo can show what it undid. */
-export function changedAnswer(before: Snapshot, after: Snapshot): number | undefined {
+/** The items whose answer differs, so that undo can show what it undid. */
+export function changedAnswers(before: Snapshot, after: Snapshot): number[] {
+  const changed: number[] = [];
   const a = before.verdicts;
   const b = after.verdicts;
   for (let item = 0; item < Math.min(a.status.length, b.status.length); item++) {
     const differs = a.status[item] !== b.status[item];
-    if (differs || (b.status[item] === Status.answered && a.tray[item] !== b.tray[item])) return item;
+    if (differs || (b.status[item] === Status.answered && a.tray[item] !== b.tray[item])) changed.push(item);
   }
-  return undefined;
+  return changed;
 }

@@ -7,6 +7,15 @@ const share = new Intl.NumberFormat('en', { style: 'percent', maximumFractionDig
 export const count = (n: number): string => whole.format(n);
 export const percent = (fraction: number): string => share.format(fraction);
 
+/** As few digits as an estimate has a right to. */
+function about(n: number): string {
+  return count(n < 20 ? Math.round(n) : Number(n.toPrecision(n < 100 ? 1 : 2)) || 0);
+}
+
+function percentRange(low: number, high: number): string {
+  return `${percent(low).replace(/\s?%$/, '')}–${percent(high)}`;
+}
+
 function photos(n: number): string {
   return n === 1 ? '1 photo' : `${count(n)} photos`;
 }
@@ -108,6 +117,18 @@ export const words = {
   nothingToAskHint: 'Look along the front edges of the shelves. Then take the result.',
   choices: 'Trays',
 
+  // Strips of look-alikes
+  stripQuestion: (tray: string) => `All in ${tray}?`,
+  stripHint: 'Look at each, and take out what belongs elsewhere.',
+  strip: (kind: Kind, n: number, tray: string) => `${items(n, kind)} that may all belong in ${tray}`,
+  takeOut: (name: string) => `Take out ${name}`,
+  stripCount: (kind: Kind, staying: number, out: number) => `${items(staying, kind)}${out === 0 ? '' : `, ${count(out)} taken out`}`,
+  stripGuess: (staying: number) => (staying === 0 ? 'all are taken out' : `these ${count(staying)}`),
+  stripNone: 'First lead to one of the strip, with the arrows or a tap: then “none of these” and “can’t tell” are about that one.',
+  stripLeft: 'All taken out. They are asked about next.',
+  oneAtATime: 'One at a time',
+  together: (n: number) => `${count(n)} look-alikes at once`,
+
   // Shelves
   shelves: 'Shelves',
   pile: 'The pile',
@@ -145,6 +166,43 @@ export const words = {
   asideCount: (n: number) => `${count(n)} set aside`,
   bandTitle: items,
 
+  // The outlook
+  outlook: 'Outlook',
+  outlookNow: (expected: number, low: number, high: number) => [`about ${percent(expected)}`, ` of the rest right (${percentRange(low, high)});`] as const,
+  outlookThen: (expected: number) => `ten more answers: about ${percent(expected)}`,
+  outlookTitle: 'Estimated from your answers, for what you have not answered; the range holds the truth in about 95 of 100 piles. Only a spot check can show it.',
+  outlookUnknown: 'How much is sorted right: too little to tell yet.',
+  outlookNone: 'Everything has your answer.',
+
+  // After the fact
+  compare: 'Compare with random order',
+  compareOffer: 'How many answers would it have been in random order?',
+  compareTitle: 'Your answers beside random order',
+  compareWorking: (done: number) => `Replaying the pile in random order: ${percent(done)}`,
+  compareWorkingShort: 'Replaying',
+  compareStopped: 'Stopped. Nothing was changed.',
+  compareAgain: 'Work it out',
+  compareSince: 'Answers were given since; work it out anew to count them.',
+  compareResult: (given: number, random: number) => `You gave ${answers(given)}. In random order it would have been about ${about(random)}.`,
+  compareMore: (given: number, tried: number) => `You gave ${answers(given)}. In random order it would have been more than ${count(tried)}.`,
+  compareRange: (least: number | undefined, most: number | undefined, tried: number) =>
+    least === undefined
+      ? ''
+      : most === undefined
+        ? `It may have been as few as ${about(least)}, or more than ${count(tried)}.`
+        : `It may have been ${about(least)} to ${about(most)}.`,
+  compareNoGain: 'So the order of the questions made no difference here.',
+  compareHow: [
+    'An estimate, since nobody knows the truth of this pile: several possible truths are drawn from what the sorter believes, and in each the same sorter is given answers in random order until it is right about as much as after yours.',
+    'Both lines show what share is expected to be right of what has no answer.',
+  ],
+  compareOwn: 'your answers',
+  compareRandom: 'random order',
+  compareAnswers: 'Answers',
+  compareRight: 'Right, of the rest',
+  compareFigures: 'The figures',
+  compareTooLittle: 'There is too little to tell yet: it takes answers in two trays, and something without an answer.',
+
   // Top
   undo: 'Undo',
   redo: 'Redo',
@@ -154,6 +212,7 @@ export const words = {
 
   // What happened
   placed: (tray: string) => `Placed in ${tray}.`,
+  placedAll: (kind: Kind, n: number, tray: string) => `${items(n, kind)} placed in ${tray}.`,
   placedAside: 'Set aside.',
   placedSkip: 'Left open.',
   withdrawn: 'Answer taken back.',
@@ -508,6 +567,7 @@ export const words = {
     'Add photos or notes. They are read on this device.',
     'Say for the item in hand which tray it belongs in: press its number, or name a new tray.',
     'The pile sorts itself after every answer. Sure ones stand at the back of a shelf, unsure ones come forward to the edge.',
+    'Sometimes a strip of look-alikes comes instead: take out what does not belong (arrows and Space, or a tap), then Enter for the rest.',
     'See one in the wrong place? Click it and answer, or drag it onto the right shelf.',
     'How sure is it? See what gets confused, settle doubts, and look at a random sample to sign for the rest.',
     'Good enough? Take the result: a table with one line an item.',
@@ -522,6 +582,8 @@ export const words = {
     ['C', 'can’t tell: ask me another'],
     ['U', 'undo (also Ctrl Z or ⌘ Z)'],
     ['Shift U', 'redo (also Ctrl Y or Shift ⌘ Z)'],
+    ['S', 'look-alikes at once, or one at a time'],
+    ['Space', 'in a strip: take it out, or back in'],
     ['Z', 'zoom'],
     ['Arrows', 'between items on the shelves; a tray’s number answers the item, Enter takes it in hand'],
     ['Delete', 'take the item out of the pile'],

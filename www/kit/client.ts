@@ -1,17 +1,19 @@
 import * as Comlink from 'comlink';
 import { deleteDB } from 'idb';
-import { type Kind, kindOf } from './core';
+import { type Hindsight, type Kind, kindOf } from './core';
 import { KenspeckleError } from './error';
 import { type Arrival, Intake, type NoteArrival, type NoteSource, type PhotoArrival, type Progress, type Source } from './intake';
 import type { Fetched, NoteInFile } from './notes';
 import { Readers } from './readers';
-import type { FinishedPile } from './past';
+import { hindsightOf } from './hindsight';
+import type { FinishedPile, Watched } from './past';
 import type { Saved } from './saver';
 import type { NoteFile, NoteRow } from './store';
 import type { Judgement, SpotCheckPlan, Terms } from './core';
 import { type Action, Aside, type Ranked, type Snapshot, type SortApi, Status, type Trust } from './sort-worker';
 
 export { type Kind, kindOf } from './core';
+export type { Hindsight, HindsightPoint, Outlook, ShareRange, Strip } from './core';
 export { KenspeckleError, codeOf, messageOf } from './error';
 export { type Kit, Kits } from './kits';
 export type { Fetched, HandBack, NoteInFile, TableHead } from './notes';
@@ -231,6 +233,14 @@ export class PileClient extends EventTarget {
   /** The pile as `PastPiles.teach` takes it: the person's answers, not the sorter's guesses. */
   async finished(): Promise<FinishedPile> {
     return this.#sort.finished();
+  }
+
+  /**
+   * How many answers in random order would have brought as much as the person's. Works in a worker of its own. Throws
+   * "too-little-to-tell".
+   */
+  async hindsight(watched: Watched = {}): Promise<Hindsight> {
+    return hindsightOf(await this.#sort.copy(), await this.#readers.module, watched);
   }
 
   /** The identities of the encoders this page has: what starters must be for. Loads that for photos. */

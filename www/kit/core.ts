@@ -3,7 +3,7 @@ import { KenspeckleError, messageOf } from './error';
 
 export { NoteEncoder, PastPiles, PhotoEncoder, readNoteTable, Sorter, SpotCheck, Starter } from './wasm/kenspeckle.js';
 export type { Assessment, Doubt, Interval, Judgement, LearningCurve, PlausibleSets, Projection, Sampled, Share, SpotCheckPlan, Statement, Terms } from './wasm/kenspeckle.js';
-export type { NoteTable } from './wasm/kenspeckle.js';
+export type { Hindsight, HindsightPoint, NoteTable, Outlook, ShareRange, Strip } from './wasm/kenspeckle.js';
 
 /** Where the heavy files are. All can be served from anywhere on the page's own origin. */
 export interface Assets {

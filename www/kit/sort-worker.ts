@@ -5,12 +5,14 @@ import {
   type Assessment,
   type Doubt,
   type Judgement,
+  type Outlook,
   type PlausibleSets,
   type Projection,
   Sorter,
   type SpotCheckPlan,
   Starter,
   startCore,
+  type Strip,
   type Terms,
 } from './core';
 import type { EncoderFacts } from './encode-worker';
@@ -77,6 +79,10 @@ export interface Snapshot {
   verdicts: Verdicts;
   /** The item that the sorter asks about; `undefined`: nothing left to ask. */
   question: number | undefined;
+  /** Look-alikes that could all be confirmed at one go instead. */
+  strip: Strip | undefined;
+  /** How much of what has no answer is sorted right; `undefined`: too little to tell, or nothing left. */
+  outlook: Outlook | undefined;
   canUndo: boolean;
   canRedo: boolean;
   starter: PileStarter | undefined;
@@ -88,12 +94,22 @@ export interface Snapshot {
 export type Action =
   | { do: 'answer' | 'settle-doubt'; item: number; tray: number }
   | { do: 'answer-new'; item: number; name: string }
+  | { do: 'answer-all'; items: readonly number[]; tray: number }
+  | { do: 'answer-all-new'; items: readonly number[]; name: string }
   | { do: 'none' | 'skip' | 'withdraw' | 'remove-item'; item: number }
   | { do: 'add-tray'; name: string }
   | { do: 'rename-tray'; tray: number; name: string }
   | { do: 'merge-trays'; from: number; into: number }
   | { do: 'remove-tray'; tray: number }
   | { do: 'undo' | 'redo' };
+
+/** The pile without pictures, for another worker. */
+export interface PileCopy {
+  state: string;
+  embeddings: Float32Array<ArrayBuffer>;
+  /** The starter's file, if the pile starts from it. */
+  starter: Uint8Array<ArrayBuffer> | undefined;
+}
 
 export interface Ranked {
   tray: number;
@@ -151,6 +167,8 @@ function snapshot(): Snapshot {
     trays: pileNow.trays() as Tray[],
     verdicts,
     question: pileNow.nextQuestion(),
+    strip: pileNow.bestStrip(),
+    outlook: pileNow.outlook(),
     canUndo: pileNow.canUndo,
     canRedo: pileNow.canRedo,
     starter: starter && {
@@ -228,6 +246,10 @@ function apply(action: Action): string | undefined {
       return void to.settleDoubt(action.item, action.tray);
     case 'answer-new':
       return void to.answerNew(action.item, action.name);
+    case 'answer-all':
+      return void to.answerAll(Uint32Array.from(action.items), action.tray);
+    case 'answer-all-new':
+      return void to.answerAllNew(Uint32Array.from(action.items), action.name);
     case 'none':
       return void to.answerNone(action.item);
     case 'skip':
@@ -432,6 +454,16 @@ const api = {
     checking.giveUp(pile());
     save([]);
     return snapshot();
+  },
+
+  /** A copy of the pile as it is now. */
+  async copy(): Promise<PileCopy> {
+    const now = pile();
+    const state = now.state();
+    const file = now.starter === undefined ? undefined : starter?.file;
+    const known = (now.verdicts() as Verdicts).status.length;
+    const embedded = joined((await embeddings()).slice(0, known));
+    return Comlink.transfer({ state, embeddings: embedded, starter: file }, [embedded.buffer]);
   },
 
   ranking(item: number): Ranked[] {
