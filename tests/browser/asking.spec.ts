@@ -98,7 +98,7 @@ test('a strip: another tray, none of these and can’t tell for one of it, and b
 
   // Without an item of the strip they say how to lead to one.
   await page.keyboard.press('n');
-  await expect(page.locator('.said')).toContainText('First lead to a photo');
+  await expect(page.locator('.said')).toContainText('First lead to one of the strip');
 
   await page.keyboard.press('ArrowRight');
   await page.keyboard.press('n');
