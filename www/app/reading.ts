@@ -49,6 +49,7 @@ export class Reading extends LitElement {
       return html`<div class="line">
         <progress aria-label=${words.fetchingShort} max=${fetched.total} .value=${fetched.done}></progress>
         <span class="figures">${words.fetching(fetched.done, fetched.total)}</span>
+        <button ?disabled=${this.stopping} @click=${() => tell(this, 'stop', {})}>${words.stop}</button>
       </div>`;
     }
     if (progress.state === 'stopped' && !this.stopping) {

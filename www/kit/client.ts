@@ -209,6 +209,7 @@ export class PileClient extends EventTarget {
   /** Stops reading; what is left can be read later with `goOn`. */
   stop(): void {
     this.#intake.stop();
+    this.#readers.notes.stopFetching();
   }
 
   async goOn(): Promise<void> {

@@ -91,11 +91,11 @@ export async function fetchKept(url: URL, report: (done: number) => void): Promi
 }
 
 async function fetchWatched(url: URL, report: (done: number) => void): Promise<Uint8Array<ArrayBuffer>> {
+  report(0);
   const reader = (await get(url)).body?.getReader();
   const parts: Uint8Array<ArrayBuffer>[] = [];
   let done = 0;
   let reported = 0;
-  report(0);
   for (;;) {
     const part = await reader?.read().catch((error: unknown) => {
       throw new KenspeckleError('asset-missing', `Loading ${url.pathname} broke off: ${messageOf(error)}. Connect, then try again.`);

@@ -209,7 +209,8 @@ export class Intake {
     this.#queue.unshift(...unread);
     this.#running = undefined;
     this.#report();
-    if (fatal !== undefined) throw fatal;
+    // What the person stopped needs no saying.
+    if (fatal !== undefined && codeOf(fatal) !== 'fetch-stopped') throw fatal;
   }
 
   async #read(source: Unread): Promise<Outcome> {
@@ -217,7 +218,7 @@ export class Intake {
       return { source, arrival: await this.#eyes.read(source) };
     } catch (error) {
       const code = codeOf(error);
-      if (code === 'asset-missing' || code === 'encoder-file') return { source, fatal: error };
+      if (code === 'asset-missing' || code === 'encoder-file' || code === 'fetch-stopped') return { source, fatal: error };
       return { source, refused: { name: source.name, code: code ?? 'unexpected', message: messageOf(error) } };
     }
   }

@@ -10,6 +10,8 @@ interface Member {
   worker: Worker;
   api: Comlink.Remote<NoteApi>;
   failed: Promise<never>;
+  /** Makes all that waits for this worker fail. */
+  fail: (reason: KenspeckleError) => void;
   facts: Promise<EncoderFacts> | undefined;
 }
 
@@ -33,6 +35,7 @@ export class NoteReader {
   #module: Promise<WebAssembly.Module> | undefined;
   #member: Promise<Member> | undefined;
   #facts: EncoderFacts | undefined;
+  #fetching: Member | undefined;
 
   /** `module` where the page has compiled it already. */
   constructor(assets: Assets, module?: Promise<WebAssembly.Module>) {
@@ -49,6 +52,14 @@ export class NoteReader {
   /** Fetches and starts the encoder ahead of the first note. Throws "asset-missing" and "encoder-file". */
   async warm(): Promise<EncoderFacts> {
     return this.#encoder(await this.#started());
+  }
+
+  /** Breaks off fetching the encoder, if that is under way: what waits for it fails with "fetch-stopped". A later note begins anew. */
+  stopFetching(): void {
+    const fetching = this.#fetching;
+    if (!fetching) return;
+    this.#end(fetching);
+    fetching.fail(new KenspeckleError('fetch-stopped', 'Fetching the reader for notes was stopped.'));
   }
 
   /** Reads one note; a worker that dies on it is replaced and the note tried once more. */
@@ -135,10 +146,12 @@ export class NoteReader {
     const report = Comlink.proxy((done: number) => {
       if (!this.#facts) this.onFetch({ done, total });
     });
+    this.#fetching = member;
     try {
       this.#facts = await Promise.race([member.api.start(module, textEncoder.href, report), member.failed]);
       return this.#facts;
     } finally {
+      this.#fetching = undefined;
       this.onFetch(undefined);
     }
   }
@@ -155,11 +168,13 @@ export class NoteReader {
     const module = await this.#module;
     const worker = new Worker(new URL('./note-worker.ts', import.meta.url), { type: 'module' });
     const api = Comlink.wrap<NoteApi>(worker);
+    let fail: Member['fail'] = () => undefined;
     const failed = new Promise<never>((_, reject) => {
+      fail = reject;
       worker.addEventListener('error', (event) => reject(new Error(event.message)));
     });
     failed.catch(() => undefined);
     await Promise.race([api.startReading(module), failed]);
-    return { worker, api, failed, facts: undefined };
+    return { worker, api, failed, fail, facts: undefined };
   }
 }
