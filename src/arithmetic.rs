@@ -131,6 +131,32 @@ impl Cholesky {
         Some(Self(a))
     }
 
+    /// B A⁻¹ Bᵀ, symmetric, for B with as many columns as A has. Cost O(rows n² / 2 + rows² n / 2).
+    pub fn congruent(&self, b: &Array2<f64>) -> Array2<f64> {
+        let n = self.0.nrows();
+        let rows = b.nrows();
+        // Every row x of B becomes L⁻¹ x.
+        let mut half = b.as_standard_layout().into_owned();
+        for mut row in half.outer_iter_mut() {
+            let row = row.as_slice_mut().expect("standard layout");
+            for i in 0..n {
+                let factors = self.0.row(i);
+                let factors = factors.as_slice().expect("standard layout");
+                row[i] = (row[i] - dot64(&row[..i], &factors[..i])) / factors[i];
+            }
+        }
+        let half = half.view();
+        let mut product = Array2::zeros((rows, rows));
+        for i in 0..rows {
+            for j in 0..=i {
+                let value = dot64(self::row(&half, i), self::row(&half, j));
+                product[[i, j]] = value;
+                product[[j, i]] = value;
+            }
+        }
+        product
+    }
+
     /// Solves A x = b for every column of `b`. Cost O(n²) a column.
     pub fn solve(&self, b: &Array2<f64>) -> Array2<f64> {
         let n = self.0.nrows();

@@ -17,11 +17,12 @@ use serde::{Deserialize, Serialize};
 pub use auto::Auto;
 pub use calibrate::{calibrate, log_loss};
 pub use gradient::{Descent, Gradient, Groups, Step};
-pub(crate) use gradient::{Start, errors, kernels};
+pub(crate) use gradient::{Start, centred, errors, kernels, middle};
+use prototype::Decided;
 pub use prototype::Prototype;
 pub use ridge::Ridge;
 
-use crate::{head::Head, prior::Prior, support::Support};
+use crate::{arithmetic::Cholesky, head::Head, prior::Prior, support::Support};
 
 /// Up to this many examples, or two of each category, every one is judged by leaving it out.
 pub const JUDGED_LIMIT: usize = 200;
@@ -162,19 +163,34 @@ fn with_shares(learned: Learned, support: &Support, trust: f64) -> Learned {
     Learned { head: head.shifted(&log_shares), left_out }
 }
 
+/// Factors a matrix that is positive definite but for the rounding of f32 products.
+fn positive_definite(matrix: Array2<f64>) -> Cholesky {
+    let largest = matrix.diag().iter().copied().fold(1e-30, f64::max);
+    let mut lift = 0.0;
+    loop {
+        let mut lifted = matrix.clone();
+        lifted.diag_mut().mapv_inplace(|x| x + lift);
+        if let Some(factor) = Cholesky::new(lifted) {
+            return factor;
+        }
+        // Finite numbers: a lift above the rounding error must come, and soon.
+        lift = if lift == 0.0 { 1e-7 * largest } else { 10.0 * lift };
+    }
+}
+
 /// What leave-one-out decided about a learner: enough to fit it to more examples without judging again.
 #[derive(Debug, Clone)]
 enum Recipe {
-    Prototype { factor: f64 },
+    Prototype { decided: Decided, factor: f64 },
     Ridge { strength: f64, factor: f64 },
     Gradient { head: Head },
 }
 
 impl Recipe {
     fn prototype(prior: &Prior, support: &Support) -> (Learned, Self) {
-        let learned = prior.prototype().learn(support);
+        let (learned, decided) = Prototype::learn_chosen(prior, support);
         let (learned, factor) = calibrate(learned, support, prior.prototype_factor(support));
-        (learned, Self::Prototype { factor })
+        (learned, Self::Prototype { decided, factor })
     }
 
     fn ridge(prior: &Prior, support: &Support) -> (Learned, Self) {
@@ -192,7 +208,7 @@ impl Recipe {
     /// The same with logits multiplied by `by`.
     fn scaled(self, by: f64) -> Self {
         match self {
-            Self::Prototype { factor } => Self::Prototype { factor: factor * by },
+            Self::Prototype { decided, factor } => Self::Prototype { decided, factor: factor * by },
             Self::Ridge { strength, factor } => Self::Ridge { strength, factor: factor * by },
             Self::Gradient { head } => Self::Gradient { head: head.scaled(by) },
         }
@@ -201,10 +217,11 @@ impl Recipe {
     /// Fits to all examples what was decided on a part of them.
     fn fit(self, prior: &Prior, part: &Support, support: &Support) -> Head {
         match self {
-            Self::Prototype { factor } => {
+            Self::Prototype { decided: Decided { regularisation, variance }, factor } => {
                 // Distances shrink as prototypes become means of more examples.
                 let growth = prior.prototype_factor(support) / prior.prototype_factor(part);
-                prior.prototype().fit(support).scaled(factor * growth)
+                let prototype = Prototype { regularisation, ..prior.prototype(support) };
+                prototype.fit_with(support, variance).scaled(factor * growth)
             }
             Self::Ridge { strength, factor } => Ridge::fit(support, strength).scaled(factor),
             Self::Gradient { head } => head,

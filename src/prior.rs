@@ -43,6 +43,9 @@ impl ByShot {
 pub struct Prior {
     /// How many examples the common mean counts for when prototypes are drawn toward it (κ ≥ 0).
     pub shrinkage: f64,
+    /// How much of an average direction's scatter within categories prototypes give every direction (ρ > 0), before there is
+    /// evidence.
+    pub regularisation: ByShot,
     /// The ridge learner's strength λ > 0 before there is evidence.
     pub ridge_strength: ByShot,
     /// What the usual factor on squared distances to prototypes is multiplied by.
@@ -66,6 +69,7 @@ impl Default for Prior {
     fn default() -> Self {
         Self {
             shrinkage: 0.0,
+            regularisation: ByShot::even(1.0),
             ridge_strength: ByShot([0.1, 0.1, 0.3, 0.5]),
             prototype_temperature: ByShot::even(1.0),
             ridge_temperature: ByShot::even(1.0),
@@ -82,8 +86,9 @@ impl Default for Prior {
 pub(crate) const TEMPERATURE_SPREAD: f64 = 0.35;
 
 impl Prior {
-    pub(crate) fn prototype(&self) -> Prototype {
-        Prototype { shrinkage: self.shrinkage }
+    /// Nearest prototypes before there is evidence.
+    pub(crate) fn prototype(&self, support: &Support) -> Prototype {
+        Prototype { shrinkage: self.shrinkage, regularisation: self.regularisation.at(support.shot()) }
     }
 
     pub(crate) fn ridge(&self) -> Ridge<'_> {
@@ -96,8 +101,8 @@ impl Prior {
 
     /// The shares of prototype, ridge and gradient in the mix before there is evidence; they add up to 1.
     ///
-    /// Seen from the centre of an even pile, nearest prototypes are best at one example a category; seen from that of an
-    /// uneven one, which lies aside, or with more examples, ridge is.
+    /// With a metric of their own, from two examples a category on, prototypes are best on most piles, and least far behind on
+    /// the others. With one they need the pile's centre, which lies aside where the pile is uneven; ridge stands by.
     pub(crate) fn preference(&self, support: &Support) -> [f64; 3] {
         self.preference_at(support.shot())
     }
@@ -106,8 +111,9 @@ impl Prior {
         if let Some(learned) = &self.preference {
             return learned.each_ref().map(|share| share.at(shot));
         }
-        let gradient = 0.1 * (1.0 - 1.0 / shot);
-        let prototype = 0.1 * (1.0 - 1.0 / shot) + 0.65 * self.centre_known / (shot * shot);
+        let several = 1.0 - 1.0 / shot;
+        let gradient = 0.05 * several;
+        let prototype = (0.75 + 0.1 * self.centre_known) * several + 0.65 * self.centre_known * (1.0 - several);
         [prototype, 1.0 - prototype - gradient, gradient]
     }
 

@@ -94,6 +94,11 @@ impl Support {
 
     /// The sum over examples of `coefficients` (n × C) times embedding, as C × d in f32. Cost O(n C d).
     pub fn combine(&self, coefficients: &Array2<f64>) -> Array2<f32> {
+        self.combine_exactly(coefficients).mapv(|x| x as f32)
+    }
+
+    /// The same in f64.
+    pub(crate) fn combine_exactly(&self, coefficients: &Array2<f64>) -> Array2<f64> {
         let mut sums = Array2::<f64>::zeros((coefficients.ncols(), self.dimension()));
         for (example, row) in coefficients.outer_iter().enumerate() {
             for (&factor, mut sum) in row.iter().zip(sums.outer_iter_mut()) {
@@ -102,7 +107,7 @@ impl Support {
                 }
             }
         }
-        sums.mapv(|x| x as f32)
+        sums
     }
 
     /// n × C coefficients whose combination is every category's mean.

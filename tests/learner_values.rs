@@ -27,6 +27,7 @@ struct Task {
     queries: Vec<Vec<f32>>,
     nearest_centroid: Option<Vec<usize>>,
     prototype: Vec<Vec<f64>>,
+    discriminant: Vec<DiscriminantValues>,
     ridge: Vec<RidgeValues>,
     gradient: Vec<Vec<f64>>,
     gradient_loss: f64,
@@ -42,6 +43,12 @@ struct DescentValues {
     steps: Vec<Vec<f64>>,
     logits: Vec<Vec<f64>>,
     loss: f64,
+}
+
+#[derive(Deserialize)]
+struct DiscriminantValues {
+    penalty: f64,
+    logits: Vec<Vec<f64>>,
 }
 
 #[derive(Deserialize)]
@@ -79,7 +86,7 @@ fn assert_close(name: &str, ours: &Array2<f64>, theirs: &[Vec<f64>], tolerance: 
 fn prototypes_choose_as_scikit_learns_nearest_centroid() {
     let mut compared = 0;
     for task in values().tasks {
-        let head = Prototype { shrinkage: 0.0 }.learn(&task.support()).head;
+        let head = Prototype { shrinkage: 0.0, regularisation: f64::INFINITY }.learn(&task.support()).head;
         let logits = head.logits(rows(&task.queries).view());
         assert_close(&task.name, &logits, &task.prototype, 2e-5);
         let Some(nearest) = task.nearest_centroid else { continue };
@@ -89,6 +96,27 @@ fn prototypes_choose_as_scikit_learns_nearest_centroid() {
         compared += 1;
     }
     assert_eq!(compared, 2);
+}
+
+/// Up to what is the same for all categories: scikit-learn's scores have the log of shares in them.
+#[test]
+fn prototypes_with_a_metric_are_scikit_learns_regularised_discriminants() {
+    let mut compared = 0;
+    for task in values().tasks {
+        for reference in &task.discriminant {
+            let prototype = Prototype { shrinkage: 0.0, regularisation: 1.0 };
+            let head = prototype.learn_at(&task.support(), reference.penalty).head;
+            let level = |logits: &Array2<f64>| logits - &logits.mean_axis(ndarray::Axis(1)).unwrap().insert_axis(ndarray::Axis(1));
+            let expected = Array2::from_shape_fn(
+                (reference.logits.len(), reference.logits[0].len()),
+                |(i, c)| reference.logits[i][c],
+            );
+            let expected: Vec<Vec<f64>> = level(&expected).outer_iter().map(|row| row.to_vec()).collect();
+            assert_close(&task.name, &level(&head.logits(rows(&task.queries).view())), &expected, 5e-5);
+            compared += 1;
+        }
+    }
+    assert_eq!(compared, 6);
 }
 
 #[test]

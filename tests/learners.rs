@@ -57,8 +57,12 @@ proptest! {
     #![proptest_config(ProptestConfig { cases: 96, failure_persistence: None, ..ProptestConfig::default() })]
 
     #[test]
-    fn prototype_leave_one_out_is_the_refit(support in supports(), shrinkage in 0.0_f64..3.0) {
-        check_leave_one_out(&support, |s| Prototype { shrinkage }.learn(s));
+    fn prototype_leave_one_out_is_the_refit(support in supports(), shrinkage in 0.0_f64..3.0, regularisation in 0.05_f64..3.0) {
+        // ν belongs to the whole support set; a refit without one example keeps it.
+        let prototype = Prototype { shrinkage, regularisation };
+        for penalty in [f64::INFINITY, prototype.penalty(&support)] {
+            check_leave_one_out(&support, |s| prototype.learn_at(s, penalty));
+        }
     }
 
     #[test]
@@ -145,6 +149,20 @@ fn ridge_in_every_form_is_the_same_fit() {
             let judged = Ridge::learn_at(&support, strength).head.logits(support.embeddings());
             let alone = Ridge::fit(&support, strength).logits(support.embeddings());
             assert!((&judged - &alone).iter().all(|x| x.abs() < 1e-4), "{n} × {dimension} at {strength}");
+        }
+    }
+}
+
+/// In n × n or in d × d, with leave-one-out or without: the same prototypes, in the same metric.
+#[test]
+fn prototypes_in_every_form_are_the_same_fit() {
+    for (n, dimension) in [(30, 6), (30, 29), (30, 30), (30, 45)] {
+        let support = many(n, dimension);
+        for regularisation in [0.03, 1.0, f64::INFINITY] {
+            let prototype = Prototype { shrinkage: 0.5, regularisation };
+            let judged = prototype.learn(&support).head.logits(support.embeddings());
+            let alone = prototype.fit(&support).logits(support.embeddings());
+            assert!((&judged - &alone).iter().all(|x| x.abs() < 1e-3), "{n} × {dimension} at {regularisation}");
         }
     }
 }

@@ -11,6 +11,7 @@ from pathlib import Path
 import numpy as np
 import sklearn
 from sklearn.datasets import load_digits, load_iris, load_wine
+from sklearn.discriminant_analysis import LinearDiscriminantAnalysis
 from sklearn.linear_model import Ridge
 from sklearn.metrics import log_loss
 from sklearn.neighbors import NearestCentroid
@@ -77,6 +78,17 @@ def prototype(x, y):
     return 2 * means, variance / counts - (means**2).sum(1)
 
 
+def discriminant(x, y, query, regularisation):
+    """Linear discriminants with ν = ρ tr(T)/d, as scikit-learn has them: the shrinkage γ with γ/(1 − γ) = ρ. In units of Q."""
+    d, n = x.shape[1], len(y)
+    gamma = regularisation / (1 + regularisation)
+    means = np.stack([x[y == c].mean(0) for c in range(y.max() + 1)])
+    penalty = regularisation * ((x - means[y]) ** 2).sum() / d
+    model = LinearDiscriminantAnalysis(solver="lsqr", shrinkage=gamma).fit(x, y)
+    # Its covariance is (1 − γ)/n (T + ν I), and its scores are half of ours over that.
+    return {"penalty": penalty, "logits": (model.decision_function(query) * 2 * (1 - gamma) / n * penalty).tolist()}
+
+
 def descent(dimension, seed):
     """Directions in two groups beside the rest, a start scale for each, and steps of different sizes."""
     random = np.random.Generator(np.random.PCG64(seed))
@@ -95,7 +107,10 @@ def groups_of(descent):
 
 
 def gradient(x, y, query, maps, start, sizes):
-    """Full-batch steps down the category-balanced log loss in weight space, from the prototypes under Σ a_g M_g."""
+    """Full-batch steps down the category-balanced log loss in weight space, from the prototypes under Σ a_g M_g.
+
+    Steps see examples from the mean of the categories' means.
+    """
     counts = np.bincount(y)
     categories = len(counts)
     metric = sum(a * m for a, m in zip(start, maps))
@@ -105,13 +120,15 @@ def gradient(x, y, query, maps, start, sizes):
     weights = 2 * TEMPERATURE * means @ metric
     bias = TEMPERATURE * (variance / counts - (means @ metric * means).sum(1))
     share = 1 / (counts[y] * categories)
+    middle = means.mean(0)
     for *by_group, by_bias in sizes:
         logits = x @ weights.T + bias
         p = np.exp(logits - logits.max(1, keepdims=True))
         p /= p.sum(1, keepdims=True)
         error = (p - np.eye(categories)[y]) * share[:, None]
-        weights = weights - error.T @ x @ sum(size * m for size, m in zip(by_group, maps))
-        bias = bias - by_bias * error.sum(0)
+        step = error.T @ (x - middle) @ sum(size * m for size, m in zip(by_group, maps))
+        weights = weights - step
+        bias = bias + step @ middle - by_bias * error.sum(0)
     logits = x @ weights.T + bias
     loss = log_loss(y, np.exp(logits) / np.exp(logits).sum(1, keepdims=True), sample_weight=share)
     return (query @ weights.T + bias).tolist(), loss
@@ -142,6 +159,8 @@ def values():
                 # scikit-learn takes nothing off for uneven counts.
                 "nearest_centroid": NearestCentroid().fit(x, y).predict(query).tolist() if even else None,
                 "prototype": (wide_query @ weights.T + bias).tolist(),
+                # With two categories scikit-learn gives one score; with uneven counts it takes them for shares.
+                "discriminant": [discriminant(wide, y, wide_query, rho) for rho in (0.1, 1, 10)] if even else [],
                 "ridge": [
                     {"penalty": p, "logits": ridge(x, y, query, p).tolist(), "left_out": ridge_left_out(x, y, p)} for p in (0.02, 0.3)
                 ],

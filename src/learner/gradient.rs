@@ -4,19 +4,21 @@
 //! steps down the log loss, in which every category counts the same however uneven the counts. Start and steps come from a
 //! [`Descent`]: weights fall into groups by direction (bands of the directions that a starter damps, and the rest), and
 //! each group has a start scale a_g and a step size α_tg of its own at every step t, the bias one more. With M_g the map onto
-//! group g, the start is the logit −τ Σ_g a_g (z − p_c)ᵀ M_g (z − p_c), and a step is w −= Σ_g α_tg M_g ∂L/∂w.
+//! group g, the start is the logit −τ Σ_g a_g (z − p_c)ᵀ M_g (z − p_c), and a step is w −= Σ_g α_tg M_g ∂L/∂w. Steps see
+//! examples from the mean m of the categories' means: what all of them have in common would make one direction so steep that
+//! steps overshoot, and tells no category from another.
 //!
-//! All of it happens in the span of the examples: with K_g = Z M_g Zᵀ a step changes the logits by −(Σ_g α_tg K_g + β_t) E,
-//! E the weighted errors (n × C), so it costs O(n² C) whatever the dimension. Leave-one-out repeats the steps without each
-//! example, exactly, in O(n³ C T).
+//! All of it happens in the span of the examples: with K_g = (Z − m) M_g (Z − m)ᵀ a step changes the logits by
+//! −(Σ_g α_tg K_g + β_t) E, E the weighted errors (n × C), so it costs O(n² C) whatever the dimension. Leave-one-out repeats
+//! the steps without each example, from the mean without it, exactly, in O(n³ C T).
 //!
 //! Use it where examples are plenty enough for prototypes to be crude and too few for a free fit. MAML: Finn et al. 2017
 //! (arXiv:1703.03400); start at the prototypes: Triantafillou et al. 2020 (arXiv:1903.03096); learned step sizes: Li et al.
 //! 2017 (arXiv:1707.09835), one for each step: Antoniou et al. 2019 (arXiv:1810.09502).
 
-use std::sync::Arc;
+use std::{ops::Range, sync::Arc};
 
-use ndarray::{Array1, Array2, ArrayView2, Axis};
+use ndarray::{Array1, Array2, ArrayView2, ArrayViewMut1, Axis};
 use serde::{Deserialize, Serialize};
 
 use super::{Learned, Learner, LeftOut};
@@ -64,7 +66,7 @@ impl Groups {
         self.ends.is_empty()
     }
 
-    fn ranges(&self) -> impl Iterator<Item = std::ops::Range<usize>> + '_ {
+    fn ranges(&self) -> impl Iterator<Item = Range<usize>> + '_ {
         let starts = std::iter::once(0).chain(self.ends.iter().copied());
         starts.zip(&self.ends).map(|(start, &end)| start..end)
     }
@@ -146,6 +148,19 @@ pub(crate) fn kernels(groups: Option<(&Groups, &Array2<f64>)>, products: &Array2
     kernels
 }
 
+/// What the examples (the first n rows) weigh in the mean of the categories' means, `without` one of them whose category has
+/// others.
+pub(crate) fn middle(labels: &[usize], counts: &[usize], without: Option<usize>) -> Array1<f64> {
+    Array1::from(weights(labels, counts, without))
+}
+
+/// A kernel (N × n, the examples first) as seen from the middle of the examples.
+pub(crate) fn centred(kernel: &Array2<f64>, middle: &Array1<f64>) -> Array2<f64> {
+    let along = kernel.dot(middle);
+    let square: f64 = (0..middle.len()).map(|i| middle[i] * along[i]).sum();
+    Array2::from_shape_fn(kernel.dim(), |(j, i)| kernel[[j, i]] - along[j] - along[i] + square)
+}
+
 /// Σ_g factor_g K_g.
 pub(crate) fn combined(kernels: &[Array2<f64>], factors: &[f64]) -> Array2<f64> {
     let mut sum = &kernels[0] * factors[0];
@@ -220,6 +235,12 @@ impl Start {
     }
 }
 
+/// Adds `values` times a factor to some columns of a row.
+fn add(row: &mut ArrayViewMut1<f64>, columns: Range<usize>, factor: f64, values: &[f64]) {
+    let row = row.as_slice_mut().expect("standard layout");
+    row[columns].iter_mut().zip(values).for_each(|(x, value)| *x += factor * value);
+}
+
 /// What each example's loss counts for: every category the same. An example that is left out counts for nothing.
 fn weights(labels: &[usize], counts: &[usize], left_out: Option<usize>) -> Vec<f64> {
     let out_of = |label: usize| counts[label] - usize::from(left_out.is_some_and(|i| labels[i] == label));
@@ -265,9 +286,19 @@ struct Landscape<'a> {
     temperature: f64,
     start_kernel: Array2<f64>,
     start: Start,
-    /// The different sums Σ_g α_tg K_g + β_t, and which of them each step uses.
-    step_kernels: Vec<Array2<f64>>,
+    /// By group, n × n, not centred.
+    kernels: Vec<Array2<f64>>,
+    /// The different sums Σ_g α_tg K_g with their β_t, and which of them each step uses.
+    step_kernels: Vec<(Array2<f64>, f64)>,
     order: Vec<usize>,
+}
+
+/// Where one of several descents at once goes its own way.
+struct Variant {
+    weights: Vec<f64>,
+    /// For every different step: the kernel's products of all examples with the variant's own middle, and of that with itself;
+    /// none where it is everyone's.
+    middle: Option<Vec<(Array1<f64>, f64)>>,
 }
 
 impl<'a> Landscape<'a> {
@@ -286,29 +317,79 @@ impl<'a> Landscape<'a> {
             });
             order.push(place);
         }
+        let middle = middle(support.labels(), support.counts(), None);
+        let seen: Vec<Array2<f64>> = kernels.iter().map(|kernel| centred(kernel, &middle)).collect();
         Self {
             support,
             temperature: prior.prototype_factor(support),
             start: Start::new(&start_kernel, support.labels(), support.counts()),
             start_kernel,
-            step_kernels: distinct.iter().map(|step| combined(&kernels, &step.weights) + step.bias).collect(),
+            step_kernels: distinct.iter().map(|step| (combined(&seen, &step.weights), step.bias)).collect(),
+            kernels,
             order,
         }
     }
 
-    /// Descends from these logits (n × C for each variant, side by side) with these weights (by variant, then example).
-    /// `watch` is shown the errors of every step. Cost O(n² C T) a variant.
-    fn descend(&self, logits: &mut Array2<f64>, weights: &[Vec<f64>], mut watch: impl FnMut(&Array2<f64>)) {
+    fn everyone(&self) -> Variant {
+        Variant { weights: weights(self.support.labels(), self.support.counts(), None), middle: None }
+    }
+
+    /// Variants without each of these examples, whose categories have others.
+    fn without(&self, examples: &[usize]) -> Vec<Variant> {
+        let (labels, counts) = (self.support.labels(), self.support.counts());
+        let mut middles = Array2::zeros((labels.len(), examples.len()));
+        for (mut column, &i) in middles.axis_iter_mut(Axis(1)).zip(examples) {
+            column.assign(&middle(labels, counts, Some(i)));
+        }
+        let along: Vec<Array2<f64>> =
+            self.step_kernels.iter().map(|(kernel, _)| arithmetic::times(kernel, &middles)).collect();
+        let own = |k: usize, along: &Array2<f64>| {
+            let along = along.column(k).to_owned();
+            let square = along.iter().zip(middles.column(k)).map(|(x, a)| x * a).sum();
+            (along, square)
+        };
+        let variant = |(k, &i): (usize, &usize)| Variant {
+            weights: weights(labels, counts, Some(i)),
+            middle: Some(along.iter().map(|along| own(k, along)).collect()),
+        };
+        examples.iter().enumerate().map(variant).collect()
+    }
+
+    /// Descends from these logits (n × C for each variant, side by side). `watch` is shown the errors of every step. Cost
+    /// O(n² C T) a variant.
+    fn descend(&self, logits: &mut Array2<f64>, variants: &[Variant], mut watch: impl FnMut(&Array2<f64>)) {
         let categories = self.support.categories();
-        for &kernel in &self.order {
+        for &step in &self.order {
+            let (kernel, bias) = &self.step_kernels[step];
             let mut errors = logits.clone();
             for (i, mut row) in errors.outer_iter_mut().enumerate() {
                 let row = row.as_slice_mut().expect("standard layout");
-                for (logits, weights) in row.chunks_exact_mut(categories).zip(weights) {
-                    into_error(logits, self.support.labels()[i], weights[i]);
+                for (logits, variant) in row.chunks_exact_mut(categories).zip(variants) {
+                    into_error(logits, self.support.labels()[i], variant.weights[i]);
                 }
             }
-            *logits -= &arithmetic::times(&self.step_kernels[kernel], &errors);
+            *logits -= &arithmetic::times(kernel, &errors);
+            let sums = errors.sum_axis(Axis(0));
+            let mut moved = Array2::zeros(logits.dim());
+            for (number, variant) in variants.iter().enumerate() {
+                let own = number * categories..(number + 1) * categories;
+                let sums = &sums.as_slice().expect("standard layout")[own.clone()];
+                let Some(middle) = &variant.middle else {
+                    moved.outer_iter_mut().for_each(|mut row| add(&mut row, own.clone(), -bias, sums));
+                    continue;
+                };
+                let (along, square) = &middle[step];
+                let mut errors_along = vec![0.0; categories];
+                for (&along, errors) in along.iter().zip(errors.outer_iter()) {
+                    let errors = &errors.to_slice().expect("standard layout")[own.clone()];
+                    errors_along.iter_mut().zip(errors).for_each(|(sum, &x)| *sum += along * x);
+                }
+                for (mut row, &along) in moved.outer_iter_mut().zip(along) {
+                    add(&mut row, own.clone(), 1.0, &errors_along);
+                    add(&mut row, own.clone(), along - square - bias, sums);
+                }
+            }
+            *logits += &moved;
             watch(&errors);
         }
     }
@@ -331,8 +412,7 @@ impl<'a> Landscape<'a> {
                     logits[[j, columns + c]] = x;
                 }
             }
-            let weights: Vec<Vec<f64>> = block.iter().map(|&i| weights(labels, counts, Some(i))).collect();
-            self.descend(&mut logits, &weights, |_| ());
+            self.descend(&mut logits, &self.without(block), |_| ());
             for (variant, &i) in block.iter().enumerate() {
                 let columns = variant * categories;
                 left_out.set(i, &Array1::from_shape_fn(categories, |c| logits[[i, columns + c]]));
@@ -360,17 +440,27 @@ impl Gradient<'_> {
         let support = landscape.support;
         let temperature = landscape.temperature;
         // Coefficients of the examples by group, the rest last: w = Σ_g M_g Zᵀ A_g.
-        let means = support.mean_coefficients();
-        let mut coefficients: Vec<Array2<f64>> = start.iter().map(|a| &means * (2.0 * temperature * a)).collect();
+        let mut stepped = vec![Array2::<f64>::zeros((support.len(), support.categories())); start.len()];
         let mut bias = landscape.start.constants() * temperature;
         let mut logits = landscape.start.logits() * temperature;
-        let everyone = [weights(support.labels(), support.counts(), None)];
         let mut sizes = steps.iter();
-        landscape.descend(&mut logits, &everyone, |errors| {
+        landscape.descend(&mut logits, &[landscape.everyone()], |errors| {
             let Some(step) = sizes.next() else { return };
             bias.scaled_add(-step.bias, &errors.sum_axis(Axis(0)));
-            coefficients.iter_mut().zip(&step.weights).for_each(|(sum, &size)| sum.scaled_add(-size, errors));
+            stepped.iter_mut().zip(&step.weights).for_each(|(sum, &size)| sum.scaled_add(-size, errors));
         });
+        let means = support.mean_coefficients();
+        let middle = middle(support.labels(), support.counts(), None);
+        let mut coefficients = Vec::with_capacity(start.len());
+        for ((mut stepped, kernel), a) in stepped.into_iter().zip(&landscape.kernels).zip(start) {
+            // Steps see examples from the middle, and so must items.
+            let sums = stepped.sum_axis(Axis(0));
+            for (mut row, &share) in stepped.outer_iter_mut().zip(&middle) {
+                row.scaled_add(-share, &sums);
+            }
+            bias -= &kernel.dot(&middle).dot(&stepped);
+            coefficients.push(stepped + &means * (2.0 * temperature * a));
+        }
         let rest = &coefficients[coefficients.len() - 1];
         let weights = support.combine(rest);
         let weights = match groups {

@@ -25,9 +25,9 @@
 
 use ndarray::{Array1, Array2, Axis};
 
-use super::{Learned, Learner, LeftOut, calibrate::temperature, log_loss, prototype::Scatter};
+use super::{Learned, Learner, LeftOut, calibrate::temperature, log_loss, positive_definite, prototype::Scatter};
 use crate::{
-    arithmetic::{self, Cholesky},
+    arithmetic,
     head::Head,
     prior::Prior,
     support::Support,
@@ -209,21 +209,6 @@ fn solve(support: &Support, strength: f64) -> Solution {
     }
     fairness.apply(&mut bias, &factors);
     Solution { coefficients, bias, left_out }
-}
-
-/// Factors a matrix that is positive definite but for the rounding of f32 products.
-fn positive_definite(matrix: Array2<f64>) -> Cholesky {
-    let largest = matrix.diag().iter().copied().fold(1e-30, f64::max);
-    let mut lift = 0.0;
-    loop {
-        let mut lifted = matrix.clone();
-        lifted.diag_mut().mapv_inplace(|x| x + lift);
-        if let Some(factor) = Cholesky::new(lifted) {
-            return factor;
-        }
-        // Finite numbers: a lift above the rounding error must come, and soon.
-        lift = if lift == 0.0 { 1e-7 * largest } else { 10.0 * lift };
-    }
 }
 
 fn leave_one_out(

@@ -466,7 +466,7 @@ impl Evidence<'_> {
             let logits: Vec<Array2<f64>> = self
                 .tasks
                 .iter()
-                .map(|task| Prototype { shrinkage }.fit(&task.support).logits(task.query_rows.view()))
+                .map(|task| Prototype { shrinkage, ..prior.prototype(&task.support) }.fit(&task.support).logits(task.query_rows.view()))
                 .collect();
             let usual = |task: &Task| usual_prototype_factor(task.support.shot());
             let against: f64 = (0..SHOTS.len()).map(|shot| self.temperature(shot, &logits, usual).1).sum();
@@ -592,7 +592,7 @@ impl Evidence<'_> {
     fn preference(&self, prior: &Prior, sizes: &Sizes) -> [ByShot; 3] {
         let members: [Vec<Array2<f64>>; 3] = [
             self.logits(|task| {
-                prior.prototype().fit(&task.support).logits(task.query_rows.view())
+                prior.prototype(&task.support).fit(&task.support).logits(task.query_rows.view())
                     * prior.prototype_factor(&task.support)
             }),
             self.logits(|task| {

@@ -11,7 +11,7 @@ use ndarray::{Array2, Axis};
 
 use crate::{
     arithmetic,
-    learner::{Groups, Start, Step, errors, kernels},
+    learner::{Groups, Start, Step, centred, errors, kernels, middle},
 };
 
 /// An episode as the gradient learner sees it.
@@ -47,6 +47,8 @@ impl Problem {
         labels.iter().for_each(|&label| counts[label] += 1);
         let kernels = kernels(Some((groups, coordinates)), &gram.select(Axis(1), &(0..n).collect::<Vec<_>>()));
         let starts = kernels.iter().map(|kernel| Start::new(kernel, labels, &counts).logits() * temperature).collect();
+        let middle = middle(labels, &counts, None);
+        let kernels = kernels.iter().map(|kernel| centred(kernel, &middle)).collect();
         Self { kernels, starts, labels: labels.to_vec(), counts, queries: queries.to_vec() }
     }
 
