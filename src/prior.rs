@@ -73,7 +73,7 @@ impl Default for Prior {
             ridge_strength: ByShot([0.1, 0.1, 0.3, 0.5]),
             prototype_temperature: ByShot::even(1.0),
             ridge_temperature: ByShot::even(1.0),
-            descent: Descent::even(10, 20.0),
+            descent: Descent::even(10, 20.0, 2.0),
             preference: None,
             centre_known: 0.0,
             counts_as_shares: 0.5,

@@ -15,6 +15,7 @@ use serde::Deserialize;
 struct Values {
     steps: usize,
     step_size: f64,
+    bias_step_size: f64,
     temperature: f64,
     tasks: Vec<Task>,
 }
@@ -162,7 +163,7 @@ fn check_gradient(task: &Task, temperature: f64, descent: Descent, logits: &[Vec
 fn gradient_steps_as_numpy_takes_them() {
     let values = values();
     for task in &values.tasks {
-        let even = Descent::even(values.steps, values.step_size);
+        let even = Descent::even(values.steps, values.step_size, values.bias_step_size);
         check_gradient(task, values.temperature, even, &task.gradient, task.gradient_loss);
     }
 }

@@ -18,7 +18,7 @@ from sklearn.neighbors import NearestCentroid
 from sklearn.preprocessing import StandardScaler
 
 OUT = Path(__file__).resolve().parents[2] / "tests" / "data" / "learners.json"
-STEPS, STEP_SIZE, TEMPERATURE = 10, 20.0, 6.0
+STEPS, STEP_SIZE, BIAS_STEP_SIZE, TEMPERATURE = 10, 20.0, 2.0, 6.0
 
 
 def unit(x):
@@ -144,7 +144,7 @@ def values():
     ]:
         x, y, query = task(table, counts, seed=len(tasks) + 1)
         wide, wide_query = x.astype(np.float64), query.astype(np.float64)
-        even_steps = [[STEP_SIZE, STEP_SIZE]] * STEPS
+        even_steps = [[STEP_SIZE, BIAS_STEP_SIZE]] * STEPS
         gradient_logits, gradient_loss = gradient(wide, y, wide_query, [np.eye(wide.shape[1])], [1], even_steps)
         grouped = descent(wide.shape[1], seed=len(tasks) + 1)
         grouped["logits"], grouped["loss"] = gradient(wide, y, wide_query, groups_of(grouped), grouped["start"], grouped["steps"])
@@ -175,6 +175,7 @@ def values():
         "numpy": np.__version__,
         "steps": STEPS,
         "step_size": STEP_SIZE,
+        "bias_step_size": BIAS_STEP_SIZE,
         "temperature": TEMPERATURE,
         "tasks": tasks,
     }

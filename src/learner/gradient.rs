@@ -96,9 +96,12 @@ pub struct Step {
 }
 
 impl Descent {
-    /// So many steps (at most [`MOST_STEPS`]) of one size, everything in one group.
-    pub fn even(steps: usize, size: f64) -> Self {
-        let step = Step { weights: vec![size], bias: size };
+    /// So many steps (at most [`MOST_STEPS`]), all of one size for weights, which are in one group, and one for the bias.
+    ///
+    /// Examples seen from their middle lie within a fraction of a unit of it and call for steps of many units; the bias
+    /// overshoots from 4 on.
+    pub fn even(steps: usize, weights: f64, bias: f64) -> Self {
+        let step = Step { weights: vec![weights], bias };
         Self { groups: None, start: vec![1.0], steps: vec![step; steps.min(MOST_STEPS)] }
     }
 

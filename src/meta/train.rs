@@ -365,7 +365,7 @@ fn halfway(factors: ByShot) -> ByShot {
 fn usual_sizes() -> Sizes {
     let groups = GROUP_ENDS.len() + 1;
     let usual = &Prior::default().descent;
-    let step = |step: &Step| Step { weights: vec![step.bias; groups], bias: step.bias };
+    let step = |step: &Step| Step { weights: vec![step.weights[0]; groups], bias: step.bias };
     Sizes { start: vec![1.0; groups], steps: usual.steps().iter().map(step).collect() }
 }
 
@@ -535,7 +535,7 @@ impl Evidence<'_> {
 
     /// The gradient learner's sizes, or `None` where they don't do better on tasks that they weren't fitted to.
     fn tune_descent(&self, prior: &Prior, watch: &mut dyn FnMut(f64) -> Result<()>) -> Result<Option<Sizes>> {
-        let size = usual_sizes().steps[0].bias;
+        let usual = &usual_sizes().steps[0];
         let groups = GROUP_ENDS.len() + 1;
         let small = self.tasks.iter().filter(|task| task.support.len() <= MOST_EXAMPLES);
         let (mut taught, mut checked) = (Vec::new(), Vec::new());
@@ -552,8 +552,8 @@ impl Evidence<'_> {
             let (start, steps) = logs.split_at(groups);
             let start = start.iter().map(|&x| libm::exp(x)).collect();
             let step = |logs: &[f64]| {
-                let sizes: Vec<f64> = logs.iter().map(|&x| size * libm::exp(x)).collect();
-                Step { weights: sizes[..groups].to_vec(), bias: sizes[groups] }
+                let weights = logs.iter().zip(&usual.weights).map(|(&x, size)| size * libm::exp(x)).collect();
+                Step { weights, bias: usual.bias * libm::exp(logs[groups]) }
             };
             Sizes { start, steps: steps.chunks_exact(groups + 1).map(step).collect() }
         };
