@@ -286,7 +286,7 @@ fn terms_that_cannot_be_kept_are_refused_and_the_others_are_kept_in_the_state() 
 #[test]
 fn the_learning_curve_grows_and_asks_for_more_where_more_is_wanted() {
     let mut rng = ChaCha8Rng::seed_from_u64(8);
-    let (mut sorter, _) = pile(6, 0, 9, 4, 0.5, &mut rng);
+    let (mut sorter, _) = pile(6, 0, 9, 4, 0.4, &mut rng);
     let curve = sorter.assessment().unwrap().curve.unwrap();
     assert!(curve.points.first().unwrap().accuracy < curve.points.last().unwrap().accuracy);
     let targets = [0.5, 0.8, 0.9, 0.99].map(|target| curve.more_answers(target));
