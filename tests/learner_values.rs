@@ -107,11 +107,12 @@ fn prototypes_with_a_metric_are_scikit_learns_regularised_discriminants() {
         for reference in &task.discriminant {
             let prototype = Prototype { shrinkage: 0.0, regularisation: 1.0 };
             let head = prototype.learn_at(&task.support(), reference.penalty).head;
-            let level = |logits: &Array2<f64>| logits - &logits.mean_axis(ndarray::Axis(1)).unwrap().insert_axis(ndarray::Axis(1));
-            let expected = Array2::from_shape_fn(
-                (reference.logits.len(), reference.logits[0].len()),
-                |(i, c)| reference.logits[i][c],
-            );
+            let level = |logits: &Array2<f64>| {
+                logits - &logits.mean_axis(ndarray::Axis(1)).unwrap().insert_axis(ndarray::Axis(1))
+            };
+            let expected = Array2::from_shape_fn((reference.logits.len(), reference.logits[0].len()), |(i, c)| {
+                reference.logits[i][c]
+            });
             let expected: Vec<Vec<f64>> = level(&expected).outer_iter().map(|row| row.to_vec()).collect();
             assert_close(&task.name, &level(&head.logits(rows(&task.queries).view())), &expected, 5e-5);
             compared += 1;

@@ -242,8 +242,9 @@ struct Damping {
 impl Damping {
     fn new(support: &Support, with_means: &Array2<f64>, between: &Array2<f64>, penalty: f64) -> Self {
         let labels = support.labels();
-        let with_deviations =
-            Array2::from_shape_fn((support.len(), support.len()), |(i, j)| support.gram()[[i, j]] - with_means[[i, labels[j]]]);
+        let with_deviations = Array2::from_shape_fn((support.len(), support.len()), |(i, j)| {
+            support.gram()[[i, j]] - with_means[[i, labels[j]]]
+        });
         let mut deviations = Array2::from_shape_fn(with_deviations.dim(), |(i, j)| {
             with_deviations[[i, j]] - with_means[[j, labels[i]]] + between[[labels[i], labels[j]]]
         });
@@ -337,8 +338,7 @@ impl<'a> Scene<'a> {
         let mut with_common = &self.with_common + &(&means_along * (gain * common_along));
         // Only the example's own category moves: mean' = (n_c mean − x) / (n_c − 1).
         let (own_mean, own_square) = (query[label], squares[label]);
-        let moved_square =
-            (with * with * own_square - 2.0 * with * own_mean + own) / (without * without);
+        let moved_square = (with * with * own_square - 2.0 * with * own_mean + own) / (without * without);
         let mut own_sum = 0.0;
         for c in 0..categories {
             let before = between(label, c);

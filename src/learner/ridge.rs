@@ -26,12 +26,7 @@
 use ndarray::{Array1, Array2, Axis};
 
 use super::{Learned, Learner, LeftOut, calibrate::temperature, log_loss, positive_definite, prototype::Scatter};
-use crate::{
-    arithmetic,
-    head::Head,
-    prior::Prior,
-    support::Support,
-};
+use crate::{arithmetic, head::Head, prior::Prior, support::Support};
 
 /// The strengths tried.
 const STRENGTHS: [f64; 8] = [0.01, 0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0];

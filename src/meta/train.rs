@@ -466,7 +466,11 @@ impl Evidence<'_> {
             let logits: Vec<Array2<f64>> = self
                 .tasks
                 .iter()
-                .map(|task| Prototype { shrinkage, ..prior.prototype(&task.support) }.fit(&task.support).logits(task.query_rows.view()))
+                .map(|task| {
+                    Prototype { shrinkage, ..prior.prototype(&task.support) }
+                        .fit(&task.support)
+                        .logits(task.query_rows.view())
+                })
                 .collect();
             let usual = |task: &Task| usual_prototype_factor(task.support.shot());
             let against: f64 = (0..SHOTS.len()).map(|shot| self.temperature(shot, &logits, usual).1).sum();
