@@ -163,10 +163,13 @@ export const plotStyles = css`
     .track {
       fill: Canvas;
       stroke: CanvasText;
+      vector-effect: non-scaling-stroke;
     }
+    /* Pale enough for the line across it, whatever the colours are. */
     .bar,
     .band {
-      fill: GrayText;
+      fill: CanvasText;
+      opacity: 0.35;
     }
     .whisker,
     .line,

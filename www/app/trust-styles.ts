@@ -30,6 +30,14 @@ export const trustStyles = css`
     color: var(--bench);
     font-weight: 600;
   }
+  @media (forced-colors: active) {
+    .tabs button[aria-selected='true'] {
+      forced-color-adjust: none;
+      background: Highlight;
+      border-color: Highlight;
+      color: HighlightText;
+    }
+  }
   .number {
     display: inline-block;
     min-width: 1.6em;
