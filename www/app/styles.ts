@@ -39,7 +39,9 @@ export const shared = css`
   button:hover {
     border-color: var(--ink);
   }
-  button:disabled {
+  button:disabled,
+  button.strong:disabled,
+  button.bright:disabled {
     cursor: default;
     color: var(--ink-soft);
     background: transparent;

@@ -497,7 +497,7 @@ export const words = {
   writeLabel: 'Notes, one a line',
   writeFound: (n: number) => (n === 0 ? 'Every line becomes a note.' : `${notes(n)}: every line becomes one.`),
   pasted: (n: number) => `pasted-${n}.txt`,
-  addThem: (n: number) => `Add ${notes(n)}`,
+  addThem: (n: number) => (n === 0 ? 'Add notes' : `Add ${notes(n)}`),
   leaveOut: 'Leave out',
   columnQuestion: 'Which column holds the notes?',
   columnHint: 'All other columns are kept and come back with the result.',
