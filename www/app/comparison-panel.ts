@@ -8,10 +8,10 @@ import { count, percent, words } from './words';
 /** The drawing, in its own units. */
 const WIDTH = 560;
 const HEIGHT = 250;
-const LEFT = 46;
-const RIGHT = 14;
+const LEFT = 62;
+const RIGHT = 22;
 const TOP = 12;
-const BOTTOM = 34;
+const BOTTOM = 48;
 
 /** The person's answers beside random order: a sentence, a small plot, and the same as a table. */
 export class ComparisonPanel extends Panel {
@@ -71,8 +71,8 @@ export class ComparisonPanel extends Panel {
         <polyline class="random" points=${line(inRandomOrder)} />
         <polyline class="own" points=${line(own)} />
         ${mark(given, 'own')} ${random === undefined ? nothing : mark(random, 'random')}
-        ${ends.map((answers) => svg`<text class="tick" x=${x(answers)} y=${y(0) + 18} text-anchor="middle">${count(Math.round(answers))}</text>`)}
-        <text class="tick" x=${LEFT} y=${y(0) + 18} text-anchor="middle">0</text>
+        ${ends.map((answers) => svg`<text class="tick" x=${x(answers)} y=${y(0) + 22} text-anchor="middle">${count(Math.round(answers))}</text>`)}
+        <text class="tick" x=${LEFT} y=${y(0) + 22} text-anchor="middle">0</text>
         <text class="axis" x=${WIDTH - RIGHT} y=${HEIGHT - 2} text-anchor="end">${words.compareAnswers}</text>
       </svg>
       <figcaption class="row">
@@ -170,6 +170,14 @@ export class ComparisonPanel extends Panel {
       text {
         font-size: 13px;
         fill: var(--ink-soft);
+      }
+      @media (max-width: 600px) {
+        text {
+          font-size: 21px;
+        }
+        polyline {
+          stroke-width: 4;
+        }
       }
       .key {
         display: inline-flex;

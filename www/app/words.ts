@@ -193,7 +193,7 @@ export const words = {
         : `It may have been ${about(least)} to ${about(most)}.`,
   compareNoGain: 'So the order of the questions made no difference here.',
   compareHow: [
-    'An estimate, since nobody knows the truth of this pile: several possible truths are drawn from what the sorter believes, and in each the same sorter is given answers in random order until it is right about as much as after yours.',
+    'A rough estimate, since nobody knows the truth of this pile: the trays as they are now stand for it, and the same sorter is given them in random order, several times anew, until it disagrees with them about as little as one that is as often right.',
     'Both lines show what share is expected to be right of what has no answer.',
   ],
   compareOwn: 'your answers',
