@@ -156,3 +156,25 @@ test('the outlook says what the core says, and only after a while aloud', async 
   expect(shown).toEqual([round(now.expected), round(now.low), round(now.high), round(afterTenMore.expected)]);
   await expect(page.locator('ken-outlook [aria-live=polite]')).toHaveText(new RegExp(`about ${round(now.expected)}`));
 });
+
+test('the answers beside random order: offered with the result, worked out in a panel, with its figures', async ({ page, site }) => {
+  const bench = new Bench(page, site);
+  await bench.open();
+  await load(bench);
+  await page.getByRole('button', { name: 'Compare with random order' }).click();
+  await expect(page.getByRole('dialog')).toContainText('too little to tell yet');
+  await page.keyboard.press('Escape');
+  await answerRound(bench, 12);
+  await expect(page.locator('.offer')).toHaveCount(0);
+  await bench.result();
+  await page.locator('.offer').getByRole('button', { name: 'Compare with random order' }).click();
+  const panel = page.getByRole('dialog');
+  await expect(panel.getByText(/^You gave 12 answers\. In random order it would have been (about|more than) \d/)).toBeVisible({ timeout: 90_000 });
+  await expect(panel.getByRole('progressbar')).toHaveCount(0);
+  await panel.getByText('The figures').click();
+  const last = await panel.getByRole('row').filter({ has: page.getByRole('rowheader', { name: '12', exact: true }) }).getByRole('cell').first().textContent();
+  const shown = await page.locator('ken-outlook strong').textContent();
+  expect(`about ${last}`, 'the last of the person’s points is the outlook').toBe(shown);
+  const { violations } = await new AxeBuilder({ page }).analyze();
+  expect(violations.map(({ id, nodes }) => `${id}: ${nodes[0]?.html}`)).toEqual([]);
+});
