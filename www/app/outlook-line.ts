@@ -60,7 +60,7 @@ export class OutlookLine extends LitElement {
         display: block;
       }
       p {
-        font-size: 0.92rem;
+        font-size: 0.88rem;
         color: var(--ink-soft);
         font-variant-numeric: tabular-nums;
       }

@@ -96,9 +96,6 @@ export const questionStyles = css`
     flex: 0 1 auto;
     min-height: 150px;
   }
-  ken-strip ~ .rows {
-    min-height: 116px;
-  }
   .rows {
     display: grid;
     grid-template-columns: repeat(auto-fill, minmax(min(165px, 100%), 1fr));
@@ -237,6 +234,11 @@ export const questionStyles = css`
   }
   .option[aria-selected='true'] {
     border-color: var(--ink);
+  }
+  /* The strip keeps its rows as long as the trays can scroll. */
+  ken-strip ~ .rows {
+    flex-shrink: 50;
+    min-height: 116px;
   }
   .hint-line {
     font-size: 0.94rem;

@@ -119,7 +119,7 @@ export const words = {
 
   // Strips of look-alikes
   stripQuestion: (tray: string) => `All in ${tray}?`,
-  stripHint: 'Look at each, and take out what belongs elsewhere.',
+  stripHint: 'Look at each. Take out the odd ones.',
   strip: (kind: Kind, n: number, tray: string) => `${items(n, kind)} that may all belong in ${tray}`,
   takeOut: (name: string) => `Take out ${name}`,
   stripCount: (kind: Kind, staying: number, out: number) => `${items(staying, kind)}${out === 0 ? '' : `, ${count(out)} taken out`}`,
