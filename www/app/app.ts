@@ -126,8 +126,10 @@ export class Bench extends LitElement {
     const [kits, past] = await Promise.all([BenchKits.open(this.#readers, this.#redraw), Past.open(this.#redraw)]);
     this.kits = kits;
     past?.serve(this.renderRoot, () => this.desk);
+    const desk = await this.#lay(kits);
+    // Not before: what it offers needs a desk.
     this.past = past;
-    return this.#lay(kits);
+    return desk;
   }
 
   async #lay(kits: BenchKits): Promise<Desk> {
