@@ -154,7 +154,7 @@ impl Report<'_> {
         let noun = self.material.noun;
         let mut text = format!(
             "{} piles of {} categories, about {} {noun} each{}{}, answered from nothing on.\n\n\
-             Sorted right of what has no answer, in % (± half the 95 % interval):\n  {:<22}",
+             Sorted right of what has no answer, in % (± half the 95 % interval, which fewer than ten piles can't tell):\n  {:<22}",
             self.played.len(),
             plan.categories,
             plan.size,
@@ -170,7 +170,8 @@ impl Report<'_> {
             text += &format!("  {name:<22}");
             for &at in &columns {
                 let Estimate { mean, half_width } = self.rest(player, at);
-                text += &format!("{:>14}", format!("{:.1} ± {:.1}", 100.0 * mean, 100.0 * half_width));
+                let interval = if half_width.is_finite() { format!(" ± {:.1}", 100.0 * half_width) } else { String::new() };
+                text += &format!("{:>14}", format!("{:.1}{interval}", 100.0 * mean));
             }
             text.push('\n');
         }
