@@ -83,13 +83,12 @@ pub(super) struct Scatter {
 impl Scatter {
     /// The scatter of the whole support set around its category means (C × d). Cost O(n d).
     pub(super) fn around(means: &Array2<f64>, support: &Support) -> Self {
-        let sum = support
-            .labels()
-            .iter()
-            .enumerate()
-            .flat_map(|(i, &label)| support.embedding(i).iter().zip(means.row(label).to_vec()))
-            .map(|(&x, mean)| (f64::from(x) - mean).powi(2))
-            .sum();
+        let distance = |(i, &label): (usize, &usize)| -> f64 {
+            let mean = means.row(label);
+            let mean = mean.as_slice().expect("standard layout");
+            support.embedding(i).iter().zip(mean).map(|(&x, mean)| (f64::from(x) - mean).powi(2)).sum()
+        };
+        let sum = support.labels().iter().enumerate().map(distance).sum();
         Self { sum, freedom: support.len() - support.categories() }
     }
 
@@ -128,43 +127,42 @@ impl Prototype {
 
     /// Learns at a given ν > 0 (infinite for plain distances), with the exact leave-one-out logits.
     pub fn learn_at(&self, support: &Support, penalty: f64) -> Learned {
-        self.learn_with_variance(support, penalty).0
-    }
-
-    fn learn_with_variance(&self, support: &Support, penalty: f64) -> (Learned, f64) {
         let scene = Scene::new(support, penalty);
-        let variance = scene.variance();
-        let head = self.head(support, &scene.metric_means(), variance);
-        (Learned { head, left_out: self.leave_one_out(&scene) }, variance)
+        let head = self.head(support, &scene.metric_means(), scene.variance());
+        Learned { head, left_out: self.leave_one_out(&scene) }
     }
 
     /// Learns at the ρ that the examples choose from this prior's guess; and what was decided.
     pub(super) fn learn_chosen(prior: &Prior, support: &Support) -> (Learned, Decided) {
         let expected = prior.regularisation.at(support.shot());
+        let one = Self { regularisation: 1.0, ..prior.prototype(support) };
+        let unit = one.penalty(support);
         let judge = |regularisation: f64| {
-            let one = Self { regularisation, ..prior.prototype(support) };
-            let (learned, variance) = one.learn_with_variance(support, one.penalty(support));
-            let factor = temperature(&learned.left_out, support, prior.prototype_factor(support));
+            let scene = Scene::new(support, regularisation * unit);
+            let left_out = one.leave_one_out(&scene);
+            let factor = temperature(&left_out, support, prior.prototype_factor(support));
             let pull = (libm::log(regularisation / expected) / REGULARISATION_SPREAD).powi(2) / 2.0;
-            let (loss, known) = log_loss(&learned.left_out, support, factor);
-            (known, loss + pull, learned, Decided { regularisation, variance })
+            let (loss, known) = log_loss(&left_out, support, factor);
+            (known, loss + pull, scene, left_out, regularisation)
         };
-        let start = judge(expected);
-        if start.0 == 0 {
-            return (start.2, start.3);
-        }
-        let weaker = REGULARISATIONS.into_iter().rev().filter(|&one| one < expected);
-        let stronger = REGULARISATIONS.into_iter().filter(|&one| one > expected);
-        let mut best = start;
-        for direction in [weaker.collect::<Vec<_>>(), stronger.collect()] {
-            for next in direction.into_iter().map(judge) {
-                if next.1 >= best.1 {
-                    break;
+        let mut best = judge(expected);
+        if best.0 > 0 {
+            let weaker = REGULARISATIONS.into_iter().rev().filter(|&one| one < expected);
+            let stronger = REGULARISATIONS.into_iter().filter(|&one| one > expected);
+            for direction in [weaker.collect::<Vec<_>>(), stronger.collect()] {
+                for next in direction.into_iter().map(judge) {
+                    if next.1 >= best.1 {
+                        break;
+                    }
+                    best = next;
                 }
-                best = next;
             }
         }
-        (best.2, best.3)
+        // The head is made once: it alone costs O(n C d).
+        let (_, _, scene, left_out, regularisation) = best;
+        let variance = scene.variance();
+        let head = one.head(support, &scene.metric_means(), variance);
+        (Learned { head, left_out }, Decided { regularisation, variance })
     }
 
     /// The head alone: in n × n or in d × d, whichever is smaller.

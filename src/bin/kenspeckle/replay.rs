@@ -170,7 +170,8 @@ impl Report<'_> {
             text += &format!("  {name:<22}");
             for &at in &columns {
                 let Estimate { mean, half_width } = self.rest(player, at);
-                let interval = if half_width.is_finite() { format!(" ± {:.1}", 100.0 * half_width) } else { String::new() };
+                let interval =
+                    if half_width.is_finite() { format!(" ± {:.1}", 100.0 * half_width) } else { String::new() };
                 text += &format!("{:>14}", format!("{:.1}{interval}", 100.0 * mean));
             }
             text.push('\n');
